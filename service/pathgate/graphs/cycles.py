@@ -1,0 +1,54 @@
+"""Does a graph hold directed cycles, and which?
+
+Strongly connected components (scipy, Pearce 2005) decide it in O(nodes + edges); each component of more
+than one node yields one shortest cycle through its first node, by breadth-first search.
+"""
+
+from __future__ import annotations
+
+from collections import deque
+
+import numpy as np
+from scipy.sparse import csr_array
+from scipy.sparse.csgraph import connected_components
+
+from pathgate.graphs.graph import CausalGraph
+
+
+def cycles(graph: CausalGraph) -> tuple[tuple[str, ...], ...]:
+    """One directed cycle for each cyclic component, its first node repeated at the end; empty for a DAG.
+
+    Self-loops are not looked for: reading refuses them by themselves.
+    """
+    if not len(graph.sources):
+        return ()
+    steps = csr_array((np.ones(len(graph.sources)), (graph.sources, graph.targets)), shape=(graph.size,) * 2)
+    count, labels = connected_components(steps, directed=True, connection="strong")
+    if count == graph.size:
+        return ()
+    sizes = np.bincount(labels, minlength=count)
+    _labels, first_of = np.unique(labels, return_index=True)
+    firsts = first_of[sizes > 1].tolist()
+    component_of = labels.tolist()
+    return tuple(_cycle_through(graph, first, component_of) for first in sorted(firsts))
+
+
+def _cycle_through(graph: CausalGraph, first: int, labels: list[int]) -> tuple[str, ...]:
+    came_from = {first: first}
+    queue = deque([first])
+    while True:
+        # Within a strong component the search must come back to its start, so the queue never runs dry.
+        node = queue.popleft()
+        for child in graph.children(node):
+            if child == first:
+                return _walk_back(graph, came_from, first, node)
+            if labels[child] == labels[first] and child not in came_from:
+                came_from[child] = node
+                queue.append(child)
+
+
+def _walk_back(graph: CausalGraph, came_from: dict[int, int], first: int, last: int) -> tuple[str, ...]:
+    walked = [first, last] if last != first else [first]
+    while walked[-1] != first:
+        walked.append(came_from[walked[-1]])
+    return tuple(graph.name(node) for node in reversed(walked))

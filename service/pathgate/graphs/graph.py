@@ -1,0 +1,217 @@
+"""What a causal graph is: nodes, arrows, bidirected edges, and what the team said about each.
+
+The graph is immutable and indexed once: names become small integers at the edge, algorithms work on those
+integers and on bit masks (``graphs.masks``). Neighbour lists and masks are built on first use, in O(nodes +
+edges); per-node masks only for graphs small enough for them (``is_small``), since they need O(nodes²) bits.
+"""
+
+from __future__ import annotations
+
+import graphlib
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+
+import numpy as np
+
+from pathgate.graphs.errors import UnknownNode
+from pathgate.graphs.masks import IntArray, mask_of, members, unpack
+from pathgate.graphs.names import nearest_names
+
+# Up to this many nodes one mask per node costs less than 128 KiB and beats arrays.
+SMALL = 1024
+
+Edge = tuple[str, int, int]
+"""Kind (``"directed"`` or ``"bidirected"``) and the two ends; of a bidirected edge the lower index first."""
+
+
+@dataclass(frozen=True, eq=False)
+class CausalGraph:
+    """A causal graph over named nodes; made by ``read_graph``, ``CausalGraph.of`` or ``from_networkx``.
+
+    Attributes:
+        names: the nodes' names, in the order of the input; a selection node bears the empty name.
+        sources, targets: the arrows as two aligned arrays of indices, sorted by source, then target.
+        lower_ends, upper_ends: the bidirected edges likewise, the lower index first.
+        measured: mask of the nodes the platform holds as columns.
+        costs: what using a column costs, where it is not 1.
+        recorded: when a column is recorded, where that is known.
+        constant_within: for a node, the columns within each of whose values it has one value.
+        aliases: other names of columns.
+        doubtful: the edges the team is not sure of.
+        notes: what the team wrote beside an edge.
+    """
+
+    names: tuple[str, ...]
+    sources: IntArray
+    targets: IntArray
+    lower_ends: IntArray
+    upper_ends: IntArray
+    measured: int
+    costs: Mapping[int, float] = field(default_factory=dict)
+    recorded: Mapping[int, int] = field(default_factory=dict)
+    constant_within: Mapping[int, tuple[int, ...]] = field(default_factory=dict)
+    aliases: Mapping[str, int] = field(default_factory=dict)
+    doubtful: frozenset[Edge] = frozenset()
+    notes: Mapping[Edge, str] = field(default_factory=dict)
+
+    @classmethod
+    def of(
+        cls,
+        *arrows: tuple[str, str],
+        bidirected: Iterable[tuple[str, str]] = (),
+        unmeasured: Iterable[str] = (),
+        nodes: Iterable[str] = (),
+    ) -> CausalGraph:
+        """A graph from pairs of names; nodes come in the order in which they are first named.
+
+        Raises:
+            InvalidGraph: the pairs hold a cycle, a self-loop or a repeated edge.
+
+        >>> CausalGraph.of(("rain", "delay"), bidirected=[("rain", "refund")]).names
+        ('rain', 'delay', 'refund')
+        """
+        from pathgate.graphs.reading import read_graph  # noqa: PLC0415 - the reader is built on this class
+
+        pairs = [*arrows, *bidirected]
+        names = dict.fromkeys([*nodes, *(name for pair in pairs for name in pair), *unmeasured])
+        hidden = set(unmeasured)
+        kinds = ["directed"] * len(arrows) + ["bidirected"] * (len(pairs) - len(arrows))
+        return read_graph(
+            {
+                "nodes": [{"id": name, "measured": name not in hidden} for name in names],
+                "edges": [
+                    {"source": source, "target": target, "kind": kind}
+                    for (source, target), kind in zip(pairs, kinds, strict=True)
+                ],
+            }
+        )
+
+    @property
+    def size(self) -> int:
+        """Number of nodes."""
+        return len(self.names)
+
+    @property
+    def everything(self) -> int:
+        """The mask of all nodes."""
+        return (1 << self.size) - 1
+
+    @property
+    def is_small(self) -> bool:
+        """Is one mask per node cheap here?"""
+        return self.size <= SMALL
+
+    @cached_property
+    def index(self) -> Mapping[str, int]:
+        """From name to index."""
+        return {name: place for place, name in enumerate(self.names) if name}
+
+    def name(self, node: int) -> str:
+        """The name of a node."""
+        return self.names[node]
+
+    def mask(self, names: Iterable[str]) -> int:
+        """The set of the nodes that bear these names.
+
+        Raises:
+            UnknownNode: some are not in the graph; all of them are named, with the nearest known name.
+        """
+        listed = [names] if isinstance(names, str) else list(names)
+        try:
+            return mask_of(map(self.index.__getitem__, listed))
+        except KeyError:
+            unknown = [name for name in listed if name not in self.index]
+            near = {name: nearest_names(name, self.names, most=1) for name in unknown}
+            raise UnknownNode(unknown, {name: found[0] for name, found in near.items() if found}) from None
+
+    def members(self, mask: int) -> Iterator[int]:
+        """The nodes of a set, in the graph's order."""
+        return members(mask)
+
+    def names_of(self, mask: int) -> tuple[str, ...]:
+        """The names of a set, in the graph's order."""
+        return tuple(self.names[node] for node in members(mask))
+
+    def cost(self, node: int) -> float:
+        """What using this column costs."""
+        return self.costs.get(node, 1.0)
+
+    def has_arrow(self, source: str, target: str) -> bool:
+        """Does an arrow lead from one named node to the other?"""
+        return self.index[target] in self.children(self.index[source])
+
+    def children(self, node: int) -> tuple[int, ...]:
+        """Where the arrows from this node lead, in order."""
+        return self.child_lists[node]
+
+    def parents(self, node: int) -> tuple[int, ...]:
+        """Where the arrows into this node come from, in order."""
+        return self.parent_lists[node]
+
+    def spouses(self, node: int) -> tuple[int, ...]:
+        """The other ends of this node's bidirected edges, in order."""
+        return self.spouse_lists[node]
+
+    @cached_property
+    def child_lists(self) -> tuple[tuple[int, ...], ...]:
+        """For each node its children."""
+        return _grouped(self.size, self.sources, self.targets)
+
+    @cached_property
+    def parent_lists(self) -> tuple[tuple[int, ...], ...]:
+        """For each node its parents."""
+        return _grouped(self.size, self.targets, self.sources)
+
+    @cached_property
+    def spouse_lists(self) -> tuple[tuple[int, ...], ...]:
+        """For each node the other ends of its bidirected edges."""
+        ends = np.concatenate([self.lower_ends, self.upper_ends])
+        others = np.concatenate([self.upper_ends, self.lower_ends])
+        order = np.lexsort((others, ends))
+        return _grouped(self.size, ends[order], others[order])
+
+    @cached_property
+    def child_masks(self) -> tuple[int, ...]:
+        """For each node the set of its children (small graphs only)."""
+        return tuple(map(mask_of, self.child_lists))
+
+    @cached_property
+    def parent_masks(self) -> tuple[int, ...]:
+        """For each node the set of its parents (small graphs only)."""
+        return tuple(map(mask_of, self.parent_lists))
+
+    @cached_property
+    def spouse_masks(self) -> tuple[int, ...]:
+        """For each node the set at the other ends of its bidirected edges (small graphs only)."""
+        return tuple(map(mask_of, self.spouse_lists))
+
+    @cached_property
+    def topological_order(self) -> tuple[int, ...]:
+        """All nodes, parents before children."""
+        return tuple(graphlib.TopologicalSorter(dict(enumerate(self.parent_lists))).static_order())
+
+    def without_arrows(self, sources: int, targets: int) -> CausalGraph:
+        """The same graph less every arrow from a node of one set into a node of the other."""
+        dropped = unpack(sources, self.size)[self.sources] & unpack(targets, self.size)[self.targets]
+        return replace(self, sources=self.sources[~dropped], targets=self.targets[~dropped])
+
+    def with_leaves(self, parents: Iterable[int]) -> CausalGraph:
+        """The same graph with one more unmeasured, nameless node for each set of parents, at the end."""
+        sets = list(parents)
+        pairs = [(source, self.size + k) for k, mask in enumerate(sets) for source in members(mask)]
+        if not sets:
+            return self
+        added = np.array(pairs, dtype=np.int64).reshape(-1, 2)
+        sources = np.concatenate([self.sources, added[:, 0]])
+        targets = np.concatenate([self.targets, added[:, 1]])
+        order = np.lexsort((targets, sources))
+        names = self.names + ("",) * len(sets)
+        return replace(self, names=names, sources=sources[order], targets=targets[order])
+
+
+def _grouped(size: int, keys: IntArray, values: IntArray) -> tuple[tuple[int, ...], ...]:
+    groups: list[list[int]] = [[] for _ in range(size)]
+    for key, value in zip(keys.tolist(), values.tolist(), strict=True):
+        groups[key].append(value)
+    return tuple(map(tuple, groups))
