@@ -1,0 +1,89 @@
+"""How is the service run: under which server, with how many workers and threads, and how does it stop?
+
+gunicorn in this process, configured by the arguments alone (no file of its own, no environment variable), so
+that a plain installation, the scripts and the image all run the same thing. Workers share nothing but the
+port; each answers a few requests at a time in threads.
+"""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+from typing import Any
+
+from gunicorn.app.base import BaseApplication  # type: ignore[import-untyped]
+from gunicorn.config import KNOWN_SETTINGS  # type: ignore[import-untyped]
+
+from pathgate.web.settings import Settings
+
+SHARED_MEMORY = Path("/dev/shm")  # noqa: S108 - gunicorn makes a file with a random name there
+
+
+def gunicorn_options(
+    bind: str, workers: int, *, threads: int = 4, access_log: bool = False
+) -> dict[str, Any]:
+    """The settings gunicorn is run with, by their names there.
+
+    Arguments:
+        bind: ``HOST:PORT``.
+        workers: how many processes.
+        threads: how many requests each process answers at a time.
+        access_log: whether a line per request goes to standard output.
+
+    >>> gunicorn_options("127.0.0.1:8080", 2)["graceful_timeout"]
+    30
+    """
+    options: dict[str, Any] = {
+        "bind": bind,
+        "workers": workers,
+        "worker_class": "gthread",
+        "threads": threads,
+        # Loaded once, before the workers are forked: they share its memory, and a service that cannot
+        # start ends with an error instead of restarting its workers for ever.
+        "preload_app": True,
+        # Longer than the slowest request may take, so that a stop cuts off none.
+        "graceful_timeout": 30,
+        "keepalive": 5,
+        "accesslog": "-" if access_log else None,
+        # No header changes what a request is: the service makes no address and no scheme out of one.
+        "forwarded_allow_ips": "",
+        "forwarder_headers": "",
+        "secure_scheme_headers": {},
+        "proc_name": "pathgate",
+    }
+    if SHARED_MEMORY.is_dir() and os.access(SHARED_MEMORY, os.W_OK):
+        # A worker's sign of life is a file; on a disk it could stall, on a read-only root it could not be.
+        options["worker_tmp_dir"] = str(SHARED_MEMORY)
+    if "control_socket_disable" in {setting.name for setting in KNOWN_SETTINGS}:
+        # Newer releases open a socket in the home folder for their own command, which nothing here uses.
+        options["control_socket_disable"] = True
+    return options
+
+
+def serve(bind: str, workers: int) -> None:
+    """Serve until a signal ends it: TERM finishes the requests under way, INT and QUIT do not.
+
+    Ends the process (``SystemExit``): with status 0 after a signal, else with another one.
+
+    Raises:
+        InvalidSettings: the environment asks for settings that cannot be used; nothing was started.
+    """
+    settings = Settings.from_environment(os.environ)
+    _Server(gunicorn_options(bind, workers), settings).run()
+
+
+class _Server(BaseApplication):  # type: ignore[misc]
+    def __init__(self, options: dict[str, Any], settings: Settings) -> None:
+        self._options = options
+        self._settings = settings
+        super().__init__()
+
+    def load_config(self) -> None:
+        for name, value in self._options.items():
+            self.cfg.set(name, value)
+
+    def load(self) -> Any:
+        # Imported here, since whoever only asks for the options or for help needs no application.
+        from pathgate.web.app import create_app  # noqa: PLC0415
+
+        return create_app(self._settings)
