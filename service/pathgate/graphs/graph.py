@@ -196,6 +196,15 @@ class CausalGraph:
         dropped = unpack(sources, self.size)[self.sources] & unpack(targets, self.size)[self.targets]
         return replace(self, sources=self.sources[~dropped], targets=self.targets[~dropped])
 
+    def without_edge(self, edge: Edge) -> CausalGraph:
+        """The same graph less one edge."""
+        kind, first, second = edge
+        if kind == "directed":
+            kept = (self.sources != first) | (self.targets != second)
+            return replace(self, sources=self.sources[kept], targets=self.targets[kept])
+        kept = (self.lower_ends != min(first, second)) | (self.upper_ends != max(first, second))
+        return replace(self, lower_ends=self.lower_ends[kept], upper_ends=self.upper_ends[kept])
+
     def with_leaves(self, parents: Iterable[int]) -> CausalGraph:
         """The same graph with one more unmeasured, nameless node for each set of parents, at the end."""
         sets = list(parents)

@@ -87,9 +87,11 @@ def _list_member(value: object, member: str, faults: list[Fault]) -> Sequence[ob
 
 def _check_members(value: Mapping[object, object], faults: list[Fault]) -> None:
     faults.extend(_unknown_member(str(member)) for member in value if member not in GRAPH_MEMBERS)
-    for flag in ("directed", "multigraph"):
-        if not isinstance(value.get(flag, True), bool):
-            faults.append(Fault("invalid-request", (flag,), f'"{flag}" must be true or false'))
+    faults.extend(
+        Fault("invalid-request", (flag,), f'"{flag}" must be true or false')
+        for flag in ("directed", "multigraph")
+        if not isinstance(value.get(flag, True), bool)
+    )
     if value.get("directed") is False:
         faults.append(
             Fault("invalid-request", ("directed",), "an undirected graph says nothing about causes")

@@ -1,0 +1,42 @@
+"""Graph criteria: pure functions of a causal graph, each answer with its proof."""
+
+from pathgate.criteria.adjustment import Effect, is_valid, total_effect, valid_set
+from pathgate.criteria.colliders import Collider, Induced, colliders, induced
+from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_nodes, open_paths
+from pathgate.criteria.errors import CriterionError, OutOfTime, Overlapping
+from pathgate.criteria.paths import OpenPath, Step, Trail, directed_path, find_open_path
+from pathgate.criteria.selection import Kept, Label, Part, keep_rows
+from pathgate.criteria.separation import Separation, are_separated, separation
+
+__all__ = [
+    "Collider",
+    "CriterionError",
+    "Deadline",
+    "Effect",
+    "Forbidden",
+    "Induced",
+    "Kept",
+    "Label",
+    "Missing",
+    "OpenPath",
+    "Opened",
+    "OutOfTime",
+    "Overlapping",
+    "Part",
+    "Separation",
+    "Step",
+    "Trail",
+    "are_separated",
+    "colliders",
+    "directed_path",
+    "find_open_path",
+    "forbidden_nodes",
+    "induced",
+    "is_valid",
+    "keep_rows",
+    "open_paths",
+    "separation",
+    "total_effect",
+    "valid_set",
+]
