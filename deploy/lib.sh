@@ -72,7 +72,7 @@ print(packages.hexdigest(), project.hexdigest())
 PYTHON
 }
 
-pip_says_no_network='NewConnectionError|ConnectTimeoutError|ConnectionRefused|Connection refused|name resolution|nodename nor servname|Network is unreachable|No route to host|Max retries exceeded|ReadTimeout|ProxyError|Read timed out'
+pip_says_no_network='NewConnectionError|ConnectTimeoutError|ConnectionRefused|Connection refused|name resolution|nodename nor servname|Network is unreachable|No route to host|Max retries exceeded|ReadTimeout|ProxyError|Read timed out|from versions: none'
 
 # Runs the environment's pip quietly; what it said stays in a log, and its reason comes out in one line.
 run_pip() {
