@@ -56,7 +56,8 @@ class Engine:
         containers = folder / "containers.conf"
         containers.write_text(
             '[containers]\ndefault_ulimits = ["nofile=1024:1024", "nproc=1024:1024"]\n'
-            'log_driver = "k8s-file"\n[engine]\ncgroup_manager = "cgroupfs"\nruntime = "runc"\nevents_logger = "file"\n'
+            'log_driver = "k8s-file"\n[engine]\n'
+            'cgroup_manager = "cgroupfs"\nruntime = "runc"\nevents_logger = "file"\n'
         )
         self.environment = {
             **os.environ,
