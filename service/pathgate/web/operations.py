@@ -1,0 +1,155 @@
+"""What an operation is, and one call of it: the question as it reached us, checked as far as its schema goes.
+
+An operation is declared once, as data: its two schemas are published and enforced, its examples are published
+and replayed. The graph, the one part of a request that can be large, is kept away from the schema library:
+reading it checks its shape in bulk.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass, field
+from typing import Any
+
+from pathgate.criteria.deadline import Deadline
+from pathgate.graphs.errors import Fault
+from pathgate.review.shape import Shape
+from pathgate.web.problems import Refused
+from pathgate.web.settings import Settings
+
+Json = dict[str, Any]
+Schema = Mapping[str, Any]
+
+GRAPH_REFERENCE = {"$ref": "#/components/schemas/Graph"}
+
+
+@dataclass(frozen=True, slots=True)
+class Example:
+    """One request worth copying; its answer is computed when the document is written, and replayed by a test.
+
+    Attributes:
+        name: its key in the OpenAPI document, kebab-case.
+        summary: one line on what it asks.
+        request: the body.
+    """
+
+    name: str
+    summary: str
+    request: Json
+
+
+@dataclass(frozen=True, slots=True)
+class Operation:
+    """``POST /v1/<name>``.
+
+    Attributes:
+        name: the last step of its path, kebab-case.
+        summary: one line on what it is for.
+        description: what it means exactly (Markdown).
+        request_schema: JSON Schema of the body; the graph in it is ``GRAPH_REFERENCE``.
+        response_schema: JSON Schema of the answer.
+        examples: at least one.
+        answer: computes the answer, whose members leave in the order in which it holds them.
+        components: further schemas that the two refer to as ``#/components/schemas/<Name>``.
+    """
+
+    name: str
+    summary: str
+    description: str
+    request_schema: Schema
+    response_schema: Schema
+    examples: tuple[Example, ...]
+    answer: Callable[[Call], Json]
+    components: Mapping[str, Schema] = field(default_factory=dict)
+
+    @property
+    def path(self) -> str:
+        """Where it is served."""
+        return f"/v1/{self.name}"
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Call:
+    """One request to an operation, its envelope checked and its graph not yet read.
+
+    Attributes:
+        body: the members whose shape is right, without ``graph``; a member with a fault anywhere in it is
+            left out, so that what is here can be used without looking twice.
+        graph: the value of the member ``graph`` as it came (None where ``has_graph`` is false).
+        has_graph: was there one? Where not, that is among the faults already.
+        faults: all that is wrong so far. Whoever reads on adds to it, and then calls ``refuse_faults``.
+        settings: the limits in force.
+        deadline: how much time there is.
+        whole: all of the body, faulty members included, without ``graph``.
+    """
+
+    body: Mapping[str, Any]
+    graph: Any
+    has_graph: bool
+    faults: list[Fault]
+    settings: Settings
+    deadline: Deadline
+    whole: Mapping[str, Any]
+
+    def is_sound(self, *place: str | int) -> bool:
+        """No fault has been found at or below ``place``."""
+        return not any(fault.place[: len(place)] == place for fault in self.faults)
+
+    def sound_items(self, member: str) -> Iterator[tuple[int, Any]]:
+        """The items of a list that have no fault in them, each with its index, even where others have one."""
+        items = self.whole.get(member)
+        if isinstance(items, list):
+            below = [fault.place[1:] for fault in self.faults if fault.place[:1] == (member,)]
+            faulty = {steps[0] for steps in below if steps}
+            yield from ((index, item) for index, item in enumerate(items) if index not in faulty)
+
+    def refuse_faults(self) -> None:
+        """Go on where nothing is wrong.
+
+        Raises:
+            Refused: something is.
+        """
+        if self.faults:
+            raise Refused(self.faults)
+
+
+def envelope_shape(operation: Operation) -> Shape:
+    """The shape of a request of ``operation`` whatever its graph, ready to check many."""
+    schema = _graph_taken_out(operation.request_schema)
+    components = {name: _graph_taken_out(each) for name, each in operation.components.items()}
+    return Shape({**schema, "components": {"schemas": components}})
+
+
+def open_call(shape: Shape, value: Any, settings: Settings, deadline: Deadline) -> Call:
+    """The call that a parsed body makes, its envelope checked against ``shape``.
+
+    Raises:
+        Refused: the body is no object.
+    """
+    if not isinstance(value, dict):
+        raise Refused(shape.faults(value))
+    whole = {member: said for member, said in value.items() if member != "graph"}
+    has_graph = "graph" in value
+    faults = shape.faults({**whole, "graph": None} if has_graph else whole)
+    faulty = {fault.place[0] for fault in faults if fault.place}
+    body = {member: said for member, said in whole.items() if member not in faulty} if faulty else whole
+    return Call(
+        body=body,
+        graph=value.get("graph"),
+        has_graph=has_graph,
+        faults=faults,
+        settings=settings,
+        deadline=deadline,
+        whole=whole,
+    )
+
+
+def _graph_taken_out(schema: Any) -> Any:
+    """The schema with every reference to a graph replaced by "anything"."""
+    if isinstance(schema, Mapping):
+        if schema.get("$ref") == GRAPH_REFERENCE["$ref"]:
+            return True
+        return {key: _graph_taken_out(each) for key, each in schema.items()}
+    if isinstance(schema, list | tuple):
+        return [_graph_taken_out(each) for each in schema]
+    return schema
