@@ -29,23 +29,27 @@ class Forbidden:
         node: its index.
         is_on_path: does it lie on a causal path itself, or descend from one?
         descends_from: the last node of a causal path above it; itself where it lies on one.
-        path: the causal path through that node, from a treatment to an outcome.
+        causal_path: the causal path through that node, from a treatment to an outcome.
         descent: the directed path from that node to this one.
     """
 
     node: int
     is_on_path: bool
     descends_from: int
-    path: OpenPath
+    causal_path: Trail
     descent: Trail
 
 
 @dataclass(frozen=True, slots=True)
 class Opened:
-    """A non-causal path that conditioning opened: ``openers`` are the nodes to blame, ``colliders`` where."""
+    """A non-causal path that conditioning opened.
 
-    openers: tuple[int, ...]
-    colliders: tuple[int, ...]
+    Attributes:
+        descents: for each collider on it, the directed path down to the conditioned node to blame.
+        trail, path: the path by indices and by names.
+    """
+
+    descents: tuple[Trail, ...]
     trail: Trail
     path: OpenPath
 
@@ -72,8 +76,7 @@ def forbidden_nodes(effect: Effect, nodes: int) -> Iterator[Forbidden]:
         if descent is None:
             continue
         above = descent.nodes[0]
-        path = explain(effect.kept, _causal_path_through(effect, above), 0)
-        yield Forbidden(node, above == node, above, path, descent)
+        yield Forbidden(node, above == node, above, _causal_path_through(effect, above), descent)
 
 
 def open_paths(effect: Effect, covariates: int, deadline: Deadline) -> Iterator[Opened | Missing]:
@@ -92,9 +95,9 @@ def open_paths(effect: Effect, covariates: int, deadline: Deadline) -> Iterator[
         path = explain(effect.kept, trail, openers)
         colliders = tuple(node for node, role in trail.inner if role == "collider")
         if colliders:
-            culprits = dict.fromkeys(opened_by(graph, node, openers).nodes[-1] for node in colliders)
-            yield Opened(tuple(culprits), colliders, trail, path)
-            openers &= ~mask_of(culprits)
+            descents = tuple(opened_by(effect.kept.graph, node, openers) for node in colliders)
+            yield Opened(descents, trail, path)
+            openers &= ~mask_of(descent.nodes[-1] for descent in descents)
         else:
             blocker = _blocker(effect, trail)
             yield Missing(blocker, trail, path)

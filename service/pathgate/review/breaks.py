@@ -1,0 +1,167 @@
+"""Which columns and filter parts break a claim, along which path: the criteria's diagnosis put into words."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_nodes, open_paths
+from pathgate.criteria.paths import Trail
+from pathgate.criteria.selection import Kept, Part
+from pathgate.graphs.errors import Place
+from pathgate.graphs.masks import mask_of
+from pathgate.review.claims import Claim
+from pathgate.review.config import Config
+from pathgate.review.findings import Finding
+from pathgate.review.wording import arrow_text, listed, names_in, part_text
+
+
+def breaking_findings(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
+    """Everything that keeps the covariates, on the rows kept, from carrying the effect.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    effect = claim.effect
+    conditioned = claim.usable_covariates | effect.kept.conditioned
+    for forbidden in forbidden_nodes(effect, conditioned):
+        deadline.poll()
+        yield from _Blame(claim, config, effect.kept).forbidden(forbidden)
+    # What is forbidden has to go in any case, so the rest is judged as if it were gone already.
+    harmless = [part for node, part in effect.kept.part_of.items() if not effect.forbidden >> node & 1]
+    remaining = claim.effect_among(harmless)
+    blame = _Blame(claim, config, remaining.kept)
+    for found in open_paths(remaining, claim.usable_covariates & ~remaining.forbidden, deadline):
+        yield from blame.opened(found) if isinstance(found, Opened) else blame.missing(found)
+
+
+@dataclass(frozen=True, slots=True)
+class _Cause:
+    """What in the config conditions on a node.
+
+    Attributes:
+        kind: a covariate or a part of the row filter.
+        doing: what the config does with it, as the subject of a sentence.
+        columns: the columns to blame.
+        distance: arrows from the node in question down to the column that is adjusted for or filtered by;
+            -1 where a part of the filter is that node itself.
+        place, part: where in the config, and for a filter its condition.
+    """
+
+    kind: str
+    doing: str
+    columns: tuple[str, ...]
+    distance: int
+    place: Place
+    part: object = None
+
+    @property
+    def harm(self) -> str:
+        if self.kind == "filter":
+            return "lets the effect decide who is compared"
+        return "takes away part of the effect"
+
+    def rule(self, about: str) -> str:
+        return f"{self.kind}-{'below' if self.distance > 0 else 'on'}-{about}"
+
+
+class _Blame:
+    """Turns what was diagnosed on some kept rows into findings at the places in the config that cause it."""
+
+    def __init__(self, claim: Claim, config: Config, kept: Kept) -> None:
+        self._claim = claim
+        self._config = config
+        self._kept = kept
+        self._conditioned = claim.usable_covariates | kept.conditioned
+
+    def forbidden(self, found: Forbidden) -> Iterator[Finding]:
+        above = listed([self._kept.graph.name(found.descends_from)])
+        drawn = arrow_text(self._kept, found.causal_path, self._conditioned)
+        for cause in self._causes(found.node, found.descent, found.descent.nodes):
+            which = listed(cause.columns)
+            if cause.distance == 0:
+                message = (
+                    f"{which} lies on the causal path {drawn}: {cause.doing} takes away part of the effect."
+                )
+            else:
+                message = (
+                    f"{which} is a consequence of {above} on the causal path {drawn}: {cause.doing}"
+                    f" {cause.harm}, or joins what should stay apart."
+                )
+            label = self._kept.label
+            yield Finding(
+                rule=cause.rule("causal-path"),
+                columns=cause.columns,
+                message=_capital(message),
+                place=cause.place,
+                part=cause.part,
+                causal_path=tuple(map(label, found.causal_path.nodes)),
+                descent=tuple(map(label, found.descent.nodes)),
+            )
+
+    def opened(self, found: Opened) -> Iterator[Finding]:
+        drawn = arrow_text(self._kept, found.trail, self._conditioned)
+        graph = self._kept.graph
+        for descent in found.descents:
+            collider = descent.nodes[0]
+            for cause in self._causes(descent.nodes[-1], descent, found.trail.nodes):
+                which = listed(cause.columns)
+                if cause.distance < 0:
+                    why = f"it reads {which} together"
+                elif cause.distance == 0:
+                    why = f"{which} is a common consequence on it"
+                else:
+                    why = f"{which} is a consequence of {listed([graph.name(collider)])}, a common consequence on it"
+                message = f"{_capital(cause.doing)} opens the path {drawn}, which is not the effect: {why}."
+                rule = cause.rule("collider")
+                yield Finding(rule, cause.columns, message, cause.place, cause.part, found.path)
+
+    def missing(self, found: Missing) -> Iterator[Finding]:
+        drawn = arrow_text(self._kept, found.trail, self._conditioned)
+        still_open = f"The path {drawn} is not the effect and stays open"
+        if found.blocker is None:
+            ends = names_in(self._kept, mask_of((found.trail.nodes[0], found.trail.nodes[-1])))
+            message = f"{still_open}: nothing on it is measured, so no covariate on it can block it."
+            yield Finding("unmeasured-cause", ends, message, ("covariates",), path=found.path)
+            return
+        name = self._kept.graph.name(found.blocker)
+        is_fork = (found.blocker, "fork") in found.trail.inner
+        why = "is a common cause on it" if is_fork else "would block it"
+        message = f"{still_open}: {listed([name])} {why} and the model does not adjust for it."
+        yield Finding("missing-covariate", (name,), message, ("covariates",), path=found.path)
+
+    def _causes(self, node: int, descent: Trail, along: tuple[int, ...]) -> Iterator[_Cause]:
+        """Who conditions on ``node``, the last one of ``descent``; ``along`` tells what a part joins."""
+        names = self._kept.graph
+        for named in self._config.covariates:
+            if named.node == node and self._claim.usable_covariates >> node & 1:
+                columns = (names.name(node),)
+                doing = f"adjusting for {listed(columns)}"
+                yield _Cause("covariate", doing, columns, len(descent.nodes) - 1, named.place)
+        for filter_part in self._config.filter_parts:
+            part = filter_part.part
+            if self._stands_for(node, part):
+                distance = len(descent.nodes) - (1 if part.fixed else 2)
+                read = self._columns_read(node, part, descent, along)
+                doing = f"keeping rows by {part_text(part.written)}"
+                yield _Cause("filter", doing, read, distance, filter_part.place, part.written)
+
+    def _stands_for(self, node: int, part: Part) -> bool:
+        if part.fixed:
+            return part.columns == 1 << node and bool(self._kept.conditioned >> node & 1)
+        standing = self._kept.part_of.get(node)
+        return standing is not None and not standing.fixed and standing.written is part.written
+
+    def _columns_read(self, node: int, part: Part, descent: Trail, along: tuple[int, ...]) -> tuple[str, ...]:
+        if part.fixed:
+            return self._kept.graph.names_of(part.columns)
+        if len(descent.nodes) > 1:
+            return (self._kept.graph.name(descent.nodes[-2]),)
+        # The part itself is where two arrowheads meet: its neighbours on the path are what it joins.
+        place = along.index(node)
+        return self._kept.graph.names_of(mask_of((along[place - 1], along[place + 1])))
+
+
+def _capital(sentence: str) -> str:
+    return sentence[:1].upper() + sentence[1:]

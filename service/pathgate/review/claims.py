@@ -1,0 +1,105 @@
+"""What a config claims, in terms of the graph, and whether a choice of covariates and filter parts carries it.
+
+The verdict, the remedies and "can anything carry it" all ask this module, so that they cannot disagree.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+from pathgate.criteria.adjustment import Effect, is_valid, total_effect, valid_set
+from pathgate.criteria.selection import Part, keep_rows
+from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.masks import mask_of
+from pathgate.review.config import Config
+
+
+@dataclass(frozen=True)
+class Claim:
+    """An effect claimed on a graph.
+
+    Attributes:
+        graph: the team's graph.
+        treatments, outcomes: masks.
+        covariates: what the config adjusts for.
+        parts: its row filter.
+        row_filter_fixed: may no part be dropped?
+    """
+
+    graph: CausalGraph
+    treatments: int
+    outcomes: int
+    covariates: int
+    parts: tuple[Part, ...]
+    row_filter_fixed: bool
+
+    @classmethod
+    def of(cls, graph: CausalGraph, config: Config) -> Claim:
+        """The claim that a config makes."""
+        return cls(
+            graph=graph,
+            treatments=mask_of(named.node for named in config.treatments),
+            outcomes=mask_of(named.node for named in config.outcomes),
+            covariates=mask_of(named.node for named in config.covariates),
+            parts=tuple(filter_part.part for filter_part in config.filter_parts),
+            row_filter_fixed=config.row_filter_fixed,
+        )
+
+    @property
+    def ends(self) -> int:
+        """Treatments and outcomes."""
+        return self.treatments | self.outcomes
+
+    @cached_property
+    def usable_covariates(self) -> int:
+        """The covariates that the model can have: measured, and neither treatment nor outcome."""
+        return self.covariates & self.graph.measured & ~self.ends
+
+    @cached_property
+    def judged_parts(self) -> tuple[Part, ...]:
+        """The filter as far as it can be judged: without unmeasured columns, without parts that leave
+        nothing to compare."""
+        judged = []
+        for part in self.parts:
+            columns = part.columns & self.graph.measured
+            if columns and not (part.fixed and columns & self.ends):
+                judged.append(part if columns == part.columns else Part(columns, part.fixed, part.written))
+        return tuple(judged)
+
+    @cached_property
+    def effect(self) -> Effect:
+        """The effect claimed, on the rows that the judged parts keep."""
+        return self.effect_among(self.judged_parts)
+
+    def effect_among(self, parts: Sequence[Part]) -> Effect:
+        """The effect on the rows that some parts keep."""
+        return total_effect(keep_rows(self.graph, parts), self.treatments, self.outcomes)
+
+    def can_filter_by(self, part: Part) -> bool:
+        """Can a dataset be filtered by this part and still hold something to compare?"""
+        return not part.columns & ~self.graph.measured and not (part.fixed and part.columns & self.ends)
+
+    def is_carried_by(self, covariates: int, parts: Sequence[Part]) -> bool:
+        """Does this choice review as sound?"""
+        if self.ends & ~self.graph.measured or covariates & (self.ends | ~self.graph.measured):
+            return False
+        return all(map(self.can_filter_by, parts)) and is_valid(self.effect_among(parts), covariates)
+
+    @cached_property
+    def droppable_parts(self) -> tuple[Part, ...]:
+        """The parts that a remedy may drop."""
+        return () if self.row_filter_fixed else self.parts
+
+    @cached_property
+    def can_be_carried(self) -> bool:
+        """Would any choice of measured covariates, with whichever filter parts may be dropped, do?
+
+        Dropping a part never hurts: a selection node has no children and so blocks nothing, and where a
+        part fixes a column, the column can be adjusted for instead.
+        """
+        parts = self.parts if self.row_filter_fixed else ()
+        if self.ends & ~self.graph.measured or not all(map(self.can_filter_by, parts)):
+            return False
+        return valid_set(self.effect_among(parts)) is not None

@@ -1,0 +1,176 @@
+"""Reads a model config against a graph: which columns its names mean, and what makes it no config at all."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from pathgate.criteria.selection import Part
+from pathgate.graphs.errors import Fault, Place
+from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.masks import mask_of
+from pathgate.graphs.names import did_you_mean, quoted
+from pathgate.review.errors import InvalidConfig
+from pathgate.review.schema import CONFIG_SCHEMA
+from pathgate.review.shape import Shape
+
+
+@dataclass(frozen=True, slots=True)
+class Named:
+    """A column and where the config names it."""
+
+    node: int
+    place: Place
+
+
+@dataclass(frozen=True, slots=True)
+class FilterPart:
+    """One condition of the row filter and where the config puts it."""
+
+    part: Part
+    place: Place
+
+
+@dataclass(frozen=True, slots=True)
+class Config:
+    """A model config whose names are those of a graph; places are steps from the config itself.
+
+    Attributes:
+        name: what answers call it; empty where it has no name.
+        treatments, outcomes, covariates: columns, each named once.
+        filter_parts: the conditions on the rows kept.
+        row_filter_fixed: may no part of the filter be dropped?
+        meta: what the caller put there; None where nothing.
+    """
+
+    name: str
+    treatments: tuple[Named, ...]
+    outcomes: tuple[Named, ...]
+    covariates: tuple[Named, ...]
+    filter_parts: tuple[FilterPart, ...] = ()
+    row_filter_fixed: bool = False
+    meta: object = None
+
+
+def read_config(value: object, graph: CausalGraph) -> Config:
+    """The config that a parsed JSON or YAML value describes.
+
+    Raises:
+        InvalidConfig: it describes none; ``faults`` holds every reason, places counted from the config.
+
+    >>> graph = CausalGraph.of(("rain", "delay"), ("delay", "refund"))
+    >>> config = read_config({"treatment": "delay", "outcome": "refund", "covariates": ["rain"]}, graph)
+    >>> [graph.name(covariate.node) for covariate in config.covariates]
+    ['rain']
+    """
+    faults = Shape(CONFIG_SCHEMA).faults(value)
+    if faults or not isinstance(value, Mapping):
+        # Names are worth checking too where the shape of their members is right.
+        faulty = {fault.place[0] for fault in faults if fault.place}
+        readable = value if isinstance(value, Mapping) else {}
+        understand_config({k: said for k, said in readable.items() if k not in faulty}, graph, faults)
+        raise InvalidConfig(faults)
+    config = understand_config(value, graph, faults)
+    if faults or config is None:
+        raise InvalidConfig(faults)
+    return config
+
+
+def understand_config(value: Mapping[str, Any], graph: CausalGraph, faults: list[Fault]) -> Config | None:
+    """The config that a value of the right shape describes; what makes it meaningless is added to ``faults``.
+
+    Members may be missing where their shape is already among the faults; then there is no config.
+    """
+    names = NameReader(graph, faults)
+    treatments = names.read(value.get("treatment", []), ("treatment",))
+    outcomes = names.read(value.get("outcome", []), ("outcome",))
+    covariates = names.read(value.get("covariates", []), ("covariates",))
+    parts = read_parts(value.get("row_filter", []), names, ("row_filter",))
+    _refuse_shared(graph, treatments, outcomes, faults)
+    if faults or not treatments or not outcomes:
+        return None
+    return Config(
+        name=value.get("name", ""),
+        treatments=treatments,
+        outcomes=outcomes,
+        covariates=covariates,
+        filter_parts=parts,
+        row_filter_fixed=value.get("row_filter_fixed", False),
+        meta=value.get("meta"),
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class NameReader:
+    """Finds the columns that names mean, by id or by another name of the column.
+
+    Attributes:
+        graph: where the columns are.
+        faults: what is wrong is added here.
+        by_alias: do other names of a column count? They do in configs.
+    """
+
+    graph: CausalGraph
+    faults: list[Fault]
+    by_alias: bool = True
+
+    def read(self, value: str | Sequence[str], place: Place) -> tuple[Named, ...]:
+        """The columns that a name or a list of names means; unknown and repeated names are faults."""
+        listed = (
+            [(value, place)] if isinstance(value, str) else [(v, (*place, k)) for k, v in enumerate(value)]
+        )
+        found: dict[int, Named] = {}
+        for name, at in listed:
+            node = self.find(name)
+            if node is None:
+                detail = f"no node is named {quoted(name)}{did_you_mean(name, self.graph.names)}"
+                self.faults.append(Fault("unknown-node", at, detail, (name,)))
+            elif node in found:
+                detail = f"the column {quoted(self.graph.name(node))} is named twice"
+                self.faults.append(Fault("invalid-request", at, detail, (self.graph.name(node),)))
+            else:
+                found[node] = Named(node, at)
+        return tuple(found.values())
+
+    def find(self, name: str) -> int | None:
+        """The node that bears this name."""
+        node = self.graph.index.get(name)
+        return self.graph.aliases.get(name) if node is None and self.by_alias else node
+
+
+def read_parts(value: str | Sequence[Any], names: NameReader, place: Place) -> tuple[FilterPart, ...]:
+    """The conditions on the rows that a value of the right shape describes, bare names making up one."""
+    items = [value] if isinstance(value, str) else list(value)
+    bare = [(k, item) for k, item in enumerate(items) if isinstance(item, str)]
+    parts: list[FilterPart] = []
+    for k, item in enumerate(items):
+        if isinstance(item, str):
+            if k == bare[0][0]:
+                found = [one for at, name in bare for one in names.read(name, (*place, at))]
+                columns = mask_of(one.node for one in found)
+                parts.append(
+                    FilterPart(Part(columns, fixed=False, written=[name for _, name in bare]), place)
+                )
+        else:
+            parts.append(_object_part(item, names, (*place, k)))
+    return tuple(parts)
+
+
+def _object_part(item: Mapping[str, Any], names: NameReader, place: Place) -> FilterPart:
+    found = names.read(item["columns"], (*place, "columns"))
+    fixed = item.get("fixed", False)
+    if fixed and not isinstance(item["columns"], str) and len(item["columns"]) != 1:
+        detail = "a condition that is fixed holds exactly one column at one value"
+        names.faults.append(Fault("invalid-request", (*place, "fixed"), detail))
+    return FilterPart(Part(mask_of(one.node for one in found), fixed=fixed, written=dict(item)), place)
+
+
+def _refuse_shared(
+    graph: CausalGraph, treatments: Sequence[Named], outcomes: Sequence[Named], faults: list[Fault]
+) -> None:
+    for outcome in outcomes:
+        if any(outcome.node == treatment.node for treatment in treatments):
+            name = graph.name(outcome.node)
+            detail = f"{quoted(name)} cannot be both treatment and outcome"
+            faults.append(Fault("invalid-request", outcome.place, detail, (name,)))

@@ -1,0 +1,100 @@
+"""A review as the JSON document that HTTP callers and the command print: the same members, the same bytes."""
+
+from __future__ import annotations
+
+from typing import Any
+from urllib.parse import quote
+
+from pathgate.criteria.paths import OpenPath, Step
+from pathgate.criteria.selection import Label, Part
+from pathgate.graphs.errors import Place
+from pathgate.review.claims import Claim
+from pathgate.review.findings import Finding
+from pathgate.review.remedies import Remedy
+from pathgate.review.review import Review
+from pathgate.review.summary import ABOUT_THE_GRAPH, SOUND_MEANS, remedy_text
+
+Json = dict[str, Any]
+
+
+def review_document(answer: Review) -> Json:
+    """The answer of /v1/review."""
+    claim = answer.claim
+    document: Json = {
+        "name": answer.name,
+        "verdict": answer.verdict,
+        "summary": answer.summary,
+        "findings": [finding_document(finding) for finding in answer.findings],
+        "columns": [
+            {"column": each.column, "role": each.role, "advice": each.advice} for each in answer.columns
+        ],
+        "remedies": [remedy_document(claim, remedy) for remedy in answer.remedies],
+        "cautions": [SOUND_MEANS, ABOUT_THE_GRAPH] if answer.verdict == "sound" else [ABOUT_THE_GRAPH],
+    }
+    if answer.meta is not None:
+        document["meta"] = answer.meta
+    return document
+
+
+def finding_document(finding: Finding) -> Json:
+    """One finding; with its part and its paths only where it has them."""
+    document: Json = {
+        "rule": finding.rule,
+        "severity": finding.severity,
+        "columns": list(finding.columns),
+        "message": finding.message,
+        "pointer": pointer(("config", *finding.place)),
+    }
+    if finding.part is not None:
+        document["part"] = finding.part
+    if finding.path is not None:
+        document["open_path"] = path_document(finding.path)
+    if finding.causal_path:
+        document["causal_path"] = [label_document(label) for label in finding.causal_path]
+        document["descent"] = [label_document(label) for label in finding.descent]
+    return document
+
+
+def remedy_document(claim: Claim, remedy: Remedy) -> Json:
+    """One remedy; its lists of columns in the graph's order."""
+    names = claim.graph.names_of
+    return {
+        "covariates": list(names(remedy.covariates)),
+        "add": list(names(remedy.add)),
+        "drop": list(names(remedy.drop)),
+        "drop_filter_parts": [part.written for part in remedy.drop_parts],
+        "population": "kept",
+        "message": remedy_text(claim, remedy),
+    }
+
+
+def path_document(path: OpenPath) -> Json:
+    """A path as answers show it."""
+    return {
+        "nodes": [label_document(label) for label in path.nodes],
+        "arrows": list(path.arrows),
+        "steps": [_step_document(step) for step in path.steps],
+    }
+
+
+def label_document(label: Label) -> Any:
+    """A node's name, or the condition that a selection node stands for."""
+    return {"part": label.written} if isinstance(label, Part) else label
+
+
+def pointer(place: Place) -> str:
+    """A place as a JSON pointer in URI fragment form (RFC 6901, section 6)."""
+    steps = (str(step).replace("~", "~0").replace("/", "~1") for step in place)
+    return "#" + "".join("/" + quote(step, safe="~!$&'()*+,;=:@") for step in steps)
+
+
+def _step_document(step: Step) -> Json:
+    document: Json = {
+        "node": label_document(step.node),
+        "role": step.role,
+        "open": True,
+        "because": step.because,
+    }
+    if step.through:
+        document["through"] = [label_document(label) for label in step.through]
+    return document

@@ -1,0 +1,108 @@
+"""Does the number that a model config reports mean what it claims?
+
+The verdict: ``sound`` where these covariates on these rows carry the effect claimed; ``unanswerable`` where
+no choice of measured covariates and of filter parts would; ``biased`` otherwise, and then with a remedy.
+It speaks of the graph that it was given.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Literal
+
+from pathgate.criteria.deadline import Deadline
+from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.masks import mask_of
+from pathgate.review.breaks import breaking_findings
+from pathgate.review.claims import Claim
+from pathgate.review.config import Config
+from pathgate.review.degenerate import degenerate_findings
+from pathgate.review.findings import Finding
+from pathgate.review.remedies import Remedy, find_remedies
+from pathgate.review.roles import ColumnRole, column_roles
+from pathgate.review.summary import summarise
+from pathgate.review.warnings import warning_findings
+
+Verdict = Literal["sound", "biased", "unanswerable"]
+
+_GRAVITY = {"error": 0, "warning": 1, "note": 2}
+
+
+@dataclass(frozen=True, slots=True)
+class Review:
+    """The verdict on one config, and all that led to it.
+
+    Attributes:
+        claim: what was judged.
+        name, meta: the config's own.
+        findings: errors first, then warnings, each group in the order of the config.
+        columns: role and advice for the columns of the config, its remedies and its open paths.
+        remedies: fewest changes first; empty unless the verdict is ``biased``.
+        summary: the whole in one sentence.
+    """
+
+    claim: Claim
+    name: str
+    verdict: Verdict
+    findings: tuple[Finding, ...]
+    columns: tuple[ColumnRole, ...]
+    remedies: tuple[Remedy, ...]
+    summary: str
+    meta: object = None
+
+
+def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None) -> Review:
+    """Judge a config against a graph.
+
+    Raises:
+        OutOfTime: the deadline came first.
+
+    >>> from pathgate.review.config import read_config
+    >>> graph = CausalGraph.of(("rain", "delay"), ("rain", "refund"), ("delay", "refund"))
+    >>> config = read_config({"treatment": "delay", "outcome": "refund", "covariates": []}, graph)
+    >>> answer = review(graph, config)
+    >>> answer.verdict, answer.findings[0].rule, answer.findings[0].columns
+    ('biased', 'missing-covariate', ('rain',))
+    """
+    deadline = deadline or Deadline.never()
+    claim = Claim.of(graph, config)
+    findings = [
+        *degenerate_findings(claim, config),
+        *breaking_findings(claim, config, deadline),
+        *warning_findings(claim, config),
+    ]
+    findings.sort(key=lambda finding: _GRAVITY[finding.severity])
+    verdict = _verdict(claim, findings)
+    remedies = find_remedies(claim, deadline) if verdict == "biased" else ()
+    columns = _columns_in_question(claim, findings, remedies)
+    first = remedies[0] if remedies else None
+    return Review(
+        claim=claim,
+        name=config.name,
+        verdict=verdict,
+        findings=tuple(findings),
+        columns=column_roles(claim, columns, first, is_sound=verdict == "sound"),
+        remedies=remedies,
+        summary=summarise(claim, verdict, findings, first),
+        meta=config.meta,
+    )
+
+
+def _verdict(claim: Claim, findings: list[Finding]) -> Verdict:
+    if not any(finding.severity == "error" for finding in findings):
+        return "sound"
+    return "biased" if claim.can_be_carried else "unanswerable"
+
+
+def _columns_in_question(claim: Claim, findings: list[Finding], remedies: tuple[Remedy, ...]) -> int:
+    graph = claim.graph
+    nodes = claim.ends | claim.covariates
+    for part in claim.parts:
+        nodes |= part.columns
+    for remedy in remedies:
+        nodes |= remedy.covariates
+    for finding in findings:
+        labels = finding.path.nodes if finding.path else finding.causal_path
+        on_path = mask_of(graph.index[label] for label in labels if isinstance(label, str))
+        nodes |= on_path & graph.measured
+    return nodes

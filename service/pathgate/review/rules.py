@@ -1,0 +1,96 @@
+"""The rules that a review can find broken: their names, how grave each is, and what each means."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Literal
+
+Severity = Literal["error", "warning", "note"]
+
+
+@dataclass(frozen=True, slots=True)
+class Rule:
+    """One way in which a config can fall short.
+
+    Attributes:
+        name: stable, kebab-case.
+        severity: with an ``error`` the config is not sound.
+        meaning: one sentence.
+    """
+
+    name: str
+    severity: Severity
+    meaning: str
+
+
+RULES: dict[str, Rule] = {
+    rule.name: rule
+    for rule in (
+        Rule(
+            "missing-covariate",
+            "error",
+            "A path that is not the effect joins treatment and outcome, and a measured column would block it.",
+        ),
+        Rule(
+            "unmeasured-cause",
+            "error",
+            "A path that is not the effect joins treatment and outcome, and nothing on it is measured.",
+        ),
+        Rule(
+            "covariate-on-causal-path",
+            "error",
+            "The model adjusts for a mediator, and so takes away part of the effect it claims.",
+        ),
+        Rule(
+            "covariate-below-causal-path",
+            "error",
+            "The model adjusts for a consequence of the outcome or of a mediator.",
+        ),
+        Rule(
+            "covariate-on-collider",
+            "error",
+            "The model adjusts for a common consequence, and so joins its causes.",
+        ),
+        Rule(
+            "covariate-below-collider",
+            "error",
+            "The model adjusts for a descendant of a common consequence, and so joins the causes above it.",
+        ),
+        Rule(
+            "filter-on-causal-path",
+            "error",
+            "The rows are kept by the outcome or by a mediator, so who is compared depends on the effect.",
+        ),
+        Rule(
+            "filter-below-causal-path",
+            "error",
+            "The rows are kept by a consequence of the outcome or of a mediator.",
+        ),
+        Rule(
+            "filter-on-collider",
+            "error",
+            "The rows are kept by a common consequence, and so its causes are joined among them.",
+        ),
+        Rule(
+            "filter-below-collider",
+            "error",
+            "The rows are kept by a descendant of a common consequence, and so the causes above it are joined.",
+        ),
+        Rule("treatment-among-covariates", "error", "The model adjusts for its own treatment."),
+        Rule("outcome-among-covariates", "error", "The model adjusts for its own outcome."),
+        Rule(
+            "treatment-fixed", "error", "The rows kept hold one value of the treatment: nothing to compare."
+        ),
+        Rule("outcome-fixed", "error", "The rows kept hold one value of the outcome: nothing to compare."),
+        Rule("unmeasured-covariate", "error", "The model adjusts for something the platform does not hold."),
+        Rule(
+            "unmeasured-filter-column", "error", "The rows are kept by something the platform does not hold."
+        ),
+        Rule("unmeasured-treatment", "error", "The treatment is something the platform does not hold."),
+        Rule("unmeasured-outcome", "error", "The outcome is something the platform does not hold."),
+        Rule("filter-depends-on-treatment", "warning", "Who is kept depends on the treatment."),
+        Rule("no-causal-path", "warning", "No directed path leads from the treatment to the outcome."),
+        Rule("outcome-precedes-treatment", "warning", "The outcome is a cause of the treatment."),
+        Rule("treatment-precedes-treatment", "warning", "One treatment is a cause of another."),
+    )
+}

@@ -1,0 +1,65 @@
+"""The whole verdict in one sentence that can stand alone in a chat or a log."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Literal
+
+from pathgate.review.claims import Claim
+from pathgate.review.findings import Finding
+from pathgate.review.remedies import Remedy
+from pathgate.review.wording import listed, part_text
+
+SOUND_MEANS = (
+    "Sound means that these covariates on these rows suffice if the graph is right: it says nothing of"
+    " functional form, interference or measurement error, nor of odds and hazard ratios, which change with any"
+    " cause of the outcome that is adjusted for."
+)
+ABOUT_THE_GRAPH = (
+    "A verdict is about the graph it was given: it does not show that the graph is right. Where a number decides"
+    " about people's health, credit, work or safety, a qualified statistician and the local rules come first."
+)
+
+
+def summarise(
+    claim: Claim,
+    verdict: Literal["sound", "biased", "unanswerable"],
+    findings: Sequence[Finding],
+    remedy: Remedy | None,
+) -> str:
+    """One sentence that names the effect, the verdict, the culprits and the way out."""
+    graph = claim.graph
+    effect = f"the effect of {listed(graph.names_of(claim.treatments))} on {listed(graph.names_of(claim.outcomes))}"
+    if verdict == "sound":
+        adjusted = graph.names_of(claim.covariates)
+        how = f"adjusted for {listed(adjusted)}" if adjusted else "without covariates"
+        return f"Sound: {effect}, {how}, is what the model reports, if the graph is right."
+    culprits = _culprits(findings)
+    if verdict == "unanswerable":
+        return f"Unanswerable: no choice of measured covariates gives {effect} ({culprits})."
+    return f"Biased: the model does not report {effect} ({culprits}); {remedy_text(claim, remedy)}."
+
+
+def remedy_text(claim: Claim, remedy: Remedy | None) -> str:
+    """What a remedy asks for, as the end of a sentence."""
+    if remedy is None:
+        return "no remedy was found"
+    graph = claim.graph
+    steps = []
+    if remedy.add:
+        steps.append(f"adjust for {listed(graph.names_of(remedy.add))}")
+    if remedy.drop:
+        steps.append(f"stop adjusting for {listed(graph.names_of(remedy.drop))}")
+    if remedy.drop_parts:
+        shown = " and ".join(part_text(part.written) for part in remedy.drop_parts)
+        steps.append(f"stop filtering by {shown}")
+    return f"to mend it, {' and '.join(steps)}"
+
+
+def _culprits(findings: Sequence[Finding]) -> str:
+    told = dict.fromkeys(
+        f"{finding.rule}: {listed(finding.columns)}" for finding in findings if finding.severity == "error"
+    )
+    shown = list(told)
+    more = [f"{len(shown) - 3} more"] if len(shown) > 3 else []
+    return "; ".join([*shown[:3], *more])

@@ -1,0 +1,68 @@
+"""What a sound config should still know: directions and populations that its number is easily misread for."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from pathgate.graphs.kinship import ancestors, descendants
+from pathgate.review.claims import Claim
+from pathgate.review.config import Config
+from pathgate.review.findings import Finding
+from pathgate.review.wording import listed, part_text
+
+
+def warning_findings(claim: Claim, config: Config) -> Iterator[Finding]:
+    """Warnings on treatments, outcomes and filter; none of them changes the verdict."""
+    yield from _directions(claim, config)
+    yield from _treatments(claim, config)
+    yield from _filter(claim, config)
+
+
+def _directions(claim: Claim, config: Config) -> Iterator[Finding]:
+    graph = claim.graph
+    outcomes = listed(graph.names_of(claim.outcomes), "or")
+    for treatment in config.treatments:
+        name = graph.name(treatment.node)
+        if not descendants(graph, 1 << treatment.node) & claim.outcomes:
+            message = (
+                f"No directed path leads from {listed([name])} to {outcomes}: by this graph the effect is zero,"
+                " and any other number is bias or chance."
+            )
+            yield Finding("no-causal-path", (name,), message, treatment.place)
+        for outcome in config.outcomes:
+            if ancestors(graph, 1 << treatment.node) >> outcome.node & 1:
+                names = graph.names_of(1 << treatment.node | 1 << outcome.node)
+                message = (
+                    f"The outcome {listed([graph.name(outcome.node)])} is a cause of the treatment"
+                    f" {listed([name])} in this graph: the two may have been swapped."
+                )
+                yield Finding("outcome-precedes-treatment", names, message, outcome.place)
+
+
+def _treatments(claim: Claim, config: Config) -> Iterator[Finding]:
+    graph = claim.graph
+    for treatment in config.treatments:
+        later = descendants(graph, 1 << treatment.node) & claim.treatments & ~(1 << treatment.node)
+        if later:
+            earlier, names = graph.name(treatment.node), graph.names_of(later)
+            message = (
+                f"{listed([earlier])} is a cause of {listed(names)}, a treatment too: its coefficient is its"
+                " effect with the other treatments held fixed, not its total effect."
+            )
+            columns = graph.names_of(later | 1 << treatment.node)
+            yield Finding("treatment-precedes-treatment", columns, message, treatment.place)
+
+
+def _filter(claim: Claim, config: Config) -> Iterator[Finding]:
+    graph = claim.graph
+    below = descendants(graph, claim.treatments)
+    for filter_part in config.filter_parts:
+        part = filter_part.part
+        # A filter on treatments alone narrows their range and says nothing else about who is kept.
+        if part.columns & below and part.columns & ~claim.treatments:
+            columns = graph.names_of(part.columns & below)
+            message = (
+                f"Who is kept by {part_text(part.written)} depends on the treatment (through {listed(columns)}):"
+                " the number speaks of the rows that were in fact kept, and of nobody else."
+            )
+            yield Finding("filter-depends-on-treatment", columns, message, filter_part.place, part.written)

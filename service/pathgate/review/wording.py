@@ -1,0 +1,64 @@
+"""How findings name columns, parts and paths in plain text.
+
+A conditioned node stands in [brackets], an unmeasured one in (parentheses), a condition on the rows in
+{braces}; arrows are drawn as they point, ↔ for an unmeasured common cause.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+from pathgate.criteria.paths import Trail
+from pathgate.criteria.selection import Kept
+from pathgate.graphs.masks import members
+from pathgate.graphs.names import quoted
+
+_ARROWS = {"forward": "→", "backward": "←", "both": "↔"}
+
+
+def listed(names: Sequence[str], joined: str = "and") -> str:
+    """Names in double quotes, as a list in a sentence; long lists are cut short.
+
+    >>> listed(["rain", "promo", "depot"])
+    '"rain", "promo" and "depot"'
+    """
+    shown = [quoted(name) for name in names]
+    if len(shown) > 6:
+        shown = [*shown[:5], f"{len(shown) - 5} more"]
+    return shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} {joined} {shown[-1]}"
+
+
+def part_text(part: object) -> str:
+    """A condition on the rows, in a sentence.
+
+    >>> part_text(["region", "depot"]), part_text({"columns": "region", "fixed": True})
+    ('"region" and "depot"', 'one value of "region"')
+    """
+    if isinstance(part, Mapping):
+        columns = part["columns"]
+        shown = listed([columns] if isinstance(columns, str) else columns)
+        return f"one value of {shown}" if part.get("fixed") else shown
+    return part if isinstance(part, str) else listed(part)  # type: ignore[arg-type] # a list of names
+
+
+def arrow_text(kept: Kept, trail: Trail, conditioned: int) -> str:
+    """A path on one line."""
+    shown = [_node(kept, node, conditioned) for node in trail.nodes]
+    joints = [f" {_ARROWS[arrow]} " for arrow in trail.arrows]
+    return shown[0] + "".join(joint + node for joint, node in zip(joints, shown[1:], strict=True))
+
+
+def names_in(kept: Kept, nodes: int) -> tuple[str, ...]:
+    """The names of a set of columns, selection nodes left out."""
+    return tuple(name for node in members(nodes) if (name := kept.graph.name(node)))
+
+
+def _node(kept: Kept, node: int, conditioned: int) -> str:
+    name = kept.graph.name(node)
+    if not name:
+        return "{" + part_text(kept.part_of[node].written) + "}"
+    # Quotes only where a name could be misread as part of the drawing.
+    shown = name if name.isprintable() and not set(name) & set(' →←↔[](){}"') else quoted(name)
+    if conditioned >> node & 1:
+        return f"[{shown}]"
+    return shown if kept.graph.measured >> node & 1 else f"({shown})"
