@@ -156,35 +156,43 @@ class CausalGraph:
     @cached_property
     def child_lists(self) -> tuple[tuple[int, ...], ...]:
         """For each node its children."""
+        if self.is_small:
+            return tuple(tuple(members(mask)) for mask in self.child_masks)
         return _grouped(self.size, self.sources, self.targets)
 
     @cached_property
     def parent_lists(self) -> tuple[tuple[int, ...], ...]:
         """For each node its parents."""
+        if self.is_small:
+            return tuple(tuple(members(mask)) for mask in self.parent_masks)
         return _grouped(self.size, self.targets, self.sources)
 
     @cached_property
     def spouse_lists(self) -> tuple[tuple[int, ...], ...]:
         """For each node the other ends of its bidirected edges."""
+        if self.is_small:
+            return tuple(tuple(members(mask)) for mask in self.spouse_masks)
         ends = np.concatenate([self.lower_ends, self.upper_ends])
         others = np.concatenate([self.upper_ends, self.lower_ends])
         order = np.lexsort((others, ends))
         return _grouped(self.size, ends[order], others[order])
 
     @cached_property
-    def child_masks(self) -> tuple[int, ...]:
+    def child_masks(self) -> list[int]:
         """For each node the set of its children (small graphs only)."""
-        return tuple(map(mask_of, self.child_lists))
+        return _masks(self.size, self.sources, self.targets)
 
     @cached_property
-    def parent_masks(self) -> tuple[int, ...]:
+    def parent_masks(self) -> list[int]:
         """For each node the set of its parents (small graphs only)."""
-        return tuple(map(mask_of, self.parent_lists))
+        return _masks(self.size, self.targets, self.sources)
 
     @cached_property
-    def spouse_masks(self) -> tuple[int, ...]:
+    def spouse_masks(self) -> list[int]:
         """For each node the set at the other ends of its bidirected edges (small graphs only)."""
-        return tuple(map(mask_of, self.spouse_lists))
+        upward = _masks(self.size, self.lower_ends, self.upper_ends)
+        downward = _masks(self.size, self.upper_ends, self.lower_ends)
+        return [up | down for up, down in zip(upward, downward, strict=True)]
 
     @cached_property
     def topological_order(self) -> tuple[int, ...]:
@@ -194,6 +202,8 @@ class CausalGraph:
     def without_arrows(self, sources: int, targets: int) -> CausalGraph:
         """The same graph less every arrow from a node of one set into a node of the other."""
         dropped = unpack(sources, self.size)[self.sources] & unpack(targets, self.size)[self.targets]
+        if not dropped.any():
+            return self
         return replace(self, sources=self.sources[~dropped], targets=self.targets[~dropped])
 
     def without_edge(self, edge: Edge) -> CausalGraph:
@@ -208,15 +218,22 @@ class CausalGraph:
     def with_leaves(self, parents: Iterable[int]) -> CausalGraph:
         """The same graph with one more unmeasured, nameless node for each set of parents, at the end."""
         sets = list(parents)
-        pairs = [(source, self.size + k) for k, mask in enumerate(sets) for source in members(mask)]
         if not sets:
             return self
+        pairs = [(source, self.size + k) for k, mask in enumerate(sets) for source in members(mask)]
         added = np.array(pairs, dtype=np.int64).reshape(-1, 2)
         sources = np.concatenate([self.sources, added[:, 0]])
         targets = np.concatenate([self.targets, added[:, 1]])
         order = np.lexsort((targets, sources))
         names = self.names + ("",) * len(sets)
         return replace(self, names=names, sources=sources[order], targets=targets[order])
+
+
+def _masks(size: int, keys: IntArray, values: IntArray) -> list[int]:
+    masks = [0] * size
+    for key, value in zip(keys.tolist(), values.tolist(), strict=True):
+        masks[key] |= 1 << value
+    return masks
 
 
 def _grouped(size: int, keys: IntArray, values: IntArray) -> tuple[tuple[int, ...], ...]:

@@ -6,7 +6,7 @@ The verdict, the remedies and "can anything carry it" all ask this module, so th
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 from pathgate.criteria.adjustment import Effect, is_valid, total_effect, valid_set
@@ -14,6 +14,9 @@ from pathgate.criteria.selection import Part, keep_rows
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
 from pathgate.review.config import Config
+
+# Effects on different choices of rows that one review may hold at a time.
+MOST_EFFECTS = 64
 
 
 @dataclass(frozen=True)
@@ -34,6 +37,7 @@ class Claim:
     covariates: int
     parts: tuple[Part, ...]
     row_filter_fixed: bool
+    _effects: dict[tuple[int, ...], tuple[Effect, tuple[Part, ...]]] = field(default_factory=dict, repr=False)
 
     @classmethod
     def of(cls, graph: CausalGraph, config: Config) -> Claim:
@@ -74,8 +78,17 @@ class Claim:
         return self.effect_among(self.judged_parts)
 
     def effect_among(self, parts: Sequence[Part]) -> Effect:
-        """The effect on the rows that some parts keep."""
-        return total_effect(keep_rows(self.graph, parts), self.treatments, self.outcomes)
+        """The effect on the rows that some parts keep; the last ``MOST_EFFECTS`` are remembered."""
+        key = tuple(map(id, parts))
+        remembered = self._effects.get(key)
+        if remembered is not None:
+            return remembered[0]
+        effect = total_effect(keep_rows(self.graph, parts), self.treatments, self.outcomes)
+        if len(self._effects) >= MOST_EFFECTS:
+            self._effects.clear()
+        # The parts are held beside the effect: their identities are the key.
+        self._effects[key] = (effect, tuple(parts))
+        return effect
 
     def can_filter_by(self, part: Part) -> bool:
         """Can a dataset be filtered by this part and still hold something to compare?"""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import cache
 from typing import Any
 
 from pathgate.criteria.selection import Part
@@ -64,7 +65,7 @@ def read_config(value: object, graph: CausalGraph) -> Config:
     >>> [graph.name(covariate.node) for covariate in config.covariates]
     ['rain']
     """
-    faults = Shape(CONFIG_SCHEMA).faults(value)
+    faults = _config_shape().faults(value)
     if faults or not isinstance(value, Mapping):
         # Names are worth checking too where the shape of their members is right.
         faulty = {fault.place[0] for fault in faults if fault.place}
@@ -75,6 +76,11 @@ def read_config(value: object, graph: CausalGraph) -> Config:
     if faults or config is None:
         raise InvalidConfig(faults)
     return config
+
+
+@cache
+def _config_shape() -> Shape:
+    return Shape(CONFIG_SCHEMA)
 
 
 def understand_config(value: Mapping[str, Any], graph: CausalGraph, faults: list[Fault]) -> Config | None:

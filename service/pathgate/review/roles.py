@@ -12,10 +12,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
-from pathgate.criteria.adjustment import Effect, total_effect, valid_set
+from pathgate.criteria.adjustment import Effect, valid_set
 from pathgate.criteria.paths import find_open_path
 from pathgate.criteria.reachability import Conditions, connected
-from pathgate.criteria.selection import keep_rows
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Claim
@@ -52,7 +51,7 @@ def column_roles(
     claim: Claim, columns: int, remedy: Remedy | None, *, is_sound: bool
 ) -> tuple[ColumnRole, ...]:
     """Role and advice for each of the columns, in the graph's order; advice follows the first remedy."""
-    roles = _Roles(total_effect(keep_rows(claim.graph), claim.treatments, claim.outcomes))
+    roles = _Roles(claim.effect_among(()))
     return tuple(
         ColumnRole(claim.graph.name(node), roles.of(node), _advice(claim, node, remedy, is_sound=is_sound))
         for node in members(columns)
