@@ -164,8 +164,8 @@ def serving(**environment: str) -> Iterator[tuple[subprocess.Popen[str], list[st
         yield process, lines
     finally:
         if process.poll() is None:
-            os.killpg(process.pid, signal.SIGKILL)
-        process.communicate()
+            process.terminate()
+        process.communicate(timeout=60)
 
 
 @pytest.mark.parametrize("ended_by", [signal.SIGINT, signal.SIGTERM])
@@ -177,7 +177,8 @@ def test_run_reviews_the_demo_serves_and_ends_on_a_signal(ended_by: signal.Signa
         assert f"http://127.0.0.1:{port}/docs" in said
         with urllib.request.urlopen(f"http://127.0.0.1:{port}/readyz") as answer:
             assert answer.status == 200
-        process.send_signal(ended_by)
+        # To the whole process group, as a terminal does.
+        os.killpg(process.pid, ended_by)
         assert process.wait(timeout=40) == 0
     with socket.socket() as probe:
         assert probe.connect_ex(("127.0.0.1", port)) != 0
