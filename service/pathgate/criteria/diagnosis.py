@@ -14,7 +14,7 @@ from dataclasses import dataclass
 
 from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
-from pathgate.criteria.paths import OpenPath, Trail, directed_path, explain, find_open_path, opened_by
+from pathgate.criteria.paths import OpenPath, Trail, directed_path, explain_path, find_open_path, opened_by
 from pathgate.criteria.reachability import Conditions
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
@@ -92,7 +92,7 @@ def open_paths(effect: Effect, covariates: int, deadline: Deadline) -> Iterator[
         trail = find_open_path(graph, effect.treatments, effect.outcomes, conditions, fewest_colliders=True)
         if trail is None:
             return
-        path = explain(effect.kept, trail, openers)
+        path = explain_path(effect.kept, trail, openers)
         colliders = tuple(node for node, role in trail.inner if role == "collider")
         if colliders:
             descents = tuple(opened_by(effect.kept.graph, node, openers) for node in colliders)

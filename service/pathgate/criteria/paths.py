@@ -97,7 +97,7 @@ def find_open_path(
     return None
 
 
-def explain(kept: Kept, trail: Trail, openers: int) -> OpenPath:
+def explain_path(kept: Kept, trail: Trail, openers: int) -> OpenPath:
     """The path by names, each step with the reason why it is open given ``openers``."""
     steps = tuple(_step(kept, node, role, openers) for node, role in trail.inner)
     return OpenPath(tuple(map(kept.label, trail.nodes)), trail.arrows, steps)

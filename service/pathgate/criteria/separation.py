@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.errors import Overlapping
-from pathgate.criteria.paths import OpenPath, explain, find_open_path
+from pathgate.criteria.paths import OpenPath, explain_path, find_open_path
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import keep_rows
 from pathgate.graphs.graph import CausalGraph
@@ -50,11 +50,18 @@ def separation(
     check_disjoint(graph, xs, ys, conditioned)
     if deadline is not None:
         deadline.poll()
+    return separation_of(graph, xs, ys, conditioned, explain=True)
+
+
+def separation_of(graph: CausalGraph, xs: int, ys: int, conditioned: int, *, explain: bool) -> Separation:
+    """The verdict over masks that are known to be disjoint, with the open path only where asked to explain."""
     named = (graph.names_of(xs), graph.names_of(ys), graph.names_of(conditioned))
     if are_separated(graph, xs, ys, conditioned):
         return Separation(*named, separated=True)
+    if not explain:
+        return Separation(*named, separated=False)
     trail = find_open_path(graph, xs, ys, Conditions.on(graph, conditioned))
-    path = explain(keep_rows(graph), trail, conditioned) if trail else None
+    path = explain_path(keep_rows(graph), trail, conditioned) if trail else None
     return Separation(*named, separated=False, open_path=path)
 
 

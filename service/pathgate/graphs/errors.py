@@ -9,8 +9,19 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import ClassVar
+from urllib.parse import quote
 
 Place = tuple[str | int, ...]
+
+
+def pointer(place: Place) -> str:
+    """A place as a JSON pointer in URI fragment form (RFC 6901, section 6).
+
+    >>> pointer(("graph", "edges", 3, "a/b c~"))
+    '#/graph/edges/3/a~1b%20c~0'
+    """
+    steps = (str(step).replace("~", "~0").replace("/", "~1") for step in place)
+    return "#" + "".join("/" + quote(step, safe="~!$&'()*+,;=:@") for step in steps)
 
 
 @dataclass(frozen=True, slots=True)

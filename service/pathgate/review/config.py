@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
-from typing import Any
+from typing import Any, TypeGuard
 
 from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault, Place
@@ -66,14 +66,8 @@ def read_config(value: object, graph: CausalGraph) -> Config:
     ['rain']
     """
     faults = _config_shape().faults(value)
-    if faults or not isinstance(value, Mapping):
-        # Names are worth checking too where the shape of their members is right.
-        faulty = {fault.place[0] for fault in faults if fault.place}
-        readable = value if isinstance(value, Mapping) else {}
-        understand_config({k: said for k, said in readable.items() if k not in faulty}, graph, faults)
-        raise InvalidConfig(faults)
     config = understand_config(value, graph, faults)
-    if faults or config is None:
+    if config is None:
         raise InvalidConfig(faults)
     return config
 
@@ -83,28 +77,49 @@ def _config_shape() -> Shape:
     return Shape(CONFIG_SCHEMA)
 
 
-def understand_config(value: Mapping[str, Any], graph: CausalGraph, faults: list[Fault]) -> Config | None:
-    """The config that a value of the right shape describes; what makes it meaningless is added to ``faults``.
+def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) -> Config | None:
+    """The config that a value describes; what makes it meaningless is added to ``faults``.
 
-    Members may be missing where their shape is already among the faults; then there is no config.
+    ``faults`` comes with what is wrong with the value's shape. Members that it names are not looked into, and
+    where anything is wrong there is no config; so all faults, of shape and of meaning, come in one go.
     """
+    faulty = {fault.place[0] for fault in faults if fault.place}
+    said = (
+        {member: held for member, held in value.items() if member not in faulty} if _is_object(value) else {}
+    )
     names = NameReader(graph, faults)
-    treatments = names.read(value.get("treatment", []), ("treatment",))
-    outcomes = names.read(value.get("outcome", []), ("outcome",))
-    covariates = names.read(value.get("covariates", []), ("covariates",))
-    parts = read_parts(value.get("row_filter", []), names, ("row_filter",))
-    _refuse_shared(graph, treatments, outcomes, faults)
-    if faults or not treatments or not outcomes:
+    treatments, outcomes = understand_ends(said, names)
+    covariates = names.read(said.get("covariates", []), ("covariates",))
+    parts = read_parts(said.get("row_filter", []), names, ("row_filter",))
+    if faults:
         return None
     return Config(
-        name=value.get("name", ""),
+        name=said.get("name", ""),
         treatments=treatments,
         outcomes=outcomes,
         covariates=covariates,
         filter_parts=parts,
-        row_filter_fixed=value.get("row_filter_fixed", False),
-        meta=value.get("meta"),
+        row_filter_fixed=said.get("row_filter_fixed", False),
+        meta=said.get("meta"),
     )
+
+
+def understand_ends(
+    value: Mapping[str, Any], names: NameReader
+) -> tuple[tuple[Named, ...], tuple[Named, ...]]:
+    """The treatments and the outcomes that the members of those names mean; they must not share a column."""
+    treatments = names.read(value.get("treatment", []), ("treatment",))
+    outcomes = names.read(value.get("outcome", []), ("outcome",))
+    for outcome in outcomes:
+        if any(outcome.node == treatment.node for treatment in treatments):
+            name = names.graph.name(outcome.node)
+            detail = f"{quoted(name)} cannot be both treatment and outcome"
+            names.faults.append(Fault("invalid-request", outcome.place, detail, (name,)))
+    return treatments, outcomes
+
+
+def _is_object(value: object) -> TypeGuard[Mapping[str, Any]]:
+    return isinstance(value, Mapping)
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,11 +130,13 @@ class NameReader:
         graph: where the columns are.
         faults: what is wrong is added here.
         by_alias: do other names of a column count? They do in configs.
+        refuse_repeats: is a column named twice a fault? It is in configs.
     """
 
     graph: CausalGraph
     faults: list[Fault]
     by_alias: bool = True
+    refuse_repeats: bool = True
 
     def read(self, value: str | Sequence[str], place: Place) -> tuple[Named, ...]:
         """The columns that a name or a list of names means; unknown and repeated names are faults."""
@@ -132,11 +149,11 @@ class NameReader:
             if node is None:
                 detail = f"no node is named {quoted(name)}{did_you_mean(name, self.graph.names)}"
                 self.faults.append(Fault("unknown-node", at, detail, (name,)))
-            elif node in found:
+            elif node not in found:
+                found[node] = Named(node, at)
+            elif self.refuse_repeats:
                 detail = f"the column {quoted(self.graph.name(node))} is named twice"
                 self.faults.append(Fault("invalid-request", at, detail, (self.graph.name(node),)))
-            else:
-                found[node] = Named(node, at)
         return tuple(found.values())
 
     def find(self, name: str) -> int | None:
@@ -170,13 +187,3 @@ def _object_part(item: Mapping[str, Any], names: NameReader, place: Place) -> Fi
         detail = "a condition that is fixed holds exactly one column at one value"
         names.faults.append(Fault("invalid-request", (*place, "fixed"), detail))
     return FilterPart(Part(mask_of(one.node for one in found), fixed=fixed, written=dict(item)), place)
-
-
-def _refuse_shared(
-    graph: CausalGraph, treatments: Sequence[Named], outcomes: Sequence[Named], faults: list[Fault]
-) -> None:
-    for outcome in outcomes:
-        if any(outcome.node == treatment.node for treatment in treatments):
-            name = graph.name(outcome.node)
-            detail = f"{quoted(name)} cannot be both treatment and outcome"
-            faults.append(Fault("invalid-request", outcome.place, detail, (name,)))

@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 from typing import Any
-from urllib.parse import quote
 
 from pathgate.criteria.paths import OpenPath, Step
 from pathgate.criteria.selection import Label, Part
-from pathgate.graphs.errors import Place
+from pathgate.graphs.errors import pointer
 from pathgate.review.claims import Claim
 from pathgate.review.findings import Finding
 from pathgate.review.remedies import Remedy
@@ -80,12 +79,6 @@ def path_document(path: OpenPath) -> Json:
 def label_document(label: Label) -> Any:
     """A node's name, or the condition that a selection node stands for."""
     return {"part": label.written} if isinstance(label, Part) else label
-
-
-def pointer(place: Place) -> str:
-    """A place as a JSON pointer in URI fragment form (RFC 6901, section 6)."""
-    steps = (str(step).replace("~", "~0").replace("/", "~1") for step in place)
-    return "#" + "".join("/" + quote(step, safe="~!$&'()*+,;=:@") for step in steps)
 
 
 def _step_document(step: Step) -> Json:

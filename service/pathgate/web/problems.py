@@ -10,9 +10,8 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from types import MappingProxyType
 from typing import Any
-from urllib.parse import quote
 
-from pathgate.graphs.errors import Fault, PathgateError, Place
+from pathgate.graphs.errors import Fault, PathgateError, pointer
 
 
 @dataclass(frozen=True, slots=True)
@@ -258,13 +257,3 @@ def problem_of(error: PathgateError) -> Problem | None:
         return refusal(faults)
     known = PROBLEM_TYPES.get(getattr(error, "slug", ""))
     return Problem(known, str(error), extras=dict(error.details)) if known else None
-
-
-def pointer(place: Place) -> str:
-    """A place as a JSON pointer in URI fragment form (RFC 6901, section 6).
-
-    >>> pointer(("graph", "edges", 3, "a/b c~"))
-    '#/graph/edges/3/a~1b%20c~0'
-    """
-    steps = (str(step).replace("~", "~0").replace("/", "~1") for step in place)
-    return "#" + "".join("/" + quote(step, safe="~!$&'()*+,;=:@") for step in steps)

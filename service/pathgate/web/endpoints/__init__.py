@@ -2,6 +2,13 @@
 
 from __future__ import annotations
 
+from pathgate.web.endpoints import adjustment, colliders, graph_check, review, separation
 from pathgate.web.operations import Operation
 
-OPERATIONS: tuple[Operation, ...] = ()
+OPERATIONS: tuple[Operation, ...] = (
+    review.OPERATION,
+    adjustment.OPERATION,
+    separation.OPERATION,
+    colliders.OPERATION,
+    graph_check.OPERATION,
+)

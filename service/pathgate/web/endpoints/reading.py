@@ -1,0 +1,57 @@
+"""What endpoints share in reading a call: its graph within the limits, and the nodes its names mean."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from pathgate.graphs.errors import Fault
+from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.masks import mask_of
+from pathgate.graphs.reading import Examined, examine_graph
+from pathgate.review.config import NameReader
+from pathgate.web.operations import Call
+from pathgate.web.problems import Refused
+
+
+def examine(call: Call) -> Examined:
+    """The call's graph and its faults, which are not yet among those of the call.
+
+    Raises:
+        Refused: the graph is over a limit; nothing else is looked at then.
+    """
+    over = [
+        Fault("over-limit", ("graph", member), f"the graph has {len(held):,} {member}; the limit is {most:,}")
+        for member, most in (("nodes", call.settings.max_nodes), ("edges", call.settings.max_edges))
+        if len(held := _list_in(call.graph, member)) > most
+    ]
+    if over:
+        raise Refused(over)
+    call.deadline.poll()
+    return examine_graph(call.graph)
+
+
+def graph_of(call: Call) -> CausalGraph:
+    """The call's graph; what is wrong with it is added to the call's faults.
+
+    Names can be looked up in it even where it has faults, so that all faults come in one answer.
+    """
+    if not call.has_graph:
+        return CausalGraph.of()
+    examined = examine(call)
+    call.faults.extend(fault.below(("graph",)) for fault in examined.faults)
+    return examined.graph
+
+
+def names_of(call: Call, graph: CausalGraph) -> NameReader:
+    """Finds nodes by their ids; outside configs other names of a column do not count."""
+    return NameReader(graph, call.faults, by_alias=False, refuse_repeats=False)
+
+
+def mask_in(call: Call, names: NameReader, member: str) -> int:
+    """The nodes that a member of the body names; none where it is absent or at fault already."""
+    return mask_of(named.node for named in names.read(call.body.get(member, []), (member,)))
+
+
+def _list_in(graph: Any, member: str) -> list[Any]:
+    held = graph.get(member) if isinstance(graph, dict) else None
+    return held if isinstance(held, list) else []

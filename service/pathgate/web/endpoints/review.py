@@ -1,0 +1,143 @@
+"""POST /v1/review: does the number that a model config reports mean what it claims?"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from typing import Any, get_args
+
+from pathgate.demo import demo_configs, demo_graph
+
+from pathgate.review.config import understand_config
+from pathgate.review.document import review_document
+from pathgate.review.review import review
+from pathgate.review.roles import Advice, Role
+from pathgate.review.rules import RULES
+from pathgate.review.schema import CONFIG_SCHEMA
+from pathgate.web.endpoints.reading import graph_of
+from pathgate.web.endpoints.shared_schemas import GRAPH, NAME_LIST, PATH_COMPONENTS
+from pathgate.web.operations import Call, Example, Json, Operation
+
+
+def answer(call: Call) -> Json:
+    """The verdict on one config."""
+    graph = graph_of(call)
+    # Places are counted from the config while it is read, and from the request where it is refused.
+    faults = [fault for fault in call.faults if fault.place[:1] != ("config",)]
+    in_config = [
+        replace(fault, place=fault.place[1:]) for fault in call.faults if fault.place[:1] == ("config",)
+    ]
+    config = understand_config(call.whole.get("config"), graph, in_config)
+    call.faults[:] = faults + [fault.below(("config",)) for fault in in_config]
+    call.refuse_faults()
+    if config is None:
+        message = "a config without faults can be understood"
+        raise AssertionError(message)
+    return review_document(review(graph, config, call.deadline))
+
+
+_LABELS: dict[str, Any] = {"type": "array", "items": {"$ref": "#/components/schemas/Label"}}
+
+FINDING: dict[str, Any] = {
+    "type": "object",
+    "properties": {
+        "rule": {"enum": list(RULES)},
+        "severity": {"enum": ["error", "warning", "note"]},
+        "columns": {**NAME_LIST, "description": "the columns to blame"},
+        "message": {
+            "type": "string",
+            "description": "plain sentences; [x] is conditioned on, (x) is unmeasured",
+        },
+        "pointer": {"type": "string", "description": "where in the request"},
+        "part": {"description": "the condition of the row filter it is about, as written"},
+        "open_path": {"$ref": "#/components/schemas/Path"},
+        "causal_path": {**_LABELS, "description": "the causal path that forbids the column"},
+        "descent": {**_LABELS, "description": "from that path down to what is conditioned on"},
+    },
+    "required": ["rule", "severity", "columns", "message", "pointer"],
+    "additionalProperties": False,
+}
+
+REMEDY: dict[str, Any] = {
+    "type": "object",
+    "properties": {
+        "covariates": {**NAME_LIST, "description": "all covariates to have"},
+        "add": NAME_LIST,
+        "drop": NAME_LIST,
+        "drop_filter_parts": {"type": "array", "description": "conditions to drop, as written"},
+        "population": {"enum": ["kept", "whole"], "description": "whose effect it then is"},
+        "message": {"type": "string"},
+    },
+    "required": ["covariates", "add", "drop", "drop_filter_parts", "population", "message"],
+    "additionalProperties": False,
+}
+
+REVIEW: dict[str, Any] = {
+    "type": "object",
+    "properties": {
+        "name": {"type": "string"},
+        "verdict": {
+            "enum": ["sound", "biased", "unanswerable"],
+            "description": (
+                "sound: these covariates on these rows carry the effect claimed, if the graph is right;"
+                " unanswerable: no choice of measured covariates and filter parts would; biased: a remedy exists"
+            ),
+        },
+        "summary": {"type": "string", "description": "the whole in one sentence"},
+        "findings": {"type": "array", "items": {"$ref": "#/components/schemas/Finding"}},
+        "columns": {
+            "type": "array",
+            "items": {
+                "type": "object",
+                "properties": {
+                    "column": {"type": "string"},
+                    "role": {"enum": list(get_args(Role))},
+                    "advice": {"enum": list(get_args(Advice))},
+                },
+                "required": ["column", "role", "advice"],
+                "additionalProperties": False,
+            },
+        },
+        "remedies": {
+            "type": "array",
+            "description": "fewest changes first; each one, applied, reviews as sound",
+            "items": {"$ref": "#/components/schemas/Remedy"},
+        },
+        "cautions": {"type": "array", "items": {"type": "string"}},
+        "meta": {"description": "the config's own meta"},
+    },
+    "required": ["name", "verdict", "summary", "findings", "columns", "remedies", "cautions"],
+    "additionalProperties": False,
+}
+
+REVIEW_COMPONENTS = {
+    **PATH_COMPONENTS,
+    "Config": CONFIG_SCHEMA,
+    "Finding": FINDING,
+    "Remedy": REMEDY,
+    "Review": REVIEW,
+}
+
+OPERATION = Operation(
+    name="review",
+    summary="Does the number a model config reports mean what it claims?",
+    description=(
+        "Reviews one model config against the graph: a verdict, every column or filter that breaks it with the"
+        " path that shows it, the role of each column, and what to change. A condition of the row filter becomes"
+        " a node of its own that is conditioned on, so a filter that merely narrows a column never blocks a path"
+        " through it; one that holds a column at one value (`fixed`) conditions on that column."
+    ),
+    request_schema={
+        "type": "object",
+        "properties": {"graph": GRAPH, "config": {"$ref": "#/components/schemas/Config"}},
+        "required": ["graph", "config"],
+        "additionalProperties": False,
+        "x-not-yet": ["hinges", "columns", "include", "as_gate"],
+    },
+    response_schema={"$ref": "#/components/schemas/Review"},
+    components=REVIEW_COMPONENTS,
+    examples=tuple(
+        Example(config["name"], config["meta"]["why"], {"graph": demo_graph(), "config": config})
+        for config in demo_configs()
+    ),
+    answer=answer,
+)

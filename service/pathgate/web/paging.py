@@ -1,0 +1,84 @@
+"""Pages of a long listing, without a store: the cursor says where to go on and which request it belongs to.
+
+A cursor holds the number of items already given and a digest of that number, the operation, the version and
+the request. So any replica takes it, and one that was made for another request is noticed. No secret is in it.
+"""
+
+from __future__ import annotations
+
+import base64
+import binascii
+import hashlib
+from collections.abc import Iterable, Iterator
+from itertools import islice
+from typing import Any
+
+import msgspec
+
+from pathgate.version import VERSION
+from pathgate.web.operations import Call
+from pathgate.web.problems import Failed, Problem
+
+DEFAULT_LIMIT = 100
+_DIGEST_BYTES = 16
+
+
+def page_of(call: Call, operation: str, items: Iterable[Any]) -> tuple[list[Any], dict[str, Any]]:
+    """The items of the page asked for, and the members ``complete`` and ``cursor`` that go beside them.
+
+    A listing that the deadline cuts short ends as an incomplete page, unless it holds nothing at all.
+
+    Raises:
+        Failed: the cursor was not made for this request.
+        OutOfTime: the time ran out before the first item.
+    """
+    limit = min(int(call.body.get("limit", DEFAULT_LIMIT)), call.settings.max_page)
+    request = _request_digest(call, operation)
+    start = _place_of(call.body["cursor"], request) if "cursor" in call.body else 0
+    found: list[Any] = []
+    was_cut = False
+    for item in islice(_until_expired(call, items), start, start + limit + 1):
+        if item is _CUT:
+            was_cut = True
+        else:
+            found.append(item)
+    if was_cut and not found:
+        call.deadline.poll()
+    if len(found) <= limit and not was_cut:
+        return found, {"complete": True}
+    found = found[:limit]
+    return found, {"complete": False, "cursor": _cursor(start + len(found), request)}
+
+
+_CUT = object()
+
+
+def _until_expired(call: Call, items: Iterable[Any]) -> Iterator[Any]:
+    for count, item in enumerate(items):
+        if count % 64 == 63 and call.deadline.expired:
+            yield _CUT
+            return
+        yield item
+
+
+def _request_digest(call: Call, operation: str) -> bytes:
+    asked = {member: said for member, said in call.whole.items() if member not in ("limit", "cursor")}
+    canonical = msgspec.json.encode([operation, VERSION, asked, call.graph], order="deterministic")
+    return hashlib.sha256(canonical).digest()
+
+
+def _cursor(place: int, request: bytes) -> str:
+    written = str(place).encode()
+    seal = hashlib.sha256(request + written).digest()[:_DIGEST_BYTES]
+    return base64.urlsafe_b64encode(seal + written).decode().rstrip("=")
+
+
+def _place_of(cursor: str, request: bytes) -> int:
+    try:
+        held = base64.b64decode(cursor + "=" * (-len(cursor) % 4), altchars=b"-_", validate=True)
+        place = int(held[_DIGEST_BYTES:])
+    except (ValueError, binascii.Error):
+        place = -1
+    if place < 0 or _cursor(place, request) != cursor:
+        raise Failed(Problem.of("bad-cursor", "the cursor was not made for this request"))
+    return place
