@@ -8,12 +8,14 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from operator import itemgetter
+from typing import Any
 
 import numpy as np
 
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import Edge
-from pathgate.graphs.masks import IntArray
+from pathgate.graphs.masks import BoolArray, IntArray
 from pathgate.graphs.names import did_you_mean, quoted
 from pathgate.graphs.node_list import NodeList, check_attributes, json_type, name_fault
 
@@ -27,11 +29,11 @@ def _empty() -> IntArray:
 
 @dataclass(slots=True)
 class EdgeList:
-    """The edges that could be read; ``places`` are the arrows' positions in the input."""
+    """The edges that could be read, each kind sorted by its ends; ``places`` are the arrows' positions."""
 
     sources: IntArray = field(default_factory=_empty)
     targets: IntArray = field(default_factory=_empty)
-    places: list[int] = field(default_factory=list)
+    places: IntArray = field(default_factory=_empty)
     lower_ends: IntArray = field(default_factory=_empty)
     upper_ends: IntArray = field(default_factory=_empty)
     doubtful: frozenset[Edge] = frozenset()
@@ -41,16 +43,17 @@ class EdgeList:
 
 @dataclass(frozen=True, slots=True)
 class _Columns:
-    """Aligned columns of the edges still in play."""
+    """Aligned columns of the edges still in play; of a bidirected edge the source is the lower index."""
 
-    places: list[int]
+    places: IntArray
     sources: IntArray
     targets: IntArray
-    are_bidirected: IntArray
+    are_bidirected: BoolArray
 
-    def kept(self, wanted: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> _Columns:
-        places = np.asarray(self.places, dtype=np.int64)[wanted].tolist()
-        return _Columns(places, self.sources[wanted], self.targets[wanted], self.are_bidirected[wanted])
+    def __getitem__(self, wanted: BoolArray | IntArray) -> _Columns:
+        return _Columns(
+            self.places[wanted], self.sources[wanted], self.targets[wanted], self.are_bidirected[wanted]
+        )
 
 
 def read_edges(values: Sequence[object], nodes: NodeList, faults: list[Fault]) -> EdgeList:
@@ -58,7 +61,7 @@ def read_edges(values: Sequence[object], nodes: NodeList, faults: list[Fault]) -
     keys = check_attributes(values, "edges", EDGE_MEMBERS, faults)
     columns = _columns(values, keys, nodes, faults)
     columns, has_self_loop = _without_self_loops(columns, nodes, faults)
-    columns = _without_repeats(columns, nodes, faults)
+    columns = _sorted_without_repeats(columns, nodes, faults)
     edges = _split(columns)
     edges.has_self_loop = has_self_loop
     if keys & {"doubtful", "note"}:
@@ -66,22 +69,28 @@ def read_edges(values: Sequence[object], nodes: NodeList, faults: list[Fault]) -
     return edges
 
 
-def _columns(values: Sequence[object], keys: set[str], nodes: NodeList, faults: list[Fault]) -> _Columns:
-    if set(map(type, values)) <= {dict}:
-        sources = [value.get("source") for value in values]  # type: ignore[attr-defined] # all are dicts
-        targets = [value.get("target") for value in values]  # type: ignore[attr-defined]
-        if set(map(type, sources)) | set(map(type, targets)) <= {str}:
-            starts = [nodes.index.get(name, -1) for name in sources]
-            ends = [nodes.index.get(name, -1) for name in targets]
-            kinds = [value.get("kind", "directed") for value in values] if "kind" in keys else []  # type: ignore[attr-defined]
-            if -1 not in starts and -1 not in ends and all(kind in KINDS for kind in kinds):
-                return _as_columns(list(range(len(values))), starts, ends, kinds)
-    return _columns_one_by_one(values, nodes, faults)
+def _columns(values: Sequence[Any], keys: set[str], nodes: NodeList, faults: list[Fault]) -> _Columns:
+    """The edges as columns: by whole lists where nothing is wrong, else one by one with a fault for each."""
+    try:
+        sources = list(map(nodes.index.__getitem__, map(itemgetter("source"), values)))
+        targets = list(map(nodes.index.__getitem__, map(itemgetter("target"), values)))
+        kinds = [value.get("kind", "directed") for value in values] if "kind" in keys else []
+    except (KeyError, TypeError, AttributeError):
+        return _columns_one_by_one(values, nodes, faults)
+    if not all(kind in KINDS for kind in kinds):
+        return _columns_one_by_one(values, nodes, faults)
+    return _as_columns(np.arange(len(values)), sources, targets, kinds)
 
 
-def _as_columns(places: list[int], sources: list[int], targets: list[int], kinds: list[str]) -> _Columns:
-    bidirected = np.array([kind == "bidirected" for kind in kinds] or np.zeros(len(places)), dtype=np.int64)
-    return _Columns(places, np.array(sources, dtype=np.int64), np.array(targets, dtype=np.int64), bidirected)
+def _as_columns(places: IntArray, sources: list[int], targets: list[int], kinds: list[str]) -> _Columns:
+    firsts, seconds = np.array(sources, dtype=np.int64), np.array(targets, dtype=np.int64)
+    if not kinds:
+        return _Columns(places, firsts, seconds, np.zeros(len(places), dtype=np.bool_))
+    bidirected = np.array([kind == "bidirected" for kind in kinds])
+    swapped = bidirected & (firsts > seconds)
+    return _Columns(
+        places, np.where(swapped, seconds, firsts), np.where(swapped, firsts, seconds), bidirected
+    )
 
 
 def _columns_one_by_one(values: Sequence[object], nodes: NodeList, faults: list[Fault]) -> _Columns:
@@ -92,8 +101,10 @@ def _columns_one_by_one(values: Sequence[object], nodes: NodeList, faults: list[
         if not wrong and isinstance(value, dict):
             ends = nodes.index[value["source"]], nodes.index[value["target"]]
             good.append((place, *ends, value.get("kind", "directed")))
-    places, sources, targets, kinds = map(list, zip(*good, strict=True)) if good else ([], [], [], [])
-    return _as_columns(places, sources, targets, kinds)
+    places = np.array([place for place, *_ in good], dtype=np.int64)
+    return _as_columns(
+        places, [edge[1] for edge in good], [edge[2] for edge in good], [edge[3] for edge in good]
+    )
 
 
 def _edge_faults(place: int, value: object, nodes: NodeList) -> list[Fault]:
@@ -130,54 +141,48 @@ def _without_self_loops(columns: _Columns, nodes: NodeList, faults: list[Fault])
     loops = columns.sources == columns.targets
     if not loops.any():
         return columns, False
-    looping = columns.kept(loops)
-    for place, node in zip(looping.places, looping.sources.tolist(), strict=True):
+    looping = columns[loops]
+    for place, node in zip(looping.places.tolist(), looping.sources.tolist(), strict=True):
         name = nodes.names[node]
         detail = f"the edge joins {quoted(name)} to itself"
         faults.append(Fault("invalid-graph", ("edges", place), detail, (name,), rule="self-loop"))
-    return columns.kept(~loops), bool((looping.are_bidirected == 0).any())
+    return columns[~loops], not looping.are_bidirected.all()
 
 
-def _without_repeats(columns: _Columns, nodes: NodeList, faults: list[Fault]) -> _Columns:
-    lower = np.minimum(columns.sources, columns.targets)
-    upper = np.maximum(columns.sources, columns.targets)
-    is_bidirected = columns.are_bidirected == 1
-    firsts = np.where(is_bidirected, lower, columns.sources)
-    seconds = np.where(is_bidirected, upper, columns.targets)
-    keys = (columns.are_bidirected * len(nodes.names) + firsts) * len(nodes.names) + seconds
-    _unique, first_at = np.unique(keys, return_index=True)
-    if len(first_at) == len(keys):
+def _sorted_without_repeats(columns: _Columns, nodes: NodeList, faults: list[Fault]) -> _Columns:
+    size = len(nodes.names)
+    keys = (columns.are_bidirected * size + columns.sources) * size + columns.targets
+    order = np.argsort(keys, kind="stable")
+    columns, keys = columns[order], keys[order]
+    repeats = np.zeros(len(keys), dtype=np.bool_)
+    repeats[1:] = keys[1:] == keys[:-1]
+    if not repeats.any():
         return columns
-    is_first = np.zeros(len(keys), dtype=np.bool_)
-    is_first[first_at] = True
-    repeated = columns.kept(~is_first)
-    for place, source, target in zip(
-        repeated.places, repeated.sources.tolist(), repeated.targets.tolist(), strict=True
+    repeated = columns[repeats]
+    for place, source, target in sorted(
+        zip(repeated.places.tolist(), repeated.sources.tolist(), repeated.targets.tolist(), strict=True)
     ):
         ends = (nodes.names[source], nodes.names[target])
         detail = f"the edge between {quoted(ends[0])} and {quoted(ends[1])} is already there"
         faults.append(Fault("invalid-graph", ("edges", place), detail, ends, rule="repeated-edge"))
-    return columns.kept(is_first)
+    return columns[~repeats]
 
 
 def _split(columns: _Columns) -> EdgeList:
-    is_bidirected = columns.are_bidirected == 1
-    arrows = columns.kept(~is_bidirected)
-    bows = columns.kept(is_bidirected)
+    arrows, bows = columns[~columns.are_bidirected], columns[columns.are_bidirected]
     return EdgeList(
         sources=arrows.sources,
         targets=arrows.targets,
         places=arrows.places,
-        lower_ends=np.minimum(bows.sources, bows.targets),
-        upper_ends=np.maximum(bows.sources, bows.targets),
+        lower_ends=bows.sources,
+        upper_ends=bows.targets,
     )
 
 
 def _read_remarks(values: Sequence[object], columns: _Columns, edges: EdgeList, faults: list[Fault]) -> None:
-    kinds = dict(zip(columns.places, columns.are_bidirected.tolist(), strict=True))
-    ends = dict(
-        zip(columns.places, zip(columns.sources.tolist(), columns.targets.tolist(), strict=True), strict=True)
-    )
+    kinds = np.where(columns.are_bidirected, "bidirected", "directed").tolist()
+    listed = zip(kinds, columns.sources.tolist(), columns.targets.tolist(), strict=True)
+    edge_at: dict[int, Edge] = dict(zip(columns.places.tolist(), listed, strict=True))
     doubtful: set[Edge] = set()
     notes: dict[Edge, str] = {}
     for place, value in enumerate(values):
@@ -190,11 +195,9 @@ def _read_remarks(values: Sequence[object], columns: _Columns, edges: EdgeList, 
             )
         if "note" in value and not isinstance(note, str):
             faults.append(Fault("invalid-request", ("edges", place, "note"), '"note" is a string'))
-        if place in kinds:
-            first, second = sorted(ends[place]) if kinds[place] else ends[place]
-            edge = (KINDS[kinds[place]], first, second)
-            if doubt is True:
-                doubtful.add(edge)
-            if isinstance(note, str):
-                notes[edge] = note
+        edge = edge_at.get(place)
+        if edge is not None and doubt is True:
+            doubtful.add(edge)
+        if edge is not None and isinstance(note, str):
+            notes[edge] = note
     edges.doubtful, edges.notes = frozenset(doubtful), notes

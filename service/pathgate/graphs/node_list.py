@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
+from typing import Any
 
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.masks import mask_of
@@ -50,7 +51,9 @@ def check_attributes(
     values: Sequence[object], member: str, known: tuple[str, ...], faults: list[Fault]
 ) -> set[str]:
     """The keys that occur in a list of objects; near misses of known members are faults, others are free."""
-    keys = set[str]().union(*(value for value in values if isinstance(value, dict)))
+    are_all_objects = set(map(type, values)) <= {dict}
+    objects: Any = values if are_all_objects else [value for value in values if isinstance(value, dict)]
+    keys = set[str]().union(*objects)
     for key in sorted(keys.difference(known)):
         meant = misspelt_member(key, known)
         if meant is not None:

@@ -10,13 +10,10 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-import numpy as np
-
 from pathgate.graphs.cycles import cycles
 from pathgate.graphs.edge_list import EdgeList, read_edges
 from pathgate.graphs.errors import Fault, InvalidGraph
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import IntArray
 from pathgate.graphs.names import did_you_mean, quoted
 from pathgate.graphs.node_list import NodeList, read_nodes
 
@@ -106,14 +103,12 @@ def _unknown_member(member: str) -> Fault:
 
 
 def _build(nodes: NodeList, edges: EdgeList) -> CausalGraph:
-    sources, targets = _sorted_pairs(edges.sources, edges.targets)
-    lower_ends, upper_ends = _sorted_pairs(edges.lower_ends, edges.upper_ends)
     return CausalGraph(
         names=nodes.names,
-        sources=sources,
-        targets=targets,
-        lower_ends=lower_ends,
-        upper_ends=upper_ends,
+        sources=edges.sources,
+        targets=edges.targets,
+        lower_ends=edges.lower_ends,
+        upper_ends=edges.upper_ends,
         measured=nodes.measured,
         costs=nodes.costs,
         recorded=nodes.recorded,
@@ -124,18 +119,12 @@ def _build(nodes: NodeList, edges: EdgeList) -> CausalGraph:
     )
 
 
-def _sorted_pairs(firsts: IntArray, seconds: IntArray) -> tuple[IntArray, IntArray]:
-    order = np.lexsort((seconds, firsts))
-    return firsts[order], seconds[order]
-
-
 def _check_times(graph: CausalGraph, edges: EdgeList, faults: list[Fault]) -> None:
     """An arrow into a column that was recorded before its cause."""
     if not graph.recorded:
         return
-    for place, source, target in zip(
-        edges.places, edges.sources.tolist(), edges.targets.tolist(), strict=True
-    ):
+    columns = (edges.places.tolist(), edges.sources.tolist(), edges.targets.tolist())
+    for place, source, target in sorted(zip(*columns, strict=True)):
         before, after = graph.recorded.get(source), graph.recorded.get(target)
         if before is not None and after is not None and before > after:
             ends = (graph.name(source), graph.name(target))
