@@ -22,31 +22,13 @@ class Refused(Exception):
 
 def careful(body: bytes) -> Any:
     """The value by the standard library's parser, every strictness checked on what it hands over."""
-
-    def number(read):
-        def checked(written):
-            if len(written) > LONGEST_NUMBER or math.isinf(float(written)):
-                raise Refused(written)
-            return read(written)
-
-        return checked
-
-    def members(pairs):
-        if len({key for key, _ in pairs}) < len(pairs):
-            raise Refused(pairs)
-        return dict(pairs)
-
-    def refuse(written):
-        raise Refused(written)
-
     try:
-        text = body.decode()
         value = json.loads(
-            text,
-            object_pairs_hook=members,
+            body.decode(),
+            object_pairs_hook=careful_members,
             parse_constant=refuse,
-            parse_float=number(float),
-            parse_int=number(int),
+            parse_float=lambda written: float(careful_number(written)),
+            parse_int=lambda written: int(careful_number(written)),
         )
         json.dumps(value, ensure_ascii=False).encode()
     except (UnicodeError, json.JSONDecodeError, RecursionError) as error:
@@ -54,6 +36,22 @@ def careful(body: bytes) -> Any:
     if depth(value) > MAX_DEPTH:
         raise Refused(value)
     return value
+
+
+def refuse(written: str) -> Any:
+    raise Refused(written)
+
+
+def careful_number(written: str) -> str:
+    if len(written) > LONGEST_NUMBER or math.isinf(float(written)):
+        raise Refused(written)
+    return written
+
+
+def careful_members(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
+    if len({key for key, _ in pairs}) < len(pairs):
+        raise Refused(pairs)
+    return dict(pairs)
 
 
 def depth(value: Any) -> int:

@@ -5,8 +5,9 @@ looked for, by going down value and schema together and asking it about one leve
 are found in order and reading stops at ``MOST_FAULTS``: the library's own list of errors for a body of four
 million wrong items takes minutes and gigabytes.
 
-A schema says in its ``title`` what it expects, as a noun with its article ("a list of names"), and may name
-in ``x-not-yet`` the members that the interface has and this version has not.
+A schema says in its ``title`` what it expects, as a noun with its article ("a list of names"). It may name in
+``x-not-yet`` the members (of an object) or the values (of an enumeration) that the interface has and this
+version has not, and hold under ``x-not-yet-types`` a sentence for each type of which the same is true.
 """
 
 from __future__ import annotations
@@ -15,10 +16,10 @@ from collections.abc import Iterator, Mapping
 from itertools import islice
 from typing import Any
 
-from jsonschema_rs import Draft202012Validator, ValidationErrorKind
+from jsonschema_rs import Draft202012Validator
 
 from pathgate.graphs.errors import Fault, Place
-from pathgate.review.shape_words import expected, named, sentence, unknown_member
+from pathgate.review.shape_words import expected, level_faults, named
 
 Schema = Mapping[str, Any] | bool
 
@@ -55,7 +56,7 @@ class Shape:
         if self._part(schema, is_shallow=False).is_valid(value):
             return
         for error in self._part(schema, is_shallow=True).iter_errors(value):
-            yield from _level_faults(error.kind, schema, value, place)
+            yield from level_faults(error.kind, schema, value, place)
         if isinstance(schema, Mapping):
             for step, below, part in _parts_below(schema, value):
                 yield from self._faults(part, below, (*place, step))
@@ -135,12 +136,3 @@ def _parts_below(schema: Mapping[str, Any], value: Any) -> Iterator[tuple[str | 
 
 def _has_required(schema: Schema, value: Mapping[str, Any]) -> bool:
     return isinstance(schema, Mapping) and all(member in value for member in schema.get("required", ()))
-
-
-def _level_faults(kind: ValidationErrorKind, schema: Schema, value: Any, place: Place) -> Iterator[Fault]:
-    match kind:
-        case ValidationErrorKind.AdditionalProperties(unexpected=members):
-            for member in members:
-                yield unknown_member(member, schema, place)
-        case _:
-            yield Fault("invalid-request", place, sentence(kind, schema, value, place))

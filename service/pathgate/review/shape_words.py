@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from types import MappingProxyType
 from typing import Any
 
@@ -73,8 +73,22 @@ def named(place: Place) -> str:
     return f"an item of {quoted(holder)}" if holder is not None else "an item"
 
 
-def sentence(kind: Any, schema: Any, value: Any, place: Place) -> str:
-    """The sentence for one fault that the schema library found; ``kind`` is its structured account."""
+def level_faults(kind: Any, schema: Any, value: Any, place: Place) -> Iterator[Fault]:
+    """The faults that one finding of the schema library is; ``kind`` is its structured account."""
+    match kind.name:
+        case "additionalProperties":
+            for member in kind.unexpected:
+                yield _unknown_member(member, schema, place)
+        case "type" if (later := _later_type(schema, value)) is not None:
+            yield Fault("not-supported", place, later)
+        case "enum" if value in schema.get("x-not-yet", ()):
+            detail = f"the value {_shown(value)} of {named(place)} is not supported by this version"
+            yield Fault("not-supported", place, detail)
+        case _:
+            yield Fault("invalid-request", place, _sentence(kind, schema, value, place))
+
+
+def _sentence(kind: Any, schema: Any, value: Any, place: Place) -> str:
     match kind.name:
         case "required" | "dependentRequired":
             return f"the member {quoted(kind.property)} is missing"
@@ -89,14 +103,20 @@ def sentence(kind: Any, schema: Any, value: Any, place: Place) -> str:
     return f"{named(place)} must be {expected(schema)}"
 
 
-def unknown_member(member: str, schema: Any, place: Place) -> Fault:
+def _unknown_member(member: str, schema: Any, place: Place) -> Fault:
     """The fault of a member that its object does not have, or that this version does not support yet."""
     at = (*place, member)
     if member in schema.get("x-not-yet", ()):
         return Fault("not-supported", at, f"{quoted(member)} is not supported by this version")
     known = [*schema.get("properties", {}), *schema.get("x-not-yet", ())]
-    owner = f"a member of {schema['title']}" if "title" in schema else "a member known here"
-    return Fault("invalid-request", at, f"{quoted(member)} is not {owner}{did_you_mean(member, known)}")
+    detail = f"{quoted(member)} is not a member of {named(place)}{did_you_mean(member, known)}"
+    return Fault("invalid-request", at, detail)
+
+
+def _later_type(schema: Any, value: Any) -> str | None:
+    """The sentence for a value of a type (string, number, array, object) that only a later version takes."""
+    later = schema.get("x-not-yet-types", {})
+    return next((text for written, text in later.items() if _TYPES[written] == json_type(value)), None)
 
 
 def _at_least(limit: int, kind: str) -> str:

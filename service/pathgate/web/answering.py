@@ -1,0 +1,48 @@
+"""One request to an operation, from its bytes to the bytes of its answer."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+from flask import Response, request
+from werkzeug.exceptions import ClientDisconnected
+
+from pathgate.criteria.deadline import Deadline
+from pathgate.web.body import read_json
+from pathgate.web.media import check_accept, check_content
+from pathgate.web.operations import Operation, envelope_shape, open_call
+from pathgate.web.problems import Failed, Problem
+from pathgate.web.replies import json_reply
+from pathgate.web.settings import Settings
+
+
+def view_of(operation: Operation, settings: Settings) -> Callable[[], Response]:
+    """The view that answers ``operation``; whatever is wrong with a request leaves it as an exception."""
+    shape = envelope_shape(operation)
+
+    def view() -> Response:
+        headers = request.headers
+        check_content(headers.get("Content-Type"), headers.get("Content-Encoding"))
+        check_accept(headers.get("Accept"))
+        body = _read_body()
+        # Time spent waiting for the body is the caller's; only what follows is computing.
+        deadline = Deadline(settings.time_budget_seconds)
+        value = read_json(body, settings.max_depth)
+        call = open_call(shape, value, settings, deadline)
+        answer = operation.answer(call)
+        call.refuse_faults()
+        return json_reply(answer)
+
+    return view
+
+
+def _read_body() -> bytes:
+    """The bytes of the body, as many as the limit allows; beyond it the framework answers 413."""
+    try:
+        return request.get_data(cache=False)
+    except TimeoutError:
+        detail = "the body of the request did not arrive in time"
+        raise Failed(Problem.of("request-timeout", detail)) from None
+    except ClientDisconnected:
+        detail = "the request ended before its body was complete"
+        raise Failed(Problem.of("not-json", detail, line=1, column=1)) from None

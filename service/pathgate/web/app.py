@@ -1,0 +1,46 @@
+"""The one place where everything is put together: settings, operations, pages, failures."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Sequence
+
+from flask import Flask, Response
+
+from pathgate.web.answering import view_of
+from pathgate.web.endpoints import OPERATIONS
+from pathgate.web.operations import Operation
+from pathgate.web.pages import install_pages
+from pathgate.web.replies import add_headers, install_error_handlers
+from pathgate.web.settings import Settings
+
+
+class _App(Flask):
+    def make_default_options_response(self) -> Response:
+        """OPTIONS says in ``Allow`` what a path takes, and nothing in a body."""
+        reply = super().make_default_options_response()
+        reply.status_code = 204
+        del reply.headers["Content-Type"]
+        return reply
+
+
+def create_app(settings: Settings | None = None, operations: Sequence[Operation] = OPERATIONS) -> Flask:
+    """The service as a WSGI application.
+
+    Arguments:
+        settings: the limits; those that the environment asks for where none are given.
+        operations: what it answers under ``/v1/``.
+
+    Raises:
+        InvalidSettings: the environment asks for settings that cannot be used.
+    """
+    if settings is None:
+        settings = Settings.from_environment(os.environ)
+    app = _App(__name__, static_folder=None)
+    app.config["MAX_CONTENT_LENGTH"] = settings.max_body_bytes
+    for operation in operations:
+        app.add_url_rule(operation.path, operation.name, view_of(operation, settings), methods=["POST"])
+    install_pages(app, operations, settings)
+    install_error_handlers(app, settings)
+    app.after_request(add_headers)
+    return app
