@@ -81,7 +81,7 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
         name=config.name,
         verdict=verdict,
         findings=tuple(findings),
-        columns=column_roles(claim, columns, first, is_sound=verdict == "sound"),
+        columns=column_roles(claim, columns, first, deadline, is_sound=verdict == "sound"),
         remedies=remedies,
         summary=summarise(claim, verdict, findings, first),
         meta=config.meta,

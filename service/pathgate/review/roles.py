@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from pathgate.criteria.adjustment import Effect, valid_set
+from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import find_open_path
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.graphs.kinship import ancestors, descendants
@@ -48,14 +49,20 @@ class ColumnRole:
 
 
 def column_roles(
-    claim: Claim, columns: int, remedy: Remedy | None, *, is_sound: bool
+    claim: Claim, columns: int, remedy: Remedy | None, deadline: Deadline, *, is_sound: bool
 ) -> tuple[ColumnRole, ...]:
-    """Role and advice for each of the columns, in the graph's order; advice follows the first remedy."""
+    """Role and advice for each of the columns, in the graph's order; advice follows the first remedy.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
     roles = _Roles(claim.effect_among(()))
-    return tuple(
-        ColumnRole(claim.graph.name(node), roles.of(node), _advice(claim, node, remedy, is_sound=is_sound))
-        for node in members(columns)
-    )
+    answers = []
+    for node in members(columns):
+        deadline.poll()
+        advice = _advice(claim, node, remedy, is_sound=is_sound)
+        answers.append(ColumnRole(claim.graph.name(node), roles.of(node), advice))
+    return tuple(answers)
 
 
 class _Roles:
