@@ -10,9 +10,9 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import Kept
 from pathgate.criteria.separation import are_separated
+from pathgate.criteria.separators import Separators
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors, descendants
 
@@ -69,21 +69,16 @@ def is_valid(effect: Effect, covariates: int) -> bool:
 def valid_set(effect: Effect, *, required: int = 0, allowed: int = -1) -> int | None:
     """A valid set that holds ``required``, keeps to ``allowed`` and is minimal so; None where none exists.
 
-    Where any allowed set is valid, all allowed ancestors of the nodes in question are (van der Zander,
-    Liśkiewicz & Textor 2019); two passes then leave a minimal set (van der Zander & Liśkiewicz 2020).
+    Minimal among the valid sets that hold ``required``; see ``separators`` for the method and its cost.
     """
-    graph, kept = effect.back_door_graph, effect.kept
-    always = required | kept.conditioned
-    relevant = ancestors(graph, effect.treatments | effect.outcomes | always)
-    widest = (relevant & effect.usable & allowed & ~kept.conditioned) | required
-    if not is_valid(effect, widest):
+    always = required | effect.kept.conditioned
+    if always & (effect.forbidden | effect.treatments | effect.outcomes):
         return None
-    nearest = _at_the_edge(graph, effect.treatments, widest | always, relevant) | always
-    minimal = _at_the_edge(graph, effect.outcomes, nearest, relevant)
-    return (minimal & widest) | required
-
-
-def _at_the_edge(graph: CausalGraph, starts: int, separating: int, relevant: int) -> int:
-    """The separating nodes that a walk from ``starts`` meets first, all relevant colliders being open."""
-    met = connected(graph, starts, Conditions(separating, relevant), within=relevant)
-    return met & separating
+    found = Separators(
+        effect.back_door_graph,
+        effect.treatments,
+        effect.outcomes,
+        required=always,
+        allowed=effect.usable & allowed & ~effect.kept.conditioned,
+    ).minimal()
+    return None if found is None else (found & ~effect.kept.conditioned) | required

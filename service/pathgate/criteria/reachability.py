@@ -38,24 +38,21 @@ class Conditions:
         return cls(conditioned, ancestors(graph, conditioned))
 
 
-def connected(
-    graph: CausalGraph, starts: int, conditions: Conditions, *, within: int = -1, stop: int = 0
-) -> int:
+def connected(graph: CausalGraph, starts: int, conditions: Conditions, *, stop: int = 0) -> int:
     """The nodes joined to ``starts`` by an open path, the starts and blocked ends of such paths included.
 
     Args:
         graph: the graph.
         starts: where paths begin; passed freely.
         conditions: what blocks and what opens.
-        within: paths keep to this set.
         stop: once a node of this set is found, the answer may be cut short.
     """
     if graph.is_small:
-        return _by_masks(graph, starts, conditions, within, stop)
-    return _by_arrays(graph, starts, conditions, within & graph.everything)
+        return _by_masks(graph, starts, conditions, stop)
+    return _by_arrays(graph, starts, conditions)
 
 
-def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions, within: int, stop: int) -> int:
+def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions, stop: int) -> int:
     blocking, opening = conditions.blocking, conditions.opening
     parents, children, spouses = graph.parent_masks, graph.child_masks, graph.spouse_masks
     by_tail = starts
@@ -78,8 +75,8 @@ def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions, within: i
             if lowest & opening:
                 up = parents[node]
                 down |= spouses[node]
-        up &= within & ~by_tail
-        down &= within & ~by_head
+        up &= ~by_tail
+        down &= ~by_head
         by_tail |= up
         by_head |= down
         fresh_by_tail |= up
@@ -89,16 +86,13 @@ def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions, within: i
     return by_tail | by_head
 
 
-def _by_arrays(graph: CausalGraph, starts: int, conditions: Conditions, within: int) -> int:
+def _by_arrays(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
     size = graph.size
     begins, opens = unpack(starts, size), unpack(conditions.opening, size)
     passes = ~unpack(conditions.blocking, size)
-    inside = unpack(within, size)
-    arrows = inside[graph.sources] & inside[graph.targets]
-    bows = inside[graph.lower_ends] & inside[graph.upper_ends]
-    tails, heads = graph.sources[arrows], graph.targets[arrows]
-    ends = np.concatenate([graph.lower_ends[bows], graph.upper_ends[bows]])
-    others = np.concatenate([graph.upper_ends[bows], graph.lower_ends[bows]])
+    tails, heads = graph.sources, graph.targets
+    ends = np.concatenate([graph.lower_ends, graph.upper_ends])
+    others = np.concatenate([graph.upper_ends, graph.lower_ends])
     # State v: node v entered by the tail, or a start. State size + v: node v entered by an arrowhead.
     steps = [
         _steps(passes | begins, heads, tails, 0, 0),

@@ -1,0 +1,116 @@
+"""The augmented graph of an ancestral set, in linear size: nodes joined through hubs instead of cliques.
+
+Among the ancestors of what is asked about, two nodes are adjacent in the augmented graph (moral graph:
+Lauritzen et al. 1990; with bidirected edges: Richardson 2003) when a path of colliders only joins them. That
+makes a clique of each district and its parents. One hub for each district, joined to all members of its
+clique, says the same in O(nodes + edges) instead of O(nodes²). Taking nodes away from it shows which sets
+separate, and separating sets are its vertex cuts.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from functools import cached_property
+
+from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.kinship import ancestors
+from pathgate.graphs.masks import mask_of, members, unpack
+
+
+@dataclass(frozen=True)
+class Hubs:
+    """A linear-size augmented graph.
+
+    Attributes:
+        graph: the causal graph.
+        relevant: mask of the ancestral set.
+        hub_members: for each hub its clique: a district and the parents of its nodes.
+        hubs_of: for each node of the graph the hubs it is joined to; empty outside the relevant set.
+    """
+
+    graph: CausalGraph
+    relevant: int
+    hub_members: tuple[tuple[int, ...], ...]
+    hubs_of: tuple[tuple[int, ...], ...]
+
+    @classmethod
+    def over(cls, graph: CausalGraph, nodes: int) -> Hubs:
+        """The augmented graph of the ancestors of ``nodes``."""
+        relevant = ancestors(graph, nodes)
+        inside = unpack(relevant, graph.size)
+        hub_members: list[tuple[int, ...]] = []
+        hubs_of: list[list[int]] = [[] for _ in range(graph.size)]
+        for district in _districts(graph, relevant, inside.tolist()):
+            clique = dict.fromkeys(district)
+            for node in district:
+                clique.update(dict.fromkeys(graph.parents(node)))
+            for node in clique:
+                hubs_of[node].append(len(hub_members))
+            hub_members.append(tuple(clique))
+        return cls(graph, relevant, tuple(hub_members), tuple(map(tuple, hubs_of)))
+
+    @cached_property
+    def _member_masks(self) -> tuple[int, ...]:
+        return tuple(map(mask_of, self.hub_members))
+
+    def spread(self, starts: int, stopping: int) -> tuple[int, int]:
+        """What can be reached from ``starts`` without passing ``stopping``, and which of those it stops at.
+
+        Starts are passed even where they are in ``stopping``.
+        """
+        if self.graph.is_small:
+            return self._spread_masks(starts, stopping)
+        return self._spread_lists(starts, stopping)
+
+    def _spread_masks(self, starts: int, stopping: int) -> tuple[int, int]:
+        masks, hubs_of = self._member_masks, self.hubs_of
+        seen_hubs = set[int]()
+        seen = frontier = starts
+        while frontier:
+            lowest = frontier & -frontier
+            frontier ^= lowest
+            for hub in hubs_of[lowest.bit_length() - 1]:
+                if hub not in seen_hubs:
+                    seen_hubs.add(hub)
+                    new = masks[hub] & ~seen
+                    seen |= new
+                    frontier |= new & ~stopping
+        stopped = seen & stopping & ~starts
+        return seen & ~stopped, stopped
+
+    def _spread_lists(self, starts: int, stopping: int) -> tuple[int, int]:
+        stops = unpack(stopping, self.graph.size).tolist()
+        seen = [False] * self.graph.size
+        seen_hubs = [False] * len(self.hub_members)
+        frontier = list(members(starts))
+        inside, stopped = list(frontier), list[int]()
+        for node in frontier:
+            seen[node] = True
+        while frontier:
+            for hub in self.hubs_of[frontier.pop()]:
+                if not seen_hubs[hub]:
+                    seen_hubs[hub] = True
+                    for node in self.hub_members[hub]:
+                        if not seen[node]:
+                            seen[node] = True
+                            (stopped if stops[node] else inside).append(node)
+                            if not stops[node]:
+                                frontier.append(node)
+        return mask_of(inside), mask_of(stopped)
+
+
+def _districts(graph: CausalGraph, relevant: int, inside: list[bool]) -> Iterable[list[int]]:
+    """The sets of relevant nodes joined by bidirected edges between relevant nodes."""
+    placed = [False] * graph.size
+    for node in members(relevant):
+        if placed[node]:
+            continue
+        placed[node] = True
+        district = [node]
+        for member in district:
+            for spouse in graph.spouses(member):
+                if inside[spouse] and not placed[spouse]:
+                    placed[spouse] = True
+                    district.append(spouse)
+        yield district
