@@ -1,15 +1,18 @@
 """Graph criteria: pure functions of a causal graph, each answer with its proof."""
 
 from pathgate.criteria.adjustment import Effect, is_valid, total_effect, valid_set
+from pathgate.criteria.batch import separated_each
 from pathgate.criteria.colliders import Collider, Induced, colliders, induced
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_nodes, open_paths
 from pathgate.criteria.errors import CriterionError, OutOfTime, Overlapping
 from pathgate.criteria.paths import OpenPath, Step, Trail, directed_path, find_open_path
 from pathgate.criteria.selection import Kept, Label, Part, keep_rows
-from pathgate.criteria.separation import Separation, are_separated, separation
+from pathgate.criteria.separation import Blocker, Separation, are_separated, is_separated, separation
+from pathgate.criteria.separators import Separators
 
 __all__ = [
+    "Blocker",
     "Collider",
     "CriterionError",
     "Deadline",
@@ -25,6 +28,7 @@ __all__ = [
     "Overlapping",
     "Part",
     "Separation",
+    "Separators",
     "Step",
     "Trail",
     "are_separated",
@@ -33,9 +37,11 @@ __all__ = [
     "find_open_path",
     "forbidden_nodes",
     "induced",
+    "is_separated",
     "is_valid",
     "keep_rows",
     "open_paths",
+    "separated_each",
     "separation",
     "total_effect",
     "valid_set",

@@ -13,8 +13,12 @@ from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.reachability import Conditions, connected
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
+
+# Below this many statements, setting up lanes costs more than they save.
+FEW = 8
 
 Statement = tuple[int, int, int]
 """x, y and given as disjoint masks; x and y not empty."""
@@ -30,12 +34,20 @@ def separated_each(graph: CausalGraph, statements: Sequence[Statement], deadline
     >>> separated_each(graph, [(1, 4, 0), (1, 4, 2)], Deadline.never())
     [True, False]
     """
+    if len(statements) < FEW:
+        return [_alone(graph, statement, deadline) for statement in statements]
     lanes = _Lanes.of(graph, statements)
     lanes.run(deadline)
     return [
         not any((lanes.by_tail[y] | lanes.by_head[y]) >> lane & 1 for y in members(ys))
         for lane, (_xs, ys, _given) in enumerate(statements)
     ]
+
+
+def _alone(graph: CausalGraph, statement: Statement, deadline: Deadline) -> bool:
+    deadline.poll()
+    xs, ys, given = statement
+    return not connected(graph, xs, Conditions.on(graph, given), stop=ys) & ys
 
 
 @dataclass(slots=True)

@@ -17,7 +17,7 @@ from typing import Literal
 from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.selection import Kept, Label
 from pathgate.graphs.graph import CausalGraph, Edge
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import members, unpack
 
 Arrow = Literal["forward", "backward", "both"]
 Role = Literal["chain", "fork", "collider"]
@@ -79,6 +79,8 @@ def find_open_path(
     With ``fewest_colliders`` a path that needs no opened collider is preferred to any that does.
     """
     per_collider = 2 * graph.size + 1 if fewest_colliders else 0
+    passes, opens = _flags(graph, ~conditions.blocking), _flags(graph, conditions.opening)
+    starting, ending = _flags(graph, starts), _flags(graph, ends)
     came_from: dict[int, tuple[int, Arrow]] = {}
     best = {2 * node: 0 for node in members(starts)}
     queue = [(0, state) for state in best]
@@ -86,10 +88,14 @@ def find_open_path(
         length, state = heapq.heappop(queue)
         if length > best[state]:
             continue
-        if ends >> (state >> 1) & 1:
+        node, by_head = state >> 1, bool(state & 1)
+        if ending[node]:
             return _trail(came_from, state)
-        for reached, arrow, is_collider in _moves(graph, state, starts, conditions):
-            total = length + 1 + (per_collider if is_collider else 0)
+        may_pass = passes[node] or (starting[node] and not by_head)
+        # Entered by an arrowhead and left against one, the node is a collider.
+        may_turn = opens[node] if by_head else may_pass
+        for reached, arrow, is_turn in _moves(graph, node, may_pass=bool(may_pass), may_turn=bool(may_turn)):
+            total = length + 1 + (per_collider if is_turn and by_head else 0)
             if total < best.get(reached, total + 1):
                 best[reached] = total
                 came_from[reached] = (state, arrow)
@@ -107,18 +113,19 @@ def directed_path(graph: CausalGraph, starts: int, ends: int, *, avoiding: int =
     """A shortest directed path from one set into another that enters nothing to be avoided, or None."""
     came_from: dict[int, int] = {}
     queue = deque(node for node in graph.members(starts))
-    seen = starts | avoiding
+    seen = {*members(starts), *members(avoiding)}
+    ending = _flags(graph, ends)
     while queue:
         node = queue.popleft()
-        if ends >> node & 1:
+        if ending[node]:
             nodes = [node]
             while nodes[-1] in came_from:
                 nodes.append(came_from[nodes[-1]])
             arrows: list[Arrow] = ["forward"] * (len(nodes) - 1)
             return Trail(tuple(reversed(nodes)), tuple(arrows))
         for child in graph.children(node):
-            if not seen >> child & 1:
-                seen |= 1 << child
+            if child not in seen:
+                seen.add(child)
                 came_from[child] = node
                 queue.append(child)
     return None
@@ -133,21 +140,23 @@ def opened_by(graph: CausalGraph, collider: int, openers: int) -> Trail:
     return trail
 
 
+def _flags(graph: CausalGraph, mask: int) -> bytes:
+    """A mask as one byte a node: looking up a bit of a wide mask would copy the mask."""
+    return unpack(mask & graph.everything, graph.size).tobytes()
+
+
 def _moves(
-    graph: CausalGraph, state: int, starts: int, conditions: Conditions
+    graph: CausalGraph, node: int, *, may_pass: bool, may_turn: bool
 ) -> Iterator[tuple[int, Arrow, bool]]:
-    """Where one can go on from a state: the next state, by which arrow, and past an open collider or not."""
-    node, by_head = state >> 1, bool(state & 1)
-    passes = not conditions.blocking >> node & 1 or (not by_head and bool(starts >> node & 1))
-    if passes:
+    """Where one can go on from a node: the next state, by which arrow, and leaving against an arrowhead or not."""
+    if may_pass:
         for child in graph.children(node):
             yield 2 * child + 1, "forward", False
-    # Entered by an arrowhead and left against one, the node is a collider.
-    if conditions.opening >> node & 1 if by_head else passes:
+    if may_turn:
         for parent in graph.parents(node):
-            yield 2 * parent, "backward", by_head
+            yield 2 * parent, "backward", True
         for spouse in graph.spouses(node):
-            yield 2 * spouse + 1, "both", by_head
+            yield 2 * spouse + 1, "both", True
 
 
 def _trail(came_from: dict[int, tuple[int, Arrow]], state: int) -> Trail:

@@ -1,39 +1,81 @@
-"""Does a set of nodes separate two others, and if not, along which path are they joined?
+"""Does a set of nodes separate two others? If not, along which path are they joined; if so, what blocks them?
 
 d-separation (Pearl 1988) and, where bidirected edges stand for unmeasured common causes, m-separation
-(Richardson 2003), by linear-time reachability. O(nodes + edges) a verdict.
+(Richardson 2003). A verdict alone is linear-time reachability; its proof adds a shortest open path or the
+blockers of the shortest paths, and a smallest separating set, which is a minimum cut.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
+from itertools import islice
+from typing import Literal
 
+from pathgate.criteria.batch import Statement
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.errors import Overlapping
-from pathgate.criteria.paths import OpenPath, explain_path, find_open_path
+from pathgate.criteria.paths import OpenPath, Role, Trail, explain_path, find_open_path
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import keep_rows
+from pathgate.criteria.separators import Separators
+from pathgate.criteria.skeleton_paths import shortest_paths
 from pathgate.graphs.graph import CausalGraph
 
 Names = str | Iterable[str]
+Blocked = Literal["conditioned", "collider-not-conditioned"]
+
+DEFAULT_PATHS = 3
+
+
+@dataclass(frozen=True, slots=True)
+class Blocker:
+    """A path between x and y, and the first node on it that blocks it."""
+
+    path: Trail
+    node: int
+    role: Role
+    because: Blocked
 
 
 @dataclass(frozen=True, slots=True)
 class Separation:
-    """Whether ``given`` separates ``x`` from ``y``; where not, a shortest open path shows it."""
+    """Whether ``given`` separates ``x`` from ``y``, with the proof.
+
+    Attributes:
+        x, y, given: names, in the graph's order.
+        separated: the verdict.
+        open_path: where not separated, a shortest open path.
+        blockers: where separated, a node that blocks each of the shortest paths; none where no path joins
+            the two.
+        separator: a smallest set of measured nodes that would separate x from y; None where none does.
+    """
 
     x: tuple[str, ...]
     y: tuple[str, ...]
     given: tuple[str, ...]
     separated: bool
     open_path: OpenPath | None = None
+    blockers: tuple[Blocker, ...] = ()
+    separator: tuple[str, ...] | None = None
 
 
 def separation(
-    graph: CausalGraph, x: Names, y: Names, given: Names = (), *, deadline: Deadline | None = None
+    graph: CausalGraph,
+    x: Names,
+    y: Names,
+    given: Names = (),
+    *,
+    paths: int = DEFAULT_PATHS,
+    deadline: Deadline | None = None,
 ) -> Separation:
     """Is every path between ``x`` and ``y`` blocked by ``given``? Any node may be named, measured or not.
+
+    Args:
+        graph: the graph.
+        x, y, given: disjoint sets of names; x and y not empty.
+        paths: for how many of the shortest paths to name a blocker.
+        deadline: when to give up.
 
     Raises:
         UnknownNode: a name is not in the graph.
@@ -41,28 +83,63 @@ def separation(
         OutOfTime: the deadline came first.
 
     >>> graph = CausalGraph.of(("rain", "delay"), ("promo", "delay"))
-    >>> separation(graph, "rain", "promo").separated
-    True
+    >>> found = separation(graph, "rain", "promo")
+    >>> found.separated, found.blockers[0].because, found.separator
+    (True, 'collider-not-conditioned', ())
     >>> separation(graph, "rain", "promo", ["delay"]).open_path.steps[0].because
     'conditioned'
     """
     xs, ys, conditioned = graph.mask(x), graph.mask(y), graph.mask(given)
     check_disjoint(graph, xs, ys, conditioned)
-    if deadline is not None:
+    return explained(graph, (xs, ys, conditioned), paths, deadline or Deadline.never())
+
+
+def is_separated(graph: CausalGraph, x: Names, y: Names, given: Names = ()) -> bool:
+    """The verdict alone, without its proof; see ``separation``.
+
+    >>> is_separated(CausalGraph.of(("rain", "delay"), ("delay", "refund")), "rain", "refund", ["delay"])
+    True
+    """
+    xs, ys, conditioned = graph.mask(x), graph.mask(y), graph.mask(given)
+    check_disjoint(graph, xs, ys, conditioned)
+    return are_separated(graph, xs, ys, conditioned)
+
+
+def explained(graph: CausalGraph, statement: Statement, paths: int, deadline: Deadline) -> Separation:
+    """The verdict on a statement with its proof.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    xs, ys, given = statement
+    deadline.poll()
+    conditions = Conditions.on(graph, given)
+    trail = find_open_path(graph, xs, ys, conditions)
+    deadline.poll()
+    smallest = Separators(graph, xs, ys, required=0, allowed=graph.measured).smallest()
+    return Separation(
+        x=graph.names_of(xs),
+        y=graph.names_of(ys),
+        given=graph.names_of(given),
+        separated=trail is None,
+        open_path=None if trail is None else explain_path(keep_rows(graph), trail, given),
+        blockers=tuple(_blockers(graph, xs, ys, conditions, paths, deadline)) if trail is None else (),
+        separator=None if smallest is None else graph.names_of(smallest),
+    )
+
+
+def _blockers(
+    graph: CausalGraph, xs: int, ys: int, conditions: Conditions, paths: int, deadline: Deadline
+) -> Iterator[Blocker]:
+    for trail in islice(shortest_paths(graph, xs, ys), paths):
         deadline.poll()
-    return separation_of(graph, xs, ys, conditioned, explain=True)
-
-
-def separation_of(graph: CausalGraph, xs: int, ys: int, conditioned: int, *, explain: bool) -> Separation:
-    """The verdict over masks that are known to be disjoint, with the open path only where asked to explain."""
-    named = (graph.names_of(xs), graph.names_of(ys), graph.names_of(conditioned))
-    if are_separated(graph, xs, ys, conditioned):
-        return Separation(*named, separated=True)
-    if not explain:
-        return Separation(*named, separated=False)
-    trail = find_open_path(graph, xs, ys, Conditions.on(graph, conditioned))
-    path = explain_path(keep_rows(graph), trail, conditioned) if trail else None
-    return Separation(*named, separated=False, open_path=path)
+        for node, role in trail.inner:
+            if role == "collider" and not conditions.opening >> node & 1:
+                yield Blocker(trail, node, role, "collider-not-conditioned")
+                break
+            if role != "collider" and conditions.blocking >> node & 1:
+                yield Blocker(trail, node, role, "conditioned")
+                break
 
 
 def are_separated(graph: CausalGraph, xs: int, ys: int, conditioned: int) -> bool:

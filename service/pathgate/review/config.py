@@ -156,6 +156,17 @@ class NameReader:
                 self.faults.append(Fault("invalid-request", at, detail, (self.graph.name(node),)))
         return tuple(found.values())
 
+    def mask(self, value: str | Sequence[str], place: Place) -> int:
+        """The same as a mask, for sets that are only computed with."""
+        names = (value,) if isinstance(value, str) else value
+        index = self.graph.index
+        mask = 0
+        for name in names:
+            if name not in index:
+                return mask_of(named.node for named in self.read(value, place))
+            mask |= 1 << index[name]
+        return mask
+
     def find(self, name: str) -> int | None:
         """The node that bears this name."""
         node = self.graph.index.get(name)

@@ -5,7 +5,6 @@ from __future__ import annotations
 from typing import Any
 
 from pathgate.demo import demo_graph
-
 from pathgate.graphs.errors import Fault, pointer
 from pathgate.web.endpoints.reading import examine
 from pathgate.web.endpoints.shared_schemas import GRAPH, NAME_LIST

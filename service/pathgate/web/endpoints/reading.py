@@ -6,7 +6,6 @@ from typing import Any
 
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import mask_of
 from pathgate.graphs.reading import Examined, examine_graph
 from pathgate.review.config import NameReader
 from pathgate.web.operations import Call
@@ -49,7 +48,7 @@ def names_of(call: Call, graph: CausalGraph) -> NameReader:
 
 def mask_in(call: Call, names: NameReader, member: str) -> int:
     """The nodes that a member of the body names; none where it is absent or at fault already."""
-    return mask_of(named.node for named in names.read(call.body.get(member, []), (member,)))
+    return names.mask(call.body.get(member, []), (member,))
 
 
 def _list_in(graph: Any, member: str) -> list[Any]:

@@ -6,7 +6,6 @@ from dataclasses import replace
 from typing import Any, get_args
 
 from pathgate.demo import demo_configs, demo_graph
-
 from pathgate.review.config import understand_config
 from pathgate.review.document import review_document
 from pathgate.review.review import review

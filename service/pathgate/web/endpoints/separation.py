@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from typing import Any
 
-from pathgate.criteria.separation import Separation, separation_of
+from pathgate.criteria.batch import Statement, separated_each
+from pathgate.criteria.reachability import Conditions, connected
+from pathgate.criteria.separation import DEFAULT_PATHS, Blocker, Separation, explained
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import quoted
 from pathgate.review.config import NameReader
 from pathgate.review.document import path_document
@@ -17,51 +18,119 @@ from pathgate.web.endpoints.shared_schemas import GIVEN, GRAPH, NAME_LIST, PATH_
 from pathgate.web.operations import Call, Example, Json, Operation
 from pathgate.web.problems import Refused
 
-_Question = tuple[int, int, int]
+MOST_PATHS = 20
 
 
 def answer(call: Call) -> Json:
-    """A verdict for every statement, in order."""
-    count = len(call.body.get("statements", ()))
-    if count > call.settings.max_statements:
-        detail = f"the request has {count:,} statements; the limit is {call.settings.max_statements:,}"
-        raise Refused([Fault("over-limit", ("statements",), detail)])
+    """A verdict for every statement and the verdicts of every sweep, in order."""
+    _refuse_too_many(call)
     graph = graph_of(call)
     names = names_of(call, graph)
-    questions = [_question(names, graph, place, said) for place, said in call.sound_items("statements")]
+    statements = [_sets(names, ("statements", place), said) for place, said in call.sound_items("statements")]
+    sweeps = [_sets(names, ("sweeps", place), said) for place, said in call.sound_items("sweeps")]
     call.refuse_faults()
-    explain = call.body.get("explain", True)
-    verdicts = []
-    for xs, ys, given in questions:
-        call.deadline.poll()
-        verdicts.append(_verdict(separation_of(graph, xs, ys, given, explain=explain), explain=explain))
-    return {"verdicts": verdicts}
+    document: Json = {"verdicts": _verdicts(call, graph, statements)}
+    if "sweeps" in call.body:
+        document["sweeps"] = [_sweep(call, graph, xs, given) for xs, _ys, given in sweeps]
+    return document
 
 
-def _question(names: NameReader, graph: CausalGraph, place: int, said: dict[str, Any]) -> _Question:
-    sets = [
-        mask_of(named.node for named in names.read(said.get(member, []), ("statements", place, member)))
-        for member in ("x", "y", "given")
-    ]
-    xs, ys, given = sets
+def _refuse_too_many(call: Call) -> None:
+    counts = {
+        member: len(call.whole[member]) for member in ("statements", "sweeps") if _is_list(call, member)
+    }
+    most = call.settings.max_statements
+    if sum(counts.values()) > most:
+        asked = " and ".join(f"{count:,} {member}" for member, count in counts.items())
+        raise Refused(
+            [Fault("over-limit", (next(iter(counts)),), f"the request has {asked}; the limit is {most:,}")]
+        )
+
+
+def _is_list(call: Call, member: str) -> bool:
+    return isinstance(call.whole.get(member), list)
+
+
+def _sets(names: NameReader, place: tuple[str | int, ...], said: dict[str, Any]) -> Statement:
+    """x, y and given of a statement, or x and given of a sweep; a node on two sides is a fault."""
+    xs, ys, given = (names.mask(said.get(member, []), (*place, member)) for member in ("x", "y", "given"))
     shared = (xs & ys) | (xs & given) | (ys & given)
-    for name in graph.names_of(shared):
+    for name in names.graph.names_of(shared):
         detail = f"{quoted(name)} is named on more than one side"
-        names.faults.append(Fault("invalid-request", ("statements", place), detail, (name,)))
+        names.faults.append(Fault("invalid-request", place, detail, (name,)))
     return xs, ys, given
 
 
-def _verdict(found: Separation, *, explain: bool) -> Json:
-    verdict: Json = {
+def _verdicts(call: Call, graph: CausalGraph, statements: list[Statement]) -> list[Json]:
+    if call.body.get("explain", True):
+        paths = int(call.body.get("paths", DEFAULT_PATHS))
+        return [_explained(graph, explained(graph, one, paths, call.deadline)) for one in statements]
+    answers = separated_each(graph, statements, call.deadline)
+    return [
+        {
+            "x": list(graph.names_of(xs)),
+            "y": list(graph.names_of(ys)),
+            "given": list(graph.names_of(given)),
+            "separated": separated,
+        }
+        for (xs, ys, given), separated in zip(statements, answers, strict=True)
+    ]
+
+
+def _explained(graph: CausalGraph, found: Separation) -> Json:
+    return {
         "x": list(found.x),
         "y": list(found.y),
         "given": list(found.given),
         "separated": found.separated,
+        "open_path": path_document(found.open_path) if found.open_path else None,
+        "blockers": [_blocker(graph, blocker) for blocker in found.blockers],
+        "separator": None if found.separator is None else list(found.separator),
     }
-    if explain:
-        verdict["open_path"] = path_document(found.open_path) if found.open_path else None
-    return verdict
 
+
+def _blocker(graph: CausalGraph, found: Blocker) -> Json:
+    nodes = [graph.name(node) for node in found.path.nodes]
+    return {
+        "path": {"nodes": nodes, "arrows": list(found.path.arrows)},
+        "node": graph.name(found.node),
+        "role": found.role,
+        "because": found.because,
+    }
+
+
+def _sweep(call: Call, graph: CausalGraph, xs: int, given: int) -> Json:
+    call.deadline.poll()
+    others = graph.measured & ~(xs | given)
+    joined = connected(graph, xs, Conditions.on(graph, given)) & others
+    return {
+        "x": list(graph.names_of(xs)),
+        "given": list(graph.names_of(given)),
+        "separated_from": list(graph.names_of(others & ~joined)),
+        "connected_to": list(graph.names_of(joined)),
+    }
+
+
+_BLOCKER: Json = {
+    "type": "object",
+    "description": "A path, and the first node on it that blocks it.",
+    "properties": {
+        "path": {
+            "type": "object",
+            "properties": {
+                "nodes": NAME_LIST,
+                "arrows": {"type": "array", "items": {"enum": ["forward", "backward", "both"]}},
+            },
+            "required": ["nodes", "arrows"],
+            "additionalProperties": False,
+        },
+        "node": {"type": "string"},
+        "role": {"enum": ["chain", "fork", "collider"]},
+        "because": {"enum": ["conditioned", "collider-not-conditioned"]},
+    },
+    "required": ["path", "node", "role", "because"],
+    "additionalProperties": False,
+}
 
 _PARCELS: Json = {
     "nodes": ["weather", "courier_delay", "promotion", "locker_full", "late_pickup"],
@@ -79,8 +148,10 @@ OPERATION = Operation(
     description=(
         "d-separation, and m-separation where there are bidirected edges. `x`, `y` and `given` are disjoint; any"
         " node may be named, measured or not. Where the two are not separated, `open_path` is a shortest open"
-        " path between them with the reason why each of its steps is open. With `explain: false` the verdicts"
-        " come alone, and fast."
+        " path between them with the reason why each of its steps is open; where they are, `blockers` names for"
+        " each of the shortest paths between them a node that blocks it. `separator` is a smallest set of"
+        " measured nodes that would separate the two. With `explain: false` the verdicts come alone, and fast:"
+        " thousands of statements share the work. A sweep answers for every other measured node at once."
     ),
     request_schema={
         "type": "object",
@@ -100,11 +171,27 @@ OPERATION = Operation(
                     "additionalProperties": False,
                 },
             },
+            "sweeps": {
+                "type": "array",
+                "description": "one side and what is given: what of all the rest is it joined to?",
+                "items": {
+                    "type": "object",
+                    "properties": {"x": {**SOME_NAMES, "description": "one side"}, "given": GIVEN},
+                    "required": ["x"],
+                    "additionalProperties": False,
+                },
+            },
+            "paths": {
+                "type": "integer",
+                "minimum": 0,
+                "maximum": MOST_PATHS,
+                "default": DEFAULT_PATHS,
+                "description": "for how many of the shortest paths to name a blocker",
+            },
             "explain": {"type": "boolean", "default": True, "description": "false: verdicts alone"},
         },
-        "required": ["graph", "statements"],
+        "required": ["graph"],
         "additionalProperties": False,
-        "x-not-yet": ["sweeps", "paths"],
     },
     response_schema={
         "type": "object",
@@ -122,16 +209,40 @@ OPERATION = Operation(
                             "description": "null where separated; absent with explain: false",
                             "anyOf": [{"$ref": "#/components/schemas/Path"}, {"type": "null"}],
                         },
+                        "blockers": {
+                            "type": "array",
+                            "description": "empty where no path joins the two; absent with explain: false",
+                            "items": {"$ref": "#/components/schemas/Blocker"},
+                        },
+                        "separator": {
+                            "description": "null where no measured set separates; absent with explain: false",
+                            "anyOf": [NAME_LIST, {"type": "null"}],
+                        },
                     },
                     "required": ["x", "y", "given", "separated"],
                     "additionalProperties": False,
                 },
-            }
+            },
+            "sweeps": {
+                "type": "array",
+                "description": "present where asked for",
+                "items": {
+                    "type": "object",
+                    "properties": {
+                        "x": NAME_LIST,
+                        "given": NAME_LIST,
+                        "separated_from": NAME_LIST,
+                        "connected_to": NAME_LIST,
+                    },
+                    "required": ["x", "given", "separated_from", "connected_to"],
+                    "additionalProperties": False,
+                },
+            },
         },
         "required": ["verdicts"],
         "additionalProperties": False,
     },
-    components=PATH_COMPONENTS,
+    components={**PATH_COMPONENTS, "Blocker": _BLOCKER},
     examples=(
         Example(
             "a-collider-opened",
@@ -142,6 +253,20 @@ OPERATION = Operation(
                     {"x": "weather", "y": "promotion"},
                     {"x": "weather", "y": "promotion", "given": ["late_pickup"]},
                 ],
+            },
+        ),
+        Example(
+            "a-sweep",
+            "All that is still joined to late pick-ups once full lockers are held fixed.",
+            {"graph": _PARCELS, "sweeps": [{"x": "late_pickup", "given": ["locker_full"]}]},
+        ),
+        Example(
+            "verdicts-alone",
+            "Without explanations, for thousands of statements.",
+            {
+                "graph": _PARCELS,
+                "statements": [{"x": "weather", "y": "late_pickup", "given": ["courier_delay"]}],
+                "explain": False,
             },
         ),
     ),
