@@ -1,0 +1,117 @@
+"""An outcome as text for people: what is wrong with each config, why, and what to change.
+
+Written for whoever keeps the pipeline and has never heard of a collider. Nothing that a file says can steer the
+terminal: unprintable characters are shown by their numbers.
+"""
+
+from __future__ import annotations
+
+import textwrap
+from collections.abc import Callable, Iterator
+from typing import Any
+
+import click
+
+from pathgate.cli.reviewing import Item, Outcome
+from pathgate.review.visible import visible
+
+Json = dict[str, Any]
+Wrap = Callable[[str, str], str]
+
+# Faults of one config that are listed; more are counted.
+_MOST_FAULTS = 10
+
+_MEANINGS = {
+    "sound": "If the graph is right, the number that this model reports is the effect it is read as.",
+    "biased": "The number that this model reports is not the effect it is read as. This can be mended.",
+    "unanswerable": "The number that this model reports is not the effect it is read as, and no choice of the"
+    " columns that the platform holds makes it so.",
+}
+_COLOURS = {"sound": "green", "biased": "red", "unanswerable": "magenta", "not judged": "yellow"}
+_HOW_TO_READ_PATHS = (
+    "In paths: → leads from cause to effect, ↔ joins two columns that share a cause nobody measures, [x] is held"
+    " fixed by the model or the filter, (x) is not measured, {x} is a condition on the rows."
+)
+
+
+def outcome_text(outcome: Outcome, *, width: int | None = None, colour: bool = False) -> str:
+    """Every item, what they have in common once, and how they ended.
+
+    Arguments:
+        width: where to break lines; None breaks none, so that each finding stays on a line of its own.
+        colour: mark verdicts by colour beside the words.
+    """
+    wrap = _wrapper(width)
+    blocks = ["\n".join(_item_lines(item, wrap, colour=colour)) for item in outcome.items]
+    blocks += [wrap("", note) for note in _common_notes(outcome)]
+    return "\n\n".join([*blocks, counts_text(outcome)]) + "\n"
+
+
+def counts_text(outcome: Outcome) -> str:
+    """How many configs were found, and how they ended, in one line.
+
+    >>> counts_text(Outcome((Item("a", problem={}), Item("b", review={"verdict": "sound"}))))
+    '2 configs found, 1 reviewed: 1 sound, 0 biased, 0 unanswerable; 1 not judged.'
+    """
+    counts = outcome.counts
+    found, not_judged = len(outcome.items), counts["not judged"]
+    verdicts = ", ".join(f"{counts[verdict]} {verdict}" for verdict in _MEANINGS)
+    configs = "1 config" if found == 1 else f"{found} configs"
+    return f"{configs} found, {found - not_judged} reviewed: {verdicts}; {not_judged} not judged."
+
+
+def problem_lines(problem: Json) -> list[str]:
+    """What keeps something from being judged: a line, and below it each fault where it is not the only one."""
+    errors = [f"{visible(each['pointer'])}: {visible(each['detail'])}" for each in problem.get("errors", ())]
+    if len(errors) < 2:
+        return errors or [visible(problem["detail"])]
+    found = len(errors) + problem.get("errors_omitted", 0)
+    listed = errors[:_MOST_FAULTS]
+    more = [f"and {found - len(listed):,} more"] if found > len(listed) else []
+    return [f"{found:,} faults:", *(f"- {line}" for line in [*listed, *more])]
+
+
+def _item_lines(item: Item, wrap: Wrap, *, colour: bool) -> Iterator[str]:
+    verdict = item.outcome.upper()
+    if colour:
+        verdict = click.style(verdict, fg=_COLOURS[item.outcome], bold=True)
+    yield f"{verdict}  {visible(item.name)}"
+    if item.review is None:
+        yield from (wrap("  ", line) for line in problem_lines(item.problem or {}))
+        return
+    yield wrap("  ", _MEANINGS[item.outcome])
+    for finding in item.review["findings"]:
+        yield wrap("  ", f"{finding['severity']} {finding['rule']}: {visible(finding['message'])}")
+    yield from (wrap("  ", line) for line in _remedy_lines(item.review["remedies"]))
+
+
+def _remedy_lines(remedies: list[Json]) -> Iterator[str]:
+    steps = [visible(remedy["message"]).removeprefix("to mend it, ") for remedy in remedies]
+    if len(steps) == 1:
+        yield f"To mend it: {steps[0]}."
+    elif steps:
+        yield "To mend it, do one of these:"
+        yield from (f"- {step}" for step in steps)
+
+
+def _common_notes(outcome: Outcome) -> Iterator[str]:
+    reviews = [item.review for item in outcome.items if item.review is not None]
+    findings = [finding for review in reviews for finding in review["findings"]]
+    if any("open_path" in finding or "causal_path" in finding for finding in findings):
+        yield _HOW_TO_READ_PATHS
+    cautions = dict.fromkeys(caution for review in reviews for caution in review["cautions"])
+    if cautions:
+        yield " ".join(cautions)
+
+
+def _wrapper(width: int | None) -> Wrap:
+    if width is None:
+        return lambda indent, text: indent + text
+    return lambda indent, text: textwrap.fill(
+        text,
+        width,
+        initial_indent=indent,
+        subsequent_indent=indent + "  " if indent else "",
+        break_long_words=False,
+        break_on_hyphens=False,
+    )
