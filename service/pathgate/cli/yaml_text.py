@@ -62,20 +62,25 @@ def read_yaml(text: str, max_depth: int) -> Any:
 
 
 def _events(text: str) -> Iterator[Event]:
+    line, column = 1, 1
     try:
-        yield from YAML(typ="safe", pure=True).parse(text)
+        for event in YAML(typ="safe", pure=True).parse(text):
+            line, column = event.start_mark.line + 1, event.start_mark.column + 1
+            yield event
     except ReaderError as error:
         line_start = text.rfind("\n", 0, error.position) + 1
         detail = f"the character U+{ord(text[error.position]):04X} does not belong in a text"
-        line = text.count("\n", 0, error.position) + 1
-        raise NotYaml(detail, line, error.position - line_start + 1) from None
+        raise NotYaml(
+            detail, text.count("\n", 0, error.position) + 1, error.position - line_start + 1
+        ) from None
     except MarkedYAMLError as error:
         mark = error.problem_mark or error.context_mark
-        line, column = (mark.line + 1, mark.column + 1) if mark else (1, 1)
+        line, column = (mark.line + 1, mark.column + 1) if mark else (line, column)
         raise NotYaml(f"broken syntax: {error.problem or error.context}", line, column) from None
-    except YAMLError as error:
-        said = str(error).partition("\n")[0]
-        raise NotYaml(f"broken syntax: {said}", 1, 1) from None
+    except (YAMLError, ValueError, OverflowError):
+        # The library lets an escape through that names no character, and says no place.
+        detail = "broken syntax: what follows cannot be read (an escape that names no character?)"
+        raise NotYaml(detail, line, column) from None
 
 
 @dataclass(frozen=True, slots=True, eq=False)

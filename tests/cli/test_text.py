@@ -1,0 +1,114 @@
+"""The text for people: who is not a statistician understands it, and no name can steer the terminal."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+
+from pathgate.cli.reviewing import Item, Outcome, review_files
+from pathgate.cli.text import counts_text, outcome_text, problem_lines
+from pathgate.web.settings import Settings
+from tests.cli.shelf import BIASED, GRAPH, MISNAMED, SOUND, UNANSWERABLE, write
+from tests.values import graph_of
+
+
+def outcome_of(folder: Path, *configs: object, graph: object = GRAPH) -> Outcome:
+    paths = [Path(write(folder, name, said)) for name, said in (("g.json", graph), ("c.json", list(configs)))]
+    return review_files(paths[0], [paths[1]], Settings())
+
+
+def test_each_config_has_a_headline_its_findings_and_what_to_change(tmp_path):
+    blocks = outcome_text(outcome_of(tmp_path, SOUND, BIASED, UNANSWERABLE, MISNAMED)).split("\n\n")
+    assert [block.splitlines()[0] for block in blocks[:4]] == [
+        "SOUND  sound one",
+        "BIASED  biased one",
+        "UNANSWERABLE  lost one",
+        "NOT JUDGED  misnamed one",
+    ]
+    assert '  error covariate-on-collider: Adjusting for "ticket" opens the path' in blocks[1]
+    assert blocks[1].splitlines()[-1] == '  To mend it: stop adjusting for "ticket".'
+    assert "no choice of the columns that the platform holds" in blocks[2]
+    assert '#/config/covariates/0: no node is named "wether" (did you mean "weather"?)' in blocks[3]
+
+
+def test_the_last_line_counts_and_the_caution_stands_once(tmp_path):
+    text = outcome_text(outcome_of(tmp_path, SOUND, BIASED, BIASED, UNANSWERABLE, MISNAMED))
+    last = "5 configs found, 4 reviewed: 1 sound, 2 biased, 1 unanswerable; 1 not judged."
+    assert text.splitlines()[-1] == last
+    assert text.count("it does not show that the graph is right") == 1
+    assert text.count("In paths:") == 1
+
+
+def test_paths_are_explained_only_where_one_is_shown(tmp_path):
+    assert "In paths:" not in outcome_text(outcome_of(tmp_path, SOUND))
+
+
+def test_several_ways_to_mend_it_are_listed(tmp_path):
+    # late ← weather → volume → refund: either column blocks the path.
+    graph = graph_of(("weather", "late"), ("weather", "volume"), ("volume", "refund"), ("late", "refund"))
+    lines = outcome_text(outcome_of(tmp_path, {**SOUND, "covariates": []}, graph=graph)).splitlines()
+    start = lines.index("  To mend it, do one of these:")
+    assert set(lines[start + 1 : start + 3]) == {'  - adjust for "weather"', '  - adjust for "volume"'}
+
+
+HOSTILE = [
+    "\x1b[31mred\x1b[0m",
+    "\x1b]0;title\x07",
+    "\x9b31m",
+    "line\nbreak\rback\x08",
+    "\u202eright to left",
+    "a\u2028b",
+    "\x7f\x00",
+    "[bold red]markup[/]",
+    "\ufeff\u200bhidden",
+]
+
+
+@pytest.mark.parametrize("name", HOSTILE)
+@pytest.mark.parametrize("width", [None, 60])
+def test_no_name_can_steer_the_terminal_or_hide(tmp_path, name, width):
+    graph = graph_of((name, "late"), (name, "refund"), ("late", "refund"))
+    configs = [
+        {"name": name, "treatment": "late", "outcome": "refund", "covariates": []},
+        {"name": name, "treatment": "late", "outcome": "refund", "covariates": [], name: 1},
+        {"name": name, "treatment": name, "outcome": name, "covariates": ["x" + name]},
+    ]
+    outcome = outcome_of(tmp_path, *configs, graph=graph)
+    assert [item.outcome for item in outcome.items] == ["biased", "not judged", "not judged"]
+    text = outcome_text(outcome, width=width)
+    assert all(character == "\n" or character.isprintable() for character in text)
+    headlines = [line for line in text.splitlines() if line.startswith(("BIASED  ", "NOT JUDGED  "))]
+    assert len(headlines) == 3
+    if name.isprintable():
+        assert headlines[0] == f"BIASED  {name}"
+
+
+def test_lines_are_broken_at_the_width_of_a_terminal_and_nowhere_else(tmp_path):
+    outcome = outcome_of(tmp_path, SOUND, BIASED, UNANSWERABLE)
+    *lines, counts = outcome_text(outcome, width=60).splitlines()
+    assert max(map(len, lines)) <= 60
+    assert counts == counts_text(outcome)
+    unbroken = [line for line in outcome_text(outcome).splitlines() if line.startswith("  error ")]
+    assert len(unbroken) == 2
+    assert all(line.endswith(".") for line in unbroken)
+
+
+def test_colour_marks_words_and_never_stands_alone(tmp_path):
+    outcome = outcome_of(tmp_path, SOUND, BIASED)
+    assert "\x1b[31m\x1b[1mBIASED\x1b[0m  biased one" in outcome_text(outcome, colour=True)
+    assert "\x1b" not in outcome_text(outcome)
+
+
+def test_many_faults_are_counted_past_the_first_ten():
+    errors = [{"pointer": f"#/config/covariates/{k}", "detail": "unknown"} for k in range(12)]
+    lines = problem_lines({"detail": "many", "errors": errors, "errors_omitted": 3})
+    assert lines[0] == "15 faults:"
+    assert lines[-1] == "- and 5 more"
+    assert len(lines) == 12
+
+
+def test_nothing_found_is_counted_too():
+    assert counts_text(Outcome()).startswith("0 configs found, 0 reviewed")
+    assert Outcome().exit_status == 2
+    assert counts_text(Outcome((Item("a", problem={}),))).startswith("1 config found, 0 reviewed")
