@@ -8,8 +8,9 @@ from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_no
 from pathgate.criteria.errors import CriterionError, OutOfTime, Overlapping
 from pathgate.criteria.paths import OpenPath, Step, Trail, directed_path, find_open_path
 from pathgate.criteria.selection import Kept, Label, Part, keep_rows
-from pathgate.criteria.separation import Blocker, Separation, are_separated, is_separated, separation
+from pathgate.criteria.separation import Blocker, Separation, is_separated, separation
 from pathgate.criteria.separators import Separators
+from pathgate.criteria.verdict import are_separated
 
 __all__ = [
     "Blocker",

@@ -11,8 +11,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from pathgate.criteria.selection import Kept
-from pathgate.criteria.separation import are_separated
 from pathgate.criteria.separators import Separators
+from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors, descendants
 

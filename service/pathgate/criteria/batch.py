@@ -13,7 +13,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 from pathgate.criteria.deadline import Deadline
-from pathgate.criteria.reachability import Conditions, connected
+from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
 
@@ -46,8 +46,7 @@ def separated_each(graph: CausalGraph, statements: Sequence[Statement], deadline
 
 def _alone(graph: CausalGraph, statement: Statement, deadline: Deadline) -> bool:
     deadline.poll()
-    xs, ys, given = statement
-    return not connected(graph, xs, Conditions.on(graph, given), stop=ys) & ys
+    return are_separated(graph, *statement)
 
 
 @dataclass(slots=True)

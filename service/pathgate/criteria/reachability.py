@@ -16,8 +16,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.kinship import ancestors, reached
+from pathgate.graphs.kinship import ancestors
 from pathgate.graphs.masks import BoolArray, IntArray, pack, unpack
+from pathgate.graphs.rows import Rows
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,21 +39,20 @@ class Conditions:
         return cls(conditioned, ancestors(graph, conditioned))
 
 
-def connected(graph: CausalGraph, starts: int, conditions: Conditions, *, stop: int = 0) -> int:
+def connected(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
     """The nodes joined to ``starts`` by an open path, the starts and blocked ends of such paths included.
 
     Args:
         graph: the graph.
         starts: where paths begin; passed freely.
         conditions: what blocks and what opens.
-        stop: once a node of this set is found, the answer may be cut short.
     """
     if graph.is_small:
-        return _by_masks(graph, starts, conditions, stop)
+        return _by_masks(graph, starts, conditions)
     return _by_arrays(graph, starts, conditions)
 
 
-def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions, stop: int) -> int:
+def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
     blocking, opening = conditions.blocking, conditions.opening
     parents, children, spouses = graph.parent_masks, graph.child_masks, graph.spouse_masks
     by_tail = starts
@@ -81,8 +81,6 @@ def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions, stop: int
         by_head |= down
         fresh_by_tail |= up
         fresh_by_head |= down
-        if (up | down) & stop:
-            break
     return by_tail | by_head
 
 
@@ -104,7 +102,9 @@ def _by_arrays(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
     ]
     starting = np.concatenate([step[0] for step in steps])
     ending = np.concatenate([step[1] for step in steps])
-    flags = reached(2 * size, starting, ending, np.flatnonzero(begins))
+    order = np.argsort(starting, kind="stable")
+    rows = Rows.of(2 * size, starting[order], ending[order])
+    flags = rows.reached_from(np.flatnonzero(begins))
     return pack(flags[:size] | flags[size:])
 
 

@@ -16,10 +16,11 @@ from pathgate.criteria.batch import Statement
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.errors import Overlapping
 from pathgate.criteria.paths import OpenPath, Role, Trail, explain_path, find_open_path
-from pathgate.criteria.reachability import Conditions, connected
+from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.selection import keep_rows
 from pathgate.criteria.separators import Separators
 from pathgate.criteria.skeleton_paths import shortest_paths
+from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.graph import CausalGraph
 
 Names = str | Iterable[str]
@@ -140,11 +141,6 @@ def _blockers(
             if role != "collider" and conditions.blocking >> node & 1:
                 yield Blocker(trail, node, role, "conditioned")
                 break
-
-
-def are_separated(graph: CausalGraph, xs: int, ys: int, conditioned: int) -> bool:
-    """The verdict alone, over masks that are known to be disjoint."""
-    return not connected(graph, xs, Conditions.on(graph, conditioned), stop=ys) & ys
 
 
 def check_disjoint(graph: CausalGraph, xs: int, ys: int, conditioned: int) -> None:

@@ -17,9 +17,12 @@ import numpy as np
 from pathgate.graphs.errors import UnknownNode
 from pathgate.graphs.masks import IntArray, mask_of, members, unpack
 from pathgate.graphs.names import nearest_names
+from pathgate.graphs.rows import Rows
 
 # Up to this many nodes one mask per node costs less than 128 KiB and beats arrays.
 SMALL = 1024
+# Up to this many nodes a mask is put together bit by bit.
+_FEW = 64
 
 Edge = tuple[str, int, int]
 """Kind (``"directed"`` or ``"bidirected"``) and the two ends; of a bidirected edge the lower index first."""
@@ -97,7 +100,7 @@ class CausalGraph:
         """The mask of all nodes."""
         return (1 << self.size) - 1
 
-    @property
+    @cached_property
     def is_small(self) -> bool:
         """Is one mask per node cheap here?"""
         return self.size <= SMALL
@@ -117,13 +120,22 @@ class CausalGraph:
         Raises:
             UnknownNode: some are not in the graph; all of them are named, with the nearest known name.
         """
-        listed = [names] if isinstance(names, str) else list(names)
+        listed = (names,) if isinstance(names, str) else tuple(names)
         try:
-            return mask_of(map(self.index.__getitem__, listed))
+            return self._mask(listed)
         except KeyError:
             unknown = [name for name in listed if name not in self.index]
             near = {name: nearest_names(name, self.names, most=1) for name in unknown}
             raise UnknownNode(unknown, {name: found[0] for name, found in near.items() if found}) from None
+
+    def _mask(self, names: tuple[str, ...]) -> int:
+        index = self.index
+        if len(names) > _FEW:
+            return mask_of(map(index.__getitem__, names))
+        mask = 0
+        for name in names:
+            mask |= 1 << index[name]
+        return mask
 
     def members(self, mask: int) -> Iterator[int]:
         """The nodes of a set, in the graph's order."""
@@ -193,6 +205,17 @@ class CausalGraph:
         upward = _masks(self.size, self.lower_ends, self.upper_ends)
         downward = _masks(self.size, self.upper_ends, self.lower_ends)
         return [up | down for up, down in zip(upward, downward, strict=True)]
+
+    @cached_property
+    def child_rows(self) -> Rows:
+        """The arrows as compressed rows, from node to children."""
+        return Rows.of(self.size, self.sources, self.targets)
+
+    @cached_property
+    def parent_rows(self) -> Rows:
+        """The arrows as compressed rows, from node to parents."""
+        order = np.argsort(self.targets, kind="stable")
+        return Rows.of(self.size, self.targets[order], self.sources[order])
 
     @cached_property
     def topological_order(self) -> tuple[int, ...]:

@@ -1,7 +1,6 @@
 """Who descends from whom: ancestors and descendants of a set of nodes, the set itself included.
 
-Small graphs spread a bit mask; large ones run scipy's breadth-first search over compressed rows, so depth
-costs nothing. O(nodes + edges) either way.
+Small graphs spread a bit mask, large ones search compressed rows; O(nodes + edges) either way.
 """
 
 from __future__ import annotations
@@ -9,11 +8,10 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
-from scipy.sparse import csr_array
-from scipy.sparse.csgraph import breadth_first_order
 
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import BoolArray, IntArray, pack, unpack
+from pathgate.graphs.masks import pack, unpack
+from pathgate.graphs.rows import Rows
 
 
 def ancestors(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
@@ -28,7 +26,7 @@ def ancestors(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
     """
     if graph.is_small:
         return _spread(graph.parent_masks, nodes, avoiding)
-    return _reach(graph, graph.targets, graph.sources, nodes, avoiding)
+    return _reach(graph.parent_rows, nodes, avoiding)
 
 
 def descendants(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
@@ -40,19 +38,7 @@ def descendants(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
     """
     if graph.is_small:
         return _spread(graph.child_masks, nodes, avoiding)
-    return _reach(graph, graph.sources, graph.targets, nodes, avoiding)
-
-
-def reached(size: int, starts: IntArray, ends: IntArray, seeds: IntArray) -> BoolArray:
-    """Which of ``size`` states some chain of steps ``starts[i] → ends[i]`` reaches from the seeds."""
-    # One more state that steps to every seed makes several seeds a single start.
-    starts = np.concatenate([starts, np.full(len(seeds), size)])
-    ends = np.concatenate([ends, seeds])
-    steps = csr_array((np.ones(len(starts)), (starts, ends)), shape=(size + 1, size + 1))
-    order = breadth_first_order(steps, size, directed=True, return_predecessors=False)
-    flags = np.zeros(size + 1, dtype=np.bool_)
-    flags[order] = True
-    return flags[:size]
+    return _reach(graph.child_rows, nodes, avoiding)
 
 
 def _spread(neighbours: Sequence[int], nodes: int, avoiding: int) -> int:
@@ -65,8 +51,9 @@ def _spread(neighbours: Sequence[int], nodes: int, avoiding: int) -> int:
     return found
 
 
-def _reach(graph: CausalGraph, starts: IntArray, ends: IntArray, nodes: int, avoiding: int) -> int:
+def _reach(rows: Rows, nodes: int, avoiding: int) -> int:
     if avoiding:
-        allowed = ~unpack(avoiding, graph.size)[ends]
-        starts, ends = starts[allowed], ends[allowed]
-    return pack(reached(graph.size, starts, ends, np.flatnonzero(unpack(nodes, graph.size))))
+        allowed = ~unpack(avoiding, rows.size)[rows.ends]
+        starts = np.repeat(np.arange(rows.size), np.diff(rows.begins))
+        rows = Rows.of(rows.size, starts[allowed], rows.ends[allowed])
+    return pack(rows.reached_from(np.flatnonzero(unpack(nodes, rows.size))))

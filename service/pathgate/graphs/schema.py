@@ -50,9 +50,9 @@ NODE_SCHEMA: Schema = {
         "constant_within": {
             "type": "array",
             "title": "a list of names",
-            "items": NODE_NAME,
+            "items": {"type": "string"},
             "description": (
-                "Columns within each value of which this one has a single value, each a claim of its own:"
+                "Nodes within each value of which this one has a single value, each a claim of its own:"
                 " `locker_size` is constant within `locker`."
             ),
         },

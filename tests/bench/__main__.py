@@ -1,0 +1,43 @@
+"""Runs the benchmarks and prints their table; names on the command line choose some of them.
+
+python -m tests.bench [NAME …]
+"""
+
+from __future__ import annotations
+
+import os
+import platform
+import sys
+from collections.abc import Callable, Iterator
+
+from tests.bench.harness import Figure, table
+from tests.bench.in_process import many_statements, single_verdicts, whole_large_request
+from tests.bench.over_http import memory_after_a_large_request, small_review
+
+BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
+    "large-request": whole_large_request,
+    "small-review": small_review,
+    "single-verdicts": single_verdicts,
+    "many-statements": many_statements,
+    "memory": memory_after_a_large_request,
+}
+
+
+def main(wanted: list[str]) -> int:
+    """The exit status tells whether the names were right; figures never fail."""
+    unknown = [name for name in wanted if name not in BENCHES]
+    if unknown:
+        print(f"no bench is called {', '.join(unknown)}; there are {', '.join(BENCHES)}", file=sys.stderr)
+        return 2
+    print(f"Python {platform.python_version()}, {platform.machine()}, {os.cpu_count()} cores")
+    figures = []
+    for name in wanted or BENCHES:
+        for figure in BENCHES[name]():
+            print(f"  {name}: {figure.what} … {figure.seen:.3g}", file=sys.stderr, flush=True)
+            figures.append(figure)
+    print(table(figures))
+    return 0
+
+
+if __name__ == "__main__":
+    sys.exit(main(sys.argv[1:]))

@@ -1,0 +1,181 @@
+"""Figures that need real servers: what a small request costs over HTTP, and what memory a large one leaves."""
+
+from __future__ import annotations
+
+import http.client
+import multiprocessing
+import os
+import socket
+import statistics
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any
+
+from pathgate.demo import demo_configs, demo_graph
+from tests.bench.harness import Figure, times_slower
+from tests.bench.worlds import body_of, graph_value, random_pairs, random_statements
+
+REQUESTS_A_ROUND = 200
+
+
+def small_review() -> Iterator[Figure]:
+    """One demo config over HTTP against an empty JSON endpoint under the same server settings."""
+    body = body_of({"graph": demo_graph(), "config": demo_configs()[0]})
+    with _server(_serve_pathgate, {}) as ours, _server(_serve_empty, {}) as floor:
+        review, empty = _Caller(ours, "/v1/review", body), _Caller(floor, "/", b"{}")
+        yield times_slower(
+            "/v1/review of a demo config over HTTP",
+            review.round,
+            "an empty Flask JSON endpoint under the same server",
+            empty.round,
+            wanted="<= 3",
+            rounds=9,
+        )
+
+
+def memory_after_a_large_request() -> Iterator[Figure]:
+    """What a worker holds after a request of 100,000 nodes, against what it held before."""
+    pairs = random_pairs(100_000, 400_000)
+    large = body_of(
+        {"graph": graph_value(100_000, pairs), "statements": random_statements(100_000, 2), "explain": False}
+    )
+    small = body_of({"graph": demo_graph(), "config": demo_configs()[0]})
+    limits = {
+        "PATHGATE_MAX_NODES": "100000",
+        "PATHGATE_MAX_EDGES": "400000",
+        "PATHGATE_MAX_BODY_BYTES": "100000000",
+    }
+    with _server(_serve_pathgate, limits) as port:
+        usual, heavy = _Caller(port, "/v1/review", small), _Caller(port, "/v1/separation", large)
+        usual.round()
+        # One large request first: libraries load lazily, and that is no leak.
+        heavy.ask()
+        usual.round()
+        before = _worker_memory(port)
+        for _ in range(3):
+            heavy.ask()
+        usual.round()
+        after = _worker_memory(port)
+    yield Figure(
+        what="memory of a worker after requests of 100,000 nodes",
+        peer="before them",
+        seen=after / before,
+        wanted="<= 1.1",
+        ours=after / 1e6,
+        theirs=before / 1e6,
+        unit="MB",
+    )
+
+
+class _Caller:
+    """Sends the same request over one kept connection."""
+
+    def __init__(self, port: int, path: str, body: bytes) -> None:
+        self._connection = http.client.HTTPConnection("127.0.0.1", port, timeout=120)
+        self._path = path
+        self._body = body
+
+    def ask(self) -> None:
+        self._connection.request("POST", self._path, self._body, {"Content-Type": "application/json"})
+        answer = self._connection.getresponse()
+        content = answer.read()
+        if answer.status != 200:
+            raise RuntimeError(f"{self._path} answered {answer.status}: {content[:300]!r}")
+
+    def round(self) -> None:
+        for _ in range(REQUESTS_A_ROUND):
+            self.ask()
+
+
+@contextmanager
+def _server(serve: Any, environment: dict[str, str]) -> Iterator[int]:
+    with socket.create_server(("127.0.0.1", 0)) as probe:
+        port = probe.getsockname()[1]
+    process = multiprocessing.get_context("spawn").Process(target=_run, args=(serve, port, environment))
+    process.start()
+    try:
+        _wait_for(port)
+        yield port
+    finally:
+        process.terminate()
+        process.join(40)
+
+
+def _run(serve: Any, port: int, environment: dict[str, str]) -> None:
+    os.environ.update(environment)
+    serve(f"127.0.0.1:{port}")
+
+
+def _serve_pathgate(bind: str) -> None:
+    from pathgate.web.serving import serve  # noqa: PLC0415
+
+    serve(bind, 1)
+
+
+def _serve_empty(bind: str) -> None:
+    from flask import Flask, jsonify, request  # noqa: PLC0415
+    from gunicorn.app.base import BaseApplication  # type: ignore[import-untyped] # noqa: PLC0415
+
+    from pathgate.web.serving import gunicorn_options  # noqa: PLC0415
+
+    app = Flask("empty")
+
+    @app.post("/")
+    def answer() -> Any:
+        request.get_json()
+        return jsonify(answer="ok")
+
+    class Server(BaseApplication):  # type: ignore[misc]
+        def load_config(self) -> None:
+            for name, value in gunicorn_options(bind, 1).items():
+                self.cfg.set(name, value)
+
+        def load(self) -> Any:
+            return app
+
+    Server().run()
+
+
+def _wait_for(port: int) -> None:
+    deadline = time.monotonic() + 60
+    while True:
+        try:
+            with socket.create_connection(("127.0.0.1", port), timeout=1):
+                return
+        except OSError:
+            if time.monotonic() > deadline:
+                raise
+            # Nothing to wait on but the port itself.
+            time.sleep(0.02)
+
+
+def _worker_memory(port: int) -> float:
+    """Resident bytes of the one worker, the median of a few readings."""
+    listening = f":{port:04X}"
+    inodes = {
+        line.split()[9]
+        for line in Path("/proc/net/tcp").read_text().splitlines()[1:]
+        if line.split()[1].endswith(listening) and line.split()[3] == "0A"
+    }
+    holders = [pid for pid in map(int, filter(str.isdigit, _names_in("/proc"))) if _holds(pid, inodes)]
+    worker = max(holders)
+    return statistics.median(_resident(worker) for _ in range(3))
+
+
+def _names_in(folder: str) -> list[str]:
+    return [entry.name for entry in Path(folder).iterdir()]
+
+
+def _holds(pid: int, inodes: set[str]) -> bool:
+    try:
+        links = [str(link.readlink()) for link in Path(f"/proc/{pid}/fd").iterdir()]
+    except OSError:
+        return False
+    return any(link == f"socket:[{inode}]" for link in links for inode in inodes)
+
+
+def _resident(pid: int) -> float:
+    pages = int(Path(f"/proc/{pid}/statm").read_text().split()[1])
+    return pages * os.sysconf("SC_PAGE_SIZE")
