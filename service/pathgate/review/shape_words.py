@@ -93,7 +93,8 @@ def _sentence(kind: Any, schema: Any, value: Any, place: Place) -> str:
         case "required" | "dependentRequired":
             return f"the member {quoted(kind.property)} is missing"
         case "type":
-            return f"{named(place)} must be {expected(schema)}, not {json_type(value)}"
+            found = "a fraction" if isinstance(value, float) and "integer" in kind.types else json_type(value)
+            return f"{named(place)} must be {expected(schema)}, not {found}"
         case "enum":
             known = [each for each in kind.options if isinstance(each, str)]
             hint = did_you_mean(value, known) if isinstance(value, str) else ""

@@ -24,7 +24,7 @@ def view_of(operation: Operation, settings: Settings) -> Callable[[], Response]:
         headers = request.headers
         check_content(headers.get("Content-Type"), headers.get("Content-Encoding"))
         check_accept(headers.get("Accept"))
-        body = _read_body()
+        body = _read_body(settings.max_body_bytes)
         # Time spent waiting for the body is the caller's; only what follows is computing.
         deadline = Deadline(settings.time_budget_seconds)
         value = read_json(body, settings.max_depth)
@@ -36,13 +36,27 @@ def view_of(operation: Operation, settings: Settings) -> Callable[[], Response]:
     return view
 
 
-def _read_body() -> bytes:
-    """The bytes of the body, as many as the limit allows; beyond it the framework answers 413."""
+def _read_body(limit: int) -> bytes:
+    """The bytes of the body, at most ``limit``."""
+    if (request.content_length or 0) > limit:
+        raise _too_large(limit)
+    # Where no length is declared, the stream ends without a word at its limit: one byte more tells it apart.
+    request.max_content_length = limit + 1
     try:
-        return request.get_data(cache=False)
-    except TimeoutError:
-        detail = "the body of the request did not arrive in time"
-        raise Failed(Problem.of("request-timeout", detail)) from None
-    except ClientDisconnected:
-        detail = "the request ended before its body was complete"
-        raise Failed(Problem.of("not-json", detail, line=1, column=1)) from None
+        body = request.get_data(cache=False)
+    except ClientDisconnected as error:
+        raise _cut_short(timed_out=isinstance(error.__context__, TimeoutError)) from None
+    if len(body) > limit:
+        raise _too_large(limit)
+    return body
+
+
+def _too_large(limit: int) -> Failed:
+    return Failed(Problem.of("body-too-large", f"the body is larger than {limit:,} bytes"))
+
+
+def _cut_short(*, timed_out: bool) -> Failed:
+    if timed_out:
+        return Failed(Problem.of("request-timeout", "the body of the request did not arrive in time"))
+    detail = "the request ended before its body was complete"
+    return Failed(Problem.of("not-json", detail, line=1, column=1))

@@ -37,7 +37,6 @@ def create_app(settings: Settings | None = None, operations: Sequence[Operation]
     if settings is None:
         settings = Settings.from_environment(os.environ)
     app = _App(__name__, static_folder=None)
-    app.config["MAX_CONTENT_LENGTH"] = settings.max_body_bytes
     for operation in operations:
         app.add_url_rule(operation.path, operation.name, view_of(operation, settings), methods=["POST"])
     install_pages(app, operations, settings)

@@ -159,8 +159,8 @@ def bounds(schema: Mapping[str, Any]) -> str:
     ('1 to 200 characters', 'more than 0')
     """
     said = [
-        _range(schema, "minLength", "maxLength", " characters"),
-        _range(schema, "minItems", "maxItems", " items"),
+        _range(schema, "minLength", "maxLength", " character"),
+        _range(schema, "minItems", "maxItems", " item"),
         _range(schema, "minimum", "maximum", ""),
         f"more than {schema['exclusiveMinimum']}" if "exclusiveMinimum" in schema else "",
     ]
@@ -168,11 +168,13 @@ def bounds(schema: Mapping[str, Any]) -> str:
 
 
 def _range(schema: Mapping[str, Any], least: str, most: str, of_what: str) -> str:
+    if least not in schema and most not in schema:
+        return ""
+    highest = schema.get(most, schema.get(least))
+    plural = "s" if of_what and highest != 1 else ""
     if least in schema and most in schema:
-        return f"{schema[least]:,} to {schema[most]:,}{of_what}"
-    if least in schema:
-        return f"at least {schema[least]:,}{of_what}"
-    return f"at most {schema[most]:,}{of_what}" if most in schema else ""
+        return f"{schema[least]:,} to {highest:,}{of_what}{plural}"
+    return f"at {'least' if least in schema else 'most'} {highest:,}{of_what}{plural}"
 
 
 def compact(value: Any, indent: str = "", width: int = 96) -> str:

@@ -87,16 +87,13 @@ def _problem_of(error: Exception, app: Flask) -> Problem | None:
 def _problem_of_http(error: HTTPException, app: Flask) -> Problem | None:
     match error.code:
         case 404:
-            known = sorted({rule.rule for rule in app.url_map.iter_rules() if not rule.arguments})
-            hint = did_you_mean(request.path, known)
+            paths = sorted({rule.rule for rule in app.url_map.iter_rules() if not rule.arguments})
+            hint = did_you_mean(request.path, paths)
             return Problem.of("not-found", f"nothing is served at {quoted(request.path)}{hint}")
         case 405:
             allowed = ", ".join(sorted(getattr(error, "valid_methods", None) or ()))
             detail = f"{quoted(request.path)} does not take {quoted(request.method)} but {allowed}"
             return Problem(PROBLEM_TYPES["method-not-allowed"], detail, headers={"Allow": allowed})
-        case 413:
-            limit = request.max_content_length or 0
-            return Problem.of("body-too-large", f"the body is larger than {limit:,} bytes")
-        case 400:
-            return Problem.of("not-json", "the request cannot be read", line=1, column=1)
-    return None
+    same_status = (each for each in PROBLEM_TYPES.values() if each.status == error.code)
+    known = next(same_status, None)
+    return Problem(known, known.title) if known else None
