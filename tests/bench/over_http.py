@@ -85,6 +85,8 @@ class _Caller:
             raise RuntimeError(f"{self._path} answered {answer.status}: {content[:300]!r}")
 
     def round(self) -> None:
+        # The server ends a connection that was idle for long; each round opens its own.
+        self._connection.close()
         for _ in range(REQUESTS_A_ROUND):
             self.ask()
 

@@ -152,12 +152,15 @@ def _without_self_loops(columns: _Columns, nodes: NodeList, faults: list[Fault])
 def _sorted_without_repeats(columns: _Columns, nodes: NodeList, faults: list[Fault]) -> _Columns:
     size = len(nodes.names)
     keys = (columns.are_bidirected * size + columns.sources) * size + columns.targets
+    order = np.argsort(keys)
+    in_order = keys[order]
+    if not (in_order[1:] == in_order[:-1]).any():
+        return columns[order]
+    # Of equal edges the first one stays, which only a stable sort can tell.
     order = np.argsort(keys, kind="stable")
     columns, keys = columns[order], keys[order]
     repeats = np.zeros(len(keys), dtype=np.bool_)
     repeats[1:] = keys[1:] == keys[:-1]
-    if not repeats.any():
-        return columns
     repeated = columns[repeats]
     for place, source, target in sorted(
         zip(repeated.places.tolist(), repeated.sources.tolist(), repeated.targets.tolist(), strict=True)

@@ -214,7 +214,7 @@ class CausalGraph:
     @cached_property
     def parent_rows(self) -> Rows:
         """The arrows as compressed rows, from node to parents."""
-        order = np.argsort(self.targets, kind="stable")
+        order = np.argsort(self.targets)
         return Rows.of(self.size, self.targets[order], self.sources[order])
 
     @cached_property

@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
+from operator import itemgetter
 from typing import Any
 
 from pathgate.graphs.errors import Fault
@@ -36,15 +37,25 @@ def read_nodes(values: Sequence[object], faults: list[Fault]) -> NodeList:
 
     A node that cannot be read keeps its place under the empty name, so that indices stay positions.
     """
-    ids = [value.get("id") if isinstance(value, dict) else value for value in values]
+    ids = _ids(values)
     if not _are_good_names(ids):
         ids = [_good_id(place, value, faults) for place, value in enumerate(values)]
-    nodes = NodeList(names=tuple(ids))  # type: ignore[arg-type] # _are_good_names or _good_id made them strings
+    nodes = NodeList(names=tuple(ids))
     nodes.index = {name: place for place, name in enumerate(nodes.names) if name}
     if len(nodes.index) < len(nodes.names):
         _report_repeats(nodes, faults)
     _read_attributes(values, nodes, faults)
     return nodes
+
+
+def _ids(values: Sequence[Any]) -> list[Any]:
+    """What stands where an id should; whatever else stands there is looked at one by one later."""
+    if set(map(type, values)) == {dict}:
+        try:
+            return list(map(itemgetter("id"), values))
+        except KeyError:
+            pass
+    return [value.get("id") if isinstance(value, dict) else value for value in values]
 
 
 def check_attributes(

@@ -103,7 +103,7 @@ def _unknown_member(member: str) -> Fault:
 
 
 def _build(nodes: NodeList, edges: EdgeList) -> CausalGraph:
-    return CausalGraph(
+    graph = CausalGraph(
         names=nodes.names,
         sources=edges.sources,
         targets=edges.targets,
@@ -117,6 +117,9 @@ def _build(nodes: NodeList, edges: EdgeList) -> CausalGraph:
         doubtful=edges.doubtful,
         notes=edges.notes,
     )
+    # Made while reading anyway: saves the graph from making it again.
+    vars(graph)["index"] = nodes.index
+    return graph
 
 
 def _check_times(graph: CausalGraph, edges: EdgeList, faults: list[Fault]) -> None:
