@@ -21,9 +21,9 @@ def view_of(operation: Operation, settings: Settings) -> Callable[[], Response]:
     shape = envelope_shape(operation)
 
     def view() -> Response:
-        headers = request.headers
-        check_content(headers.get("Content-Type"), headers.get("Content-Encoding"))
-        check_accept(headers.get("Accept"))
+        said = request.environ
+        check_content(said.get("CONTENT_TYPE"), said.get("HTTP_CONTENT_ENCODING"))
+        check_accept(said.get("HTTP_ACCEPT"))
         body = _read_body(settings.max_body_bytes)
         # Time spent waiting for the body is the caller's; only what follows is computing.
         deadline = Deadline(settings.time_budget_seconds)

@@ -32,19 +32,20 @@ def json_reply(document: Any, status: int = 200, media_type: str = JSON) -> Resp
 
 def request_id() -> str:
     """The id of the request being answered: the caller's, where it is a UUID, else a new one."""
-    if "request_id" not in g:
-        given = request.headers.get(REQUEST_ID, "")
-        g.request_id = given.lower() if _UUID.fullmatch(given) else str(uuid4())
-    return str(g.request_id)
+    known: str | None = g.get("request_id")
+    if known is None:
+        given = request.environ.get("HTTP_X_REQUEST_ID")
+        known = given.lower() if given and _UUID.fullmatch(given) else str(uuid4())
+        g.request_id = known
+    return known
 
 
 def add_headers(reply: Response) -> Response:
     """What every reply carries. Answers are not to be stored: the question was in the body, not in the URL."""
     headers = reply.headers
-    headers[REQUEST_ID] = request_id()
-    headers["X-Content-Type-Options"] = "nosniff"
-    if "Cache-Control" not in headers:
-        headers["Cache-Control"] = "no-store"
+    headers.add(REQUEST_ID, request_id())
+    headers.add("X-Content-Type-Options", "nosniff")
+    headers.add("Cache-Control", "no-store")
     return reply
 
 
