@@ -19,7 +19,7 @@ def to_networkx(graph: CausalGraph) -> networkx.MultiDiGraph[str]:
     """The graph as a networkx ``MultiDiGraph`` whose attributes are the members of the JSON form.
 
     >>> to_networkx(CausalGraph.of(("rain", "delay"))).edges
-    OutMultiEdgeDataView([('rain', 'delay')])
+    OutMultiEdgeView([('rain', 'delay', 0)])
     """
     import networkx  # noqa: PLC0415 - slow to import, and only this function needs it
 

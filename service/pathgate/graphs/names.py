@@ -21,7 +21,7 @@ def nearest_names(name: str, known: Collection[str], *, most: int = 3) -> tuple[
     """The known names nearest to ``name``, best first; empty where none is near.
 
     >>> nearest_names("wether", ["weather", "locker", "whether"])
-    ('whether', 'weather')
+    ('weather', 'whether')
     """
     # At least one letter must agree, or every name of one letter would be near every other.
     cutoff = min(len(name) - 1, 4, len(name) // 3 + 1)

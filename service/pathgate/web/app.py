@@ -9,6 +9,7 @@ from flask import Flask, Response
 
 from pathgate.web.answering import view_of
 from pathgate.web.endpoints import OPERATIONS
+from pathgate.web.memory import give_back_after
 from pathgate.web.operations import Operation
 from pathgate.web.pages import install_pages
 from pathgate.web.replies import add_headers, install_error_handlers
@@ -42,4 +43,5 @@ def create_app(settings: Settings | None = None, operations: Sequence[Operation]
     install_pages(app, operations, settings)
     install_error_handlers(app, settings)
     app.after_request(add_headers)
+    app.after_request(give_back_after)
     return app
