@@ -24,7 +24,7 @@ def nearest_names(name: str, known: Collection[str], *, most: int = 3) -> tuple[
     ('weather', 'whether')
     """
     # At least one letter must agree, or every name of one letter would be near every other.
-    cutoff = min(len(name) - 1, 4, len(name) // 3 + 1)
+    cutoff = min(max(len(name) - 1, 0), 4, len(name) // 3 + 1)
     plain = _fold(name)
     found = process.extract(
         plain, known, scorer=OSA.distance, processor=_fold, score_cutoff=cutoff, limit=most
