@@ -20,7 +20,8 @@ def readme():
 
 
 def blocks(readme, language):
-    return re.findall(rf"^```{language}\n(.*?)^```", readme, flags=re.MULTILINE | re.DOTALL)
+    found = re.findall(r"^```(\w*)\n(.*?)^```$", readme, flags=re.MULTILINE | re.DOTALL)
+    return [text for named, text in found if named == language]
 
 
 def test_the_curl_call_answers_as_shown(readme):
