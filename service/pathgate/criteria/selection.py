@@ -14,9 +14,9 @@ from dataclasses import dataclass, field
 from pathgate.graphs.graph import CausalGraph
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Part:
-    """One condition on the rows.
+    """One condition on the rows; two that read the same are still two (and what was written may be unhashable).
 
     Attributes:
         columns: mask of the nodes it reads.
