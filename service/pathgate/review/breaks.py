@@ -27,12 +27,14 @@ def breaking_findings(claim: Claim, config: Config, deadline: Deadline) -> Itera
     conditioned = claim.usable_covariates | effect.kept.conditioned
     for forbidden in forbidden_nodes(effect, conditioned):
         deadline.poll()
-        yield from _Blame(claim, config, effect.kept).forbidden(forbidden)
+        yield from _Blame(claim, config, effect.kept, conditioned).forbidden(forbidden)
     # What is forbidden has to go in any case, so the rest is judged as if it were gone already.
     harmless = [part for node, part in effect.kept.part_of.items() if not effect.forbidden >> node & 1]
     remaining = claim.effect_among(harmless)
-    blame = _Blame(claim, config, remaining.kept)
-    for found in open_paths(remaining, claim.usable_covariates & ~remaining.forbidden, deadline):
+    covariates = claim.usable_covariates & ~remaining.forbidden
+    let_go = conditioned & effect.forbidden & claim.graph.measured
+    blame = _Blame(claim, config, remaining.kept, covariates | remaining.kept.conditioned, let_go)
+    for found in open_paths(remaining, covariates, deadline):
         yield from blame.opened(found) if isinstance(found, Opened) else blame.missing(found)
 
 
@@ -67,13 +69,18 @@ class _Cause:
 
 
 class _Blame:
-    """Turns what was diagnosed on some kept rows into findings at the places in the config that cause it."""
+    """Turns what was diagnosed on some kept rows into findings at the places in the config that cause it.
 
-    def __init__(self, claim: Claim, config: Config, kept: Kept) -> None:
+    ``conditioned`` is what was conditioned on; ``let_go`` are the columns that the config conditions on and
+    that were left out, as they must be.
+    """
+
+    def __init__(self, claim: Claim, config: Config, kept: Kept, conditioned: int, let_go: int = 0) -> None:
         self._claim = claim
         self._config = config
         self._kept = kept
-        self._conditioned = claim.usable_covariates | kept.conditioned
+        self._conditioned = conditioned
+        self._let_go = let_go
 
     def forbidden(self, found: Forbidden) -> Iterator[Finding]:
         above = listed([self._kept.graph.name(found.descends_from)])
@@ -113,23 +120,45 @@ class _Blame:
                     why = f"{which} is a common consequence on it"
                 else:
                     why = f"{which} is a consequence of {listed([graph.name(collider)])}, a common consequence on it"
-                message = f"{_capital(cause.doing)} opens the path {drawn}, which is not the effect: {why}."
+                once = self._once(found.trail)
+                message = (
+                    f"{_capital(cause.doing)} opens the path {drawn}, which is not the effect{once}: {why}."
+                )
                 rule = cause.rule("collider")
                 yield Finding(rule, cause.columns, message, cause.place, cause.part, found.path)
 
     def missing(self, found: Missing) -> Iterator[Finding]:
         drawn = arrow_text(self._kept, found.trail, self._conditioned)
-        still_open = f"The path {drawn} is not the effect and stays open"
+        once = self._once(found.trail)
+        still_open = f"The path {drawn} is not the effect and {f'is open{once}' if once else 'stays open'}"
         if found.blocker is None:
             ends = names_in(self._kept, mask_of((found.trail.nodes[0], found.trail.nodes[-1])))
-            message = f"{still_open}: nothing on it is measured, so no covariate on it can block it."
-            yield Finding("unmeasured-cause", ends, message, ("covariates",), path=found.path)
+            rule, why = self._why_nothing_blocks(found)
+            yield Finding(rule, ends, f"{still_open}: {why}.", ("covariates",), path=found.path)
             return
         name = self._kept.graph.name(found.blocker)
         is_fork = (found.blocker, "fork") in found.trail.inner
         why = "is a common cause on it" if is_fork else "would block it"
         message = f"{still_open}: {listed([name])} {why} and the model does not adjust for it."
         yield Finding("missing-covariate", (name,), message, ("covariates",), path=found.path)
+
+    def _once(self, trail: Trail) -> str:
+        """Which columns on a path block it as the config stands, but must not."""
+        gone = mask_of(node for node, role in trail.inner if role != "collider") & self._let_go
+        return f" once the config lets go of {listed(names_in(self._kept, gone))}" if gone else ""
+
+    def _why_nothing_blocks(self, found: Missing) -> tuple[str, str]:
+        """The rule for a path that no covariate on it can block, and why none can."""
+        inner = mask_of(node for node, _role in found.trail.inner)
+        barred = inner & self._kept.graph.measured
+        named = f"{listed(names_in(self._kept, barred))} may not be adjusted for" if barred else ""
+        below = ", being on a causal path or a consequence of one"
+        if inner == barred and "both" not in found.trail.arrows:
+            why = named + below if barred else "the outcome is a direct cause of the treatment"
+            return "unblockable-path", why
+        if not barred:
+            return "unmeasured-cause", "nothing on it is measured, so no covariate on it can block it"
+        return "unmeasured-cause", f"{named}{below}, and nothing else on it is measured"
 
     def _causes(self, node: int, descent: Trail, along: tuple[int, ...]) -> Iterator[_Cause]:
         """Who conditions on ``node``, the last one of ``descent``; ``along`` tells what a part joins."""

@@ -34,7 +34,13 @@ RULES: dict[str, Rule] = {
         Rule(
             "unmeasured-cause",
             "error",
-            "A path that is not the effect joins treatment and outcome, and nothing on it is measured.",
+            "A path that is not the effect joins treatment and outcome through something unmeasured, and nothing"
+            " measured on it may be adjusted for.",
+        ),
+        Rule(
+            "unblockable-path",
+            "error",
+            "A path that is not the effect joins treatment and outcome, and nothing on it may be adjusted for.",
         ),
         Rule(
             "covariate-on-causal-path",
