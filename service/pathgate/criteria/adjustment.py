@@ -19,7 +19,7 @@ from pathgate.graphs.kinship import ancestors, descendants
 
 @dataclass(frozen=True)
 class Effect:
-    """The total effect of some treatments on some outcomes among the rows kept.
+    """An effect of some treatments on some outcomes among the rows kept, as a question about covariate sets.
 
     Attributes:
         kept: the graph with what keeping rows conditions on.
@@ -27,7 +27,8 @@ class Effect:
         on_causal_paths: the nodes other than treatments on proper causal paths, those that meet no treatment
             after their first node; the outcomes they lead to included.
         forbidden: these and their descendants, less the treatments: never to be conditioned on.
-        back_door_graph: the graph without the first arrow of every proper causal path.
+        back_door_graph: the graph without the first arrow of every proper causal path (for a direct effect:
+            without the arrow).
     """
 
     kept: Kept
@@ -54,6 +55,20 @@ def total_effect(kept: Kept, treatments: int, outcomes: int) -> Effect:
     return Effect(kept, treatments, outcomes, on_causal_paths, forbidden, back_door_graph)
 
 
+def direct_effect(kept: Kept, treatment: int, outcome: int) -> Effect:
+    """The coefficient of the arrow itself, in linear models, as a question about covariate sets.
+
+    Where the arrow is there, nothing that descends from the outcome may be conditioned on and what is
+    conditioned on must separate the two once the arrow is gone; where it is not, separation is all (Pearl
+    1998; Spirtes et al. 1998). The arrow is then the one causal path. Treatment and outcome are one node each.
+    """
+    graph = kept.graph
+    without_arrow = graph.without_arrows(treatment, outcome)
+    has_arrow = without_arrow is not graph
+    forbidden = descendants(graph, outcome) & ~treatment if has_arrow else 0
+    return Effect(kept, treatment, outcome, outcome if has_arrow else 0, forbidden, without_arrow)
+
+
 def is_valid(effect: Effect, covariates: int) -> bool:
     """Do these covariates, on the rows kept, carry the effect?
 
@@ -71,14 +86,28 @@ def valid_set(effect: Effect, *, required: int = 0, allowed: int = -1) -> int | 
 
     Minimal among the valid sets that hold ``required``; see ``separators`` for the method and its cost.
     """
+    found = valid_sets(effect, required=required, allowed=allowed)
+    minimal = None if found is None else found.minimal()
+    return None if minimal is None else covariates_in(effect, minimal, required)
+
+
+def valid_sets(effect: Effect, *, required: int = 0, allowed: int = -1) -> Separators | None:
+    """All valid sets within bounds, as separating sets; None where ``required`` rules out every one.
+
+    The separating sets hold what the kept rows condition on, too: ``covariates_in`` takes it out.
+    """
     always = required | effect.kept.conditioned
     if always & (effect.forbidden | effect.treatments | effect.outcomes):
         return None
-    found = Separators(
+    return Separators(
         effect.back_door_graph,
         effect.treatments,
         effect.outcomes,
         required=always,
         allowed=effect.usable & allowed & ~effect.kept.conditioned,
-    ).minimal()
-    return None if found is None else (found & ~effect.kept.conditioned) | required
+    )
+
+
+def covariates_in(effect: Effect, separating: int, required: int = 0) -> int:
+    """The covariates of a separating set."""
+    return (separating & ~effect.kept.conditioned) | required

@@ -36,10 +36,16 @@ def separated_each(graph: CausalGraph, statements: Sequence[Statement], deadline
     """
     if len(statements) < FEW:
         return [_alone(graph, statement, deadline) for statement in statements]
-    lanes = _Lanes.of(graph, statements)
+    starts, blocked = [0] * graph.size, [0] * graph.size
+    for lane, (xs, _ys, given) in enumerate(statements):
+        for node in members(xs):
+            starts[node] |= 1 << lane
+        for node in members(given):
+            blocked[node] |= 1 << lane
+    lanes = Lanes.of(graph, starts, blocked)
     lanes.run(deadline)
     return [
-        not any((lanes.by_tail[y] | lanes.by_head[y]) >> lane & 1 for y in members(ys))
+        not any(lanes.at(y) >> lane & 1 for y in members(ys))
         for lane, (_xs, ys, _given) in enumerate(statements)
     ]
 
@@ -50,8 +56,8 @@ def _alone(graph: CausalGraph, statement: Statement, deadline: Deadline) -> bool
 
 
 @dataclass(slots=True)
-class _Lanes:
-    """The state of all lanes: for each node the lanes that hold there.
+class Lanes:
+    """The state of all lanes: for each node the lanes that hold there; to be made, run, and read.
 
     Attributes:
         starts: lanes that begin at the node.
@@ -59,6 +65,8 @@ class _Lanes:
         opened: lanes in which the node or a descendant of it is.
         by_tail, by_head: lanes that have reached the node against an arrow (or begin there), or by an arrowhead.
         upward, downward: lanes still to be passed on to parents and spouses, or to children.
+        position: each node's place in the topological order.
+        rising, falling: the nodes with lanes still to be passed on, as heaps in the order of passing.
     """
 
     graph: CausalGraph
@@ -74,13 +82,8 @@ class _Lanes:
     falling: list[int] = field(default_factory=list)
 
     @classmethod
-    def of(cls, graph: CausalGraph, statements: Sequence[Statement]) -> _Lanes:
-        starts, blocked = [0] * graph.size, [0] * graph.size
-        for lane, (xs, _ys, given) in enumerate(statements):
-            for node in members(xs):
-                starts[node] |= 1 << lane
-            for node in members(given):
-                blocked[node] |= 1 << lane
+    def of(cls, graph: CausalGraph, starts: list[int], blocked: list[int]) -> Lanes:
+        """Lanes at their starts; both lists hold for each node the set of lanes."""
         opened = list(blocked)
         position = [0] * graph.size
         for place, node in enumerate(graph.topological_order):
@@ -92,8 +95,16 @@ class _Lanes:
         idle = [0] * graph.size
         return cls(graph, starts, blocked, opened, idle[:], idle[:], idle[:], idle[:], position)
 
+    def at(self, node: int) -> int:
+        """The lanes that have reached a node, blocked or not."""
+        return self.by_tail[node] | self.by_head[node]
+
     def run(self, deadline: Deadline) -> None:
-        """Move every lane as far as it goes."""
+        """Move every lane as far as it goes.
+
+        Raises:
+            OutOfTime: the deadline came first.
+        """
         for node, lanes in enumerate(self.starts):
             if lanes:
                 self._enter_by_tail(node, lanes)
