@@ -140,14 +140,18 @@ class NameReader:
 
     def read(self, value: str | Sequence[str], place: Place) -> tuple[Named, ...]:
         """The columns that a name or a list of names means; unknown and repeated names are faults."""
-        listed = (
-            [(value, place)] if isinstance(value, str) else [(v, (*place, k)) for k, v in enumerate(value)]
-        )
+        if isinstance(value, str):
+            return self.read_each([(value, place)])
+        return self.read_each([(name, (*place, k)) for k, name in enumerate(value)])
+
+    def read_each(self, listed: Sequence[tuple[str, Place]]) -> tuple[Named, ...]:
+        """The same for names that are not next to each other in the input."""
         found: dict[int, Named] = {}
         for name, at in listed:
             node = self.find(name)
             if node is None:
-                detail = f"no node is named {quoted(name)}{did_you_mean(name, self.graph.names)}"
+                known = (*self.graph.names, *self.graph.aliases) if self.by_alias else self.graph.names
+                detail = f"no node is named {quoted(name)}{did_you_mean(name, known)}"
                 self.faults.append(Fault("unknown-node", at, detail, (name,)))
             elif node not in found:
                 found[node] = Named(node, at)
@@ -181,7 +185,7 @@ def read_parts(value: str | Sequence[Any], names: NameReader, place: Place) -> t
     for k, item in enumerate(items):
         if isinstance(item, str):
             if k == bare[0][0]:
-                found = [one for at, name in bare for one in names.read(name, (*place, at))]
+                found = names.read_each([(name, (*place, at)) for at, name in bare])
                 columns = mask_of(one.node for one in found)
                 parts.append(
                     FilterPart(Part(columns, fixed=False, written=[name for _, name in bare]), place)
