@@ -88,9 +88,7 @@ class _Blame:
         for cause in self._causes(found.node, found.descent, found.descent.nodes):
             which = listed(cause.columns)
             if cause.distance == 0:
-                message = (
-                    f"{which} lies on the causal path {drawn}: {cause.doing} takes away part of the effect."
-                )
+                message = f"{which} lies on the causal path {drawn}: {cause.doing} {cause.harm}."
             else:
                 message = (
                     f"{which} is a consequence of {above} on the causal path {drawn}: {cause.doing}"
@@ -121,16 +119,15 @@ class _Blame:
                 else:
                     why = f"{which} is a consequence of {listed([graph.name(collider)])}, a common consequence on it"
                 once = self._once(found.trail)
-                message = (
-                    f"{_capital(cause.doing)} opens the path {drawn}, which is not the effect{once}: {why}."
-                )
+                message = f"{_capital(cause.doing)} opens the path {drawn}, which is not {self._claim.effect_name}{once}: {why}."
                 rule = cause.rule("collider")
                 yield Finding(rule, cause.columns, message, cause.place, cause.part, found.path)
 
     def missing(self, found: Missing) -> Iterator[Finding]:
         drawn = arrow_text(self._kept, found.trail, self._conditioned)
         once = self._once(found.trail)
-        still_open = f"The path {drawn} is not the effect and {f'is open{once}' if once else 'stays open'}"
+        how = f"is open{once}" if once else "stays open"
+        still_open = f"The path {drawn} is not {self._claim.effect_name} and {how}"
         if found.blocker is None:
             ends = names_in(self._kept, mask_of((found.trail.nodes[0], found.trail.nodes[-1])))
             rule, why = self._why_nothing_blocks(found)

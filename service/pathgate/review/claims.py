@@ -9,11 +9,11 @@ from collections.abc import Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 
-from pathgate.criteria.adjustment import Effect, is_valid, total_effect, valid_set
+from pathgate.criteria.adjustment import Effect, direct_effect, is_valid, total_effect, valid_set
 from pathgate.criteria.selection import Part, keep_rows
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
-from pathgate.review.config import Config
+from pathgate.review.config import Asks, Config
 
 # Effects on different choices of rows that one review may hold at a time.
 MOST_EFFECTS = 64
@@ -29,6 +29,8 @@ class Claim:
         covariates: what the config adjusts for.
         parts: its row filter.
         row_filter_fixed: may no part be dropped?
+        asks: the total effect, or the direct one (then treatment and outcome are one column each).
+        may_read_unmeasured: may a condition on the rows read what the platform does not hold?
     """
 
     graph: CausalGraph
@@ -36,7 +38,9 @@ class Claim:
     outcomes: int
     covariates: int
     parts: tuple[Part, ...]
-    row_filter_fixed: bool
+    row_filter_fixed: bool = False
+    asks: Asks = "total"
+    may_read_unmeasured: bool = False
     _effects: dict[tuple[int, ...], tuple[Effect, tuple[Part, ...]]] = field(default_factory=dict, repr=False)
 
     @classmethod
@@ -49,12 +53,24 @@ class Claim:
             covariates=mask_of(named.node for named in config.covariates),
             parts=tuple(filter_part.part for filter_part in config.filter_parts),
             row_filter_fixed=config.row_filter_fixed,
+            asks=config.asks,
+            may_read_unmeasured=config.may_read_unmeasured,
         )
 
     @property
     def ends(self) -> int:
         """Treatments and outcomes."""
         return self.treatments | self.outcomes
+
+    @property
+    def readable(self) -> int:
+        """The nodes that a condition on the rows may read."""
+        return self.graph.everything if self.may_read_unmeasured else self.graph.measured
+
+    @property
+    def effect_name(self) -> str:
+        """What the claim is about, in a sentence."""
+        return "the direct effect" if self.asks == "direct" else "the effect"
 
     @cached_property
     def usable_covariates(self) -> int:
@@ -67,7 +83,7 @@ class Claim:
         nothing to compare."""
         judged = []
         for part in self.parts:
-            columns = part.columns & self.graph.measured
+            columns = part.columns & self.readable
             if columns and not (part.fixed and columns & self.ends):
                 judged.append(part if columns == part.columns else Part(columns, part.fixed, part.written))
         return tuple(judged)
@@ -83,7 +99,8 @@ class Claim:
         remembered = self._effects.get(key)
         if remembered is not None:
             return remembered[0]
-        effect = total_effect(keep_rows(self.graph, parts), self.treatments, self.outcomes)
+        kind = direct_effect if self.asks == "direct" else total_effect
+        effect = kind(keep_rows(self.graph, parts), self.treatments, self.outcomes)
         if len(self._effects) >= MOST_EFFECTS:
             self._effects.clear()
         # The parts are held beside the effect: their identities are the key.
@@ -92,7 +109,7 @@ class Claim:
 
     def can_filter_by(self, part: Part) -> bool:
         """Can a dataset be filtered by this part and still hold something to compare?"""
-        return not part.columns & ~self.graph.measured and not (part.fixed and part.columns & self.ends)
+        return not part.columns & ~self.readable and not (part.fixed and part.columns & self.ends)
 
     def is_carried_by(self, covariates: int, parts: Sequence[Part]) -> bool:
         """Does this choice review as sound?"""

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
-from typing import Any, TypeGuard
+from typing import Any, Literal, TypeGuard
 
 from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault, Place
@@ -15,6 +15,8 @@ from pathgate.graphs.names import did_you_mean, quoted
 from pathgate.review.errors import InvalidConfig
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.review.shape import Shape
+
+Asks = Literal["total", "direct"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,7 +44,9 @@ class Config:
         treatments, outcomes, covariates: columns, each named once.
         filter_parts: the conditions on the rows kept.
         row_filter_fixed: may no part of the filter be dropped?
+        asks: the total effect, or the direct one.
         meta: what the caller put there; None where nothing.
+        may_read_unmeasured: may conditions on the rows read unmeasured nodes? Not in a team's config.
     """
 
     name: str
@@ -51,7 +55,9 @@ class Config:
     covariates: tuple[Named, ...]
     filter_parts: tuple[FilterPart, ...] = ()
     row_filter_fixed: bool = False
+    asks: Asks = "total"
     meta: object = None
+    may_read_unmeasured: bool = False
 
 
 def read_config(value: object, graph: CausalGraph) -> Config:
@@ -100,6 +106,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         covariates=covariates,
         filter_parts=parts,
         row_filter_fixed=said.get("row_filter_fixed", False),
+        asks=said.get("asks", "total"),
         meta=said.get("meta"),
     )
 
@@ -115,6 +122,11 @@ def understand_ends(
             name = names.graph.name(outcome.node)
             detail = f"{quoted(name)} cannot be both treatment and outcome"
             names.faults.append(Fault("invalid-request", outcome.place, detail, (name,)))
+    if value.get("asks") == "direct":
+        for several in (treatments, outcomes):
+            if len(several) > 1:
+                detail = "a direct effect is that of one column on one other"
+                names.faults.append(Fault("invalid-request", several[1].place, detail))
     return treatments, outcomes
 
 

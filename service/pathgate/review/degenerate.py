@@ -37,7 +37,7 @@ def _covariate(claim: Claim, named: Named) -> Iterator[Finding]:
 def _filter(claim: Claim, config: Config) -> Iterator[Finding]:
     for filter_part in config.filter_parts:
         part, place = filter_part.part, filter_part.place
-        unmeasured = claim.graph.names_of(part.columns & ~claim.graph.measured)
+        unmeasured = claim.graph.names_of(part.columns & ~claim.readable)
         if unmeasured:
             message = (
                 f"The row filter reads {listed(unmeasured)}, which the graph marks as unmeasured: the platform"

@@ -12,10 +12,11 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
-from pathgate.criteria.adjustment import Effect, valid_set
+from pathgate.criteria.adjustment import Effect, total_effect, valid_set
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import find_open_path
 from pathgate.criteria.reachability import Conditions, connected
+from pathgate.criteria.selection import keep_rows
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Claim
@@ -56,7 +57,8 @@ def column_roles(
     Raises:
         OutOfTime: the deadline came first.
     """
-    roles = _Roles(claim.effect_among(()))
+    # Roles tell how columns stand to the effect as a whole, whichever effect is asked for.
+    roles = _Roles(total_effect(keep_rows(claim.graph), claim.treatments, claim.outcomes))
     answers = []
     for node in members(columns):
         deadline.poll()

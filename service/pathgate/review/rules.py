@@ -96,6 +96,11 @@ RULES: dict[str, Rule] = {
         Rule("unmeasured-outcome", "error", "The outcome is something the platform does not hold."),
         Rule("filter-depends-on-treatment", "warning", "Who is kept depends on the treatment."),
         Rule("no-causal-path", "warning", "No directed path leads from the treatment to the outcome."),
+        Rule(
+            "no-arrow",
+            "warning",
+            "No arrow leads from the treatment to the outcome: no direct effect is drawn.",
+        ),
         Rule("outcome-precedes-treatment", "warning", "The outcome is a cause of the treatment."),
         Rule("treatment-precedes-treatment", "warning", "One treatment is a cause of another."),
     )

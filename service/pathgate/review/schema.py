@@ -49,6 +49,13 @@ PARTS: Schema = {
     },
 }
 
+ASKS: Schema = {
+    "enum": ["total", "direct"],
+    "default": "total",
+    "description": "which effect: the total one, or the direct one (the arrow's own, in linear models; one"
+    " treatment and one outcome)",
+}
+
 CONFIG_SCHEMA: Schema = {
     "type": "object",
     "description": "What one model claims: which effect it reports, adjusted for what, on which rows.",
@@ -57,11 +64,7 @@ CONFIG_SCHEMA: Schema = {
         "name": {"type": "string", "maxLength": 200, "description": "what the config is called in answers"},
         "treatment": {**SOME_NAMES, "description": "the column or columns whose effect is claimed"},
         "outcome": {**SOME_NAMES, "description": "the column or columns on which the effect is claimed"},
-        "asks": {
-            "enum": ["total"],
-            "default": "total",
-            "description": "which effect is claimed; this version judges total effects",
-        },
+        "asks": ASKS,
         "covariates": {**NAMES, "description": "the columns that the model adjusts for"},
         "row_filter": {
             **PARTS,

@@ -29,7 +29,8 @@ def summarise(
 ) -> str:
     """One sentence that names the effect, the verdict, the culprits and the way out."""
     graph = claim.graph
-    effect = f"the effect of {listed(graph.names_of(claim.treatments))} on {listed(graph.names_of(claim.outcomes))}"
+    ends = f"{listed(graph.names_of(claim.treatments))} on {listed(graph.names_of(claim.outcomes))}"
+    effect = f"{claim.effect_name} of {ends}"
     if verdict == "sound":
         adjusted = graph.names_of(claim.covariates)
         how = f"adjusted for {listed(adjusted)}" if adjusted else "without covariates"

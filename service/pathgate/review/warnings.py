@@ -29,6 +29,12 @@ def _directions(claim: Claim, config: Config) -> Iterator[Finding]:
                 " and any other number is bias or chance."
             )
             yield Finding("no-causal-path", (name,), message, treatment.place)
+        elif claim.asks == "direct" and not claim.effect.on_causal_paths:
+            message = (
+                f"No arrow leads from {listed([name])} to {outcomes}: by this graph the direct effect is zero, and"
+                " any other number is bias or chance."
+            )
+            yield Finding("no-arrow", (name,), message, treatment.place)
         for outcome in config.outcomes:
             if ancestors(graph, 1 << treatment.node) >> outcome.node & 1:
                 names = graph.names_of(1 << treatment.node | 1 << outcome.node)
