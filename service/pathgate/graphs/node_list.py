@@ -6,12 +6,12 @@ Names are checked as a set; only nodes that carry more than a name are visited o
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field
 from operator import itemgetter
-from typing import Any
+from typing import Any, NamedTuple
 
-from pathgate.graphs.errors import Fault
+from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import did_you_mean, misspelt_member, quoted
 
@@ -65,6 +65,8 @@ def check_attributes(
     are_all_objects = set(map(type, values)) <= {dict}
     objects: Any = values if are_all_objects else [value for value in values if isinstance(value, dict)]
     keys = set[str]().union(*objects)
+    if not set(map(type, keys)) <= {str}:
+        keys = _without_odd_keys(values, member, faults)
     for key in sorted(keys.difference(known)):
         meant = misspelt_member(key, known)
         if meant is not None:
@@ -76,6 +78,19 @@ def check_attributes(
                 for place, value in enumerate(values)
                 if isinstance(value, dict) and key in value
             )
+    return keys
+
+
+def _without_odd_keys(values: Sequence[object], member: str, faults: list[Fault]) -> set[str]:
+    """The keys that are strings, as all are in JSON; in YAML or in networkx one can be anything."""
+    keys = set()
+    for place, value in enumerate(values):
+        for key in value if isinstance(value, dict) else ():
+            if isinstance(key, str):
+                keys.add(key)
+            else:
+                detail = f"the name of an attribute is a string, not {json_type(key)}"
+                faults.append(Fault("invalid-request", (member, place), detail))
     return keys
 
 
@@ -141,7 +156,7 @@ def _report_repeats(nodes: NodeList, faults: list[Fault]) -> None:
 def _read_attributes(values: Sequence[object], nodes: NodeList, faults: list[Fault]) -> None:
     keys = check_attributes(values, "nodes", NODE_MEMBERS, faults)
     unmeasured: list[int] = []
-    readers: dict[str, Callable[[int, object], str | None]] = {
+    readers: dict[str, Callable[[int, object], Iterable[_Wrong]]] = {
         "measured": lambda node, said: _read_measured(node, said, unmeasured),
         "cost": lambda node, said: _read_cost(node, said, nodes),
         "recorded": lambda node, said: _read_recorded(node, said, nodes),
@@ -152,68 +167,81 @@ def _read_attributes(values: Sequence[object], nodes: NodeList, faults: list[Fau
         if member in keys:
             for place, value in enumerate(values):
                 if isinstance(value, dict) and member in value:
-                    wrong = reader(place, value[member])
-                    if wrong is not None:
-                        faults.append(_attribute_fault(place, member, wrong, nodes))
+                    columns = (nodes.names[place],) if nodes.names[place] else ()
+                    for wrong in reader(place, value[member]):
+                        at: Place = ("nodes", place, member, *wrong.within)
+                        faults.append(Fault(wrong.slug, at, wrong.detail, columns, rule=wrong.rule))
     nodes.measured = ((1 << len(nodes.names)) - 1) & ~mask_of(unmeasured)
 
 
-def _attribute_fault(place: int, member: str, wrong: str, nodes: NodeList) -> Fault:
-    columns = (nodes.names[place],) if nodes.names[place] else ()
-    if wrong.startswith("names "):
-        return Fault("unknown-node", ("nodes", place, member), wrong, columns, rule="undeclared-node")
-    if wrong.startswith("the name "):
-        return Fault("invalid-graph", ("nodes", place, member), wrong, columns, rule="ambiguous-name")
-    return Fault("invalid-request", ("nodes", place, member), wrong, columns)
+class _Wrong(NamedTuple):
+    """A fault in what is said of one node; ``within`` leads from the member to the value at fault."""
+
+    detail: str
+    within: tuple[int, ...] = ()
+    slug: str = "invalid-request"
+    rule: str = ""
 
 
-def _read_measured(node: int, said: object, unmeasured: list[int]) -> str | None:
+def _read_measured(node: int, said: object, unmeasured: list[int]) -> Iterable[_Wrong]:
     if not isinstance(said, bool):
-        return f'"measured" is true or false, not {json_type(said)}'
+        return [_Wrong(f'"measured" is true or false, not {json_type(said)}')]
     if not said:
         unmeasured.append(node)
-    return None
+    return ()
 
 
-def _read_cost(node: int, said: object, nodes: NodeList) -> str | None:
+def _read_cost(node: int, said: object, nodes: NodeList) -> Iterable[_Wrong]:
     if isinstance(said, bool) or not isinstance(said, int | float):
-        return f'"cost" is a number, not {json_type(said)}'
+        return [_Wrong(f'"cost" is a number, not {json_type(said)}')]
     try:
         cost = float(said)
     except OverflowError:
         cost = math.inf
     if not (0 < cost < math.inf):
-        return '"cost" must be greater than 0 and finite'
+        return [_Wrong('"cost" must be greater than 0 and finite')]
     if cost != 1:
         nodes.costs[node] = cost
-    return None
+    return ()
 
 
-def _read_recorded(node: int, said: object, nodes: NodeList) -> str | None:
+def _read_recorded(node: int, said: object, nodes: NodeList) -> Iterable[_Wrong]:
     if isinstance(said, bool) or not isinstance(said, int | float):
-        return f'"recorded" is a whole number, not {json_type(said)}'
+        return [_Wrong(f'"recorded" is a whole number, not {json_type(said)}')]
     if said != said // 1:
-        return '"recorded" must be a whole number'
+        return [_Wrong('"recorded" must be a whole number')]
     nodes.recorded[node] = int(said)
-    return None
+    return ()
 
 
-def _read_constant_within(node: int, said: object, nodes: NodeList) -> str | None:
-    if not isinstance(said, list) or not all(isinstance(name, str) for name in said):
-        return '"constant_within" is a list of names'
-    unknown = [name for name in said if name not in nodes.index]
-    if unknown:
-        return f"names {quoted(unknown[0])}, which no node bears{did_you_mean(unknown[0], nodes.names)}"
-    nodes.constant_within[node] = tuple(nodes.index[name] for name in dict.fromkeys(said))
-    return None
+def _read_constant_within(node: int, said: object, nodes: NodeList) -> Iterable[_Wrong]:
+    if not isinstance(said, list):
+        yield _Wrong('"constant_within" is a list of names')
+        return
+    found: dict[int, None] = {}
+    for place, name in enumerate(said):
+        if not isinstance(name, str):
+            yield _Wrong(f"a name is a string, not {json_type(name)}", (place,))
+        elif name in nodes.index:
+            found[nodes.index[name]] = None
+        else:
+            detail = f"no node is declared as {quoted(name)}{did_you_mean(name, nodes.names)}"
+            yield _Wrong(detail, (place,), "unknown-node", "undeclared-node")
+    nodes.constant_within[node] = tuple(found)
 
 
-def _read_aliases(node: int, said: object, nodes: NodeList) -> str | None:
-    if not isinstance(said, list) or any(name_fault(name, ()) for name in said):
-        return f'"columns" is a list of names of 1 to {MAX_NAME} characters'
-    for name in said:
+def _read_aliases(node: int, said: object, nodes: NodeList) -> Iterable[_Wrong]:
+    if not isinstance(said, list):
+        yield _Wrong('"columns" is a list of names')
+        return
+    for place, name in enumerate(said):
+        fault = name_fault(name, ())
+        if fault is not None:
+            yield _Wrong(fault.detail, (place,))
+            continue
         owner = nodes.index.get(name, nodes.aliases.get(name, node))
-        if owner != node:
-            return f"the name {quoted(name)} already belongs to {quoted(nodes.names[owner])}"
-        nodes.aliases[name] = node
-    return None
+        if owner == node:
+            nodes.aliases[name] = node
+        else:
+            detail = f"the name {quoted(name)} already belongs to {quoted(nodes.names[owner])}"
+            yield _Wrong(detail, (place,), "invalid-graph", "ambiguous-name")
