@@ -1,8 +1,8 @@
 """What is the verdict on a config, and how far is the nearest sound one? By trying everything.
 
 semantics read literally: a choice of covariates and filter parts is sound when every column is measured, no
-treatment or outcome is adjusted for or held at one value, and the adjustment criterion holds, by definition,
-in the graph with the selection nodes. All subsets of covariates and of droppable parts are tried.
+treatment or outcome is adjusted for or held at one value, and the adjustment criterion (for a direct effect:
+its definition) holds in the graph with the selection nodes. All subsets of covariates and of droppable parts are tried.
 """
 
 from __future__ import annotations
@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from itertools import combinations
 from typing import Any
 
-from tests.brute import is_valid_adjustment, valid_sets, with_selection
+from tests.brute import is_valid_adjustment, is_valid_direct, valid_sets, with_selection
 from tests.values import Graph, as_set, measured_names
 
 Part = dict[str, Any]
@@ -28,6 +28,7 @@ class Question:
     covariates: tuple[str, ...]
     parts: tuple[Part, ...] = ()
     row_filter_fixed: bool = False
+    asks: str = "total"
 
     @property
     def ends(self) -> frozenset[str]:
@@ -41,6 +42,7 @@ class Question:
             "covariates": list(self.covariates),
             "row_filter": list(self.parts),
             "row_filter_fixed": self.row_filter_fixed,
+            "asks": self.asks,
         }
 
 
@@ -51,6 +53,9 @@ def is_sound(question: Question, covariates: Sequence[str], parts: Sequence[Part
     if set(covariates) & question.ends:
         return False
     selected, conditioned = with_selection(question.graph, parts)
+    if question.asks == "direct":
+        (treatment,), (outcome,) = question.treatments, question.outcomes
+        return is_valid_direct(selected, treatment, outcome, covariates, conditioned)
     return is_valid_adjustment(selected, question.treatments, question.outcomes, covariates, conditioned)
 
 
@@ -71,7 +76,8 @@ def sound_choices(question: Question) -> Iterator[tuple[frozenset[str], tuple[in
             if not _can_be_asked(question, parts):
                 continue
             selected, conditioned = with_selection(question.graph, parts)
-            for chosen in valid_sets(selected, question.treatments, question.outcomes, conditioned):
+            ends = (question.treatments, question.outcomes)
+            for chosen in valid_sets(selected, *ends, conditioned, asks=question.asks):
                 yield chosen, dropped, count + len(chosen ^ set(question.covariates))
 
 

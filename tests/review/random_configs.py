@@ -18,7 +18,8 @@ def random_config(seed: int, most_nodes: int = 6, *, unmeasured: float = 0.12) -
     arrow, bidirected = rng.choice([0.25, 0.4, 0.6]), rng.choice([0, 0.1, 0.2])
     size = rng.randint(2, most_nodes)
     graph = random_graph(rng, size, arrow=arrow, bidirected=bidirected, unmeasured=unmeasured)
-    asked = random_question(rng, graph)
+    asks = "direct" if rng.random() < 0.25 else "total"
+    asked = random_question(rng, graph, single=asks == "direct")
     covariates = list(asked.given)
     parts = random_parts(rng, graph, 3, fixed=0.4)
     if rng.random() < 0.1:
@@ -26,7 +27,7 @@ def random_config(seed: int, most_nodes: int = 6, *, unmeasured: float = 0.12) -
     if rng.random() < 0.05:
         covariates.append(rng.choice(asked.x + asked.y))
     fixed = rng.random() < 0.25
-    return Question(graph, asked.x, asked.y, tuple(covariates), tuple(parts), fixed)
+    return Question(graph, asked.x, asked.y, tuple(covariates), tuple(parts), fixed, asks)
 
 
 def reviewed(question: Question) -> tuple[CausalGraph, Review]:

@@ -102,7 +102,7 @@ def test_what_is_not_built_yet_is_refused_by_name(member: str):
 
 
 def test_other_things_not_built_yet_are_refused_and_not_misread():
-    for member, said in (("row_filter", "depot = 'north'"), ("asks", "direct"), ("population", "whole")):
+    for member, said in (("row_filter", "depot = 'north'"), ("population", "whole")):
         with pytest.raises(InvalidConfig) as caught:
             read_config(GOOD | {member: said}, GRAPH)
         (fault,) = caught.value.faults

@@ -82,6 +82,7 @@ def apply(question: Question, told: dict) -> Question:
         tuple(told["covariates"]),
         tuple(parts),
         question.row_filter_fixed,
+        question.asks,
     )
 
 

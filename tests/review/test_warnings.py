@@ -11,7 +11,7 @@ from pathgate.review.rules import RULES
 from tests.brute import ancestors, descendants
 from tests.review.brute_review import Question
 from tests.review.random_configs import random_config, review_of, reviewed
-from tests.values import measured_names
+from tests.values import arrows_of, measured_names
 
 CONFIGS = [
     pytest.param(range(1200), id="1200"),
@@ -80,6 +80,8 @@ def warnings(question: Question) -> list[tuple[str, tuple, frozenset[str]]]:
         below = descendants(graph, treatment)
         if not below & set(question.outcomes):
             expected.append(("no-causal-path", ("treatment", k), frozenset({treatment})))
+        elif question.asks == "direct" and (treatment, question.outcomes[0]) not in arrows_of(graph):
+            expected.append(("no-arrow", ("treatment", k), frozenset({treatment})))
         later = below & treatments - {treatment}
         if later:
             expected.append(("treatment-precedes-treatment", ("treatment", k), later | {treatment}))

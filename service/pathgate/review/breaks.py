@@ -118,8 +118,8 @@ class _Blame:
                     why = f"{which} is a common consequence on it"
                 else:
                     why = f"{which} is a consequence of {listed([graph.name(collider)])}, a common consequence on it"
-                once = self._once(found.trail)
-                message = f"{_capital(cause.doing)} opens the path {drawn}, which is not {self._claim.effect_name}{once}: {why}."
+                what = f"{self._claim.effect_name}{self._once(found.trail)}"
+                message = f"{_capital(cause.doing)} opens the path {drawn}, which is not {what}: {why}."
                 rule = cause.rule("collider")
                 yield Finding(rule, cause.columns, message, cause.place, cause.part, found.path)
 
