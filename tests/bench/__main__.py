@@ -10,6 +10,7 @@ import platform
 import sys
 from collections.abc import Callable, Iterator
 
+from tests.bench.adjusting import checking_a_set, first_hundred_sets, first_set_of_very_many
 from tests.bench.harness import Figure, table
 from tests.bench.in_process import many_statements, single_verdicts, whole_large_request
 from tests.bench.over_http import memory_after_a_large_request, small_review
@@ -19,6 +20,9 @@ BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "small-review": small_review,
     "single-verdicts": single_verdicts,
     "many-statements": many_statements,
+    "hundred-sets": first_hundred_sets,
+    "first-set": first_set_of_very_many,
+    "check-a-set": checking_a_set,
     "memory": memory_after_a_large_request,
 }
 

@@ -48,8 +48,8 @@ def total_effect(kept: Kept, treatments: int, outcomes: int) -> Effect:
     """The total effect as a question about covariate sets."""
     graph = kept.graph
     downstream = descendants(graph, treatments, avoiding=treatments) & ~treatments
-    upstream = ancestors(graph, outcomes, avoiding=treatments) & ~treatments
-    on_causal_paths = downstream & upstream
+    # A causal path keeps to what is downstream, so nothing else need be searched upstream.
+    on_causal_paths = ancestors(graph, outcomes & downstream, avoiding=graph.everything & ~downstream)
     forbidden = descendants(graph, on_causal_paths) & ~treatments
     back_door_graph = graph.without_arrows(treatments, on_causal_paths)
     return Effect(kept, treatments, outcomes, on_causal_paths, forbidden, back_door_graph)

@@ -99,9 +99,7 @@ def _openers(kept: Kept, given: int, node: int) -> int:
 
 
 def _are_adjacent(graph: CausalGraph, first: int, second: int) -> bool:
-    return (
-        second in graph.children(first) or first in graph.children(second) or second in graph.spouses(first)
-    )
+    return second in graph.neighbour_lists[first]
 
 
 def _through(kept: Kept, x: int, y: int, conditions: Conditions) -> tuple[str, ...]:

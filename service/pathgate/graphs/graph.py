@@ -190,6 +190,12 @@ class CausalGraph:
         return _grouped(self.size, ends[order], others[order])
 
     @cached_property
+    def neighbour_lists(self) -> tuple[tuple[int, ...], ...]:
+        """For each node all nodes that an edge joins to it, each once, in order."""
+        lists = zip(self.parent_lists, self.child_lists, self.spouse_lists, strict=True)
+        return tuple(tuple(sorted({*above, *below, *beside})) for above, below, beside in lists)
+
+    @cached_property
     def child_masks(self) -> list[int]:
         """For each node the set of its children (small graphs only)."""
         return _masks(self.size, self.sources, self.targets)
@@ -227,7 +233,16 @@ class CausalGraph:
         dropped = unpack(sources, self.size)[self.sources] & unpack(targets, self.size)[self.targets]
         if not dropped.any():
             return self
-        return replace(self, sources=self.sources[~dropped], targets=self.targets[~dropped])
+        lesser = replace(self, sources=self.sources[~dropped], targets=self.targets[~dropped])
+        if self.is_small:
+            # Few masks differ: cheaper to change a copy than to make all of them anew.
+            children, parents = self.child_masks.copy(), self.parent_masks.copy()
+            for node in members(sources):
+                children[node] &= ~targets
+            for node in members(targets):
+                parents[node] &= ~sources
+            vars(lesser).update(child_masks=children, parent_masks=parents, spouse_masks=self.spouse_masks)
+        return lesser
 
     def without_edge(self, edge: Edge) -> CausalGraph:
         """The same graph less one edge."""
