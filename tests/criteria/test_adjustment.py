@@ -31,15 +31,15 @@ from tests.values import graph_of, measured_names, node_names
 
 MANY = [
     pytest.param(range(600), id="600"),
-    pytest.param(range(600, 4000), id="3400", marks=pytest.mark.slow),
+    pytest.param(range(600, 3000), id="2400", marks=pytest.mark.slow),
 ]
 WORLDS = [
-    pytest.param(range(500), id="500"),
-    pytest.param(range(500, 4000), id="3500", marks=pytest.mark.slow),
+    pytest.param(range(300), id="300"),
+    pytest.param(range(300, 2500), id="2200", marks=pytest.mark.slow),
 ]
 DISCRETE = [
     pytest.param(range(60), id="60"),
-    pytest.param(range(60, 460), id="400", marks=pytest.mark.slow),
+    pytest.param(range(60, 300), id="240", marks=pytest.mark.slow),
 ]
 
 

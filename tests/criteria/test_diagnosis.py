@@ -26,8 +26,8 @@ from tests.strategies import Question, random_graph, random_parts, random_questi
 from tests.values import Graph, as_set, graph_of, measured_names, node_names
 
 SEEDS = [
-    pytest.param(range(1000), id="1000"),
-    pytest.param(range(1000, 5000), id="4000", marks=pytest.mark.slow),
+    pytest.param(range(600), id="600"),
+    pytest.param(range(600, 4000), id="3400", marks=pytest.mark.slow),
 ]
 NEVER = Deadline.never()
 
@@ -154,7 +154,7 @@ def test_doing_what_is_said_of_every_path_leaves_none_open(seeds: range):
         if not found:
             assert is_valid_adjustment(selected, question.x, question.y, covariates, conditioned), seed
             mended += 1
-    assert mended > 100
+    assert mended > 60
 
 
 def test_the_fork_is_named_as_what_is_missing():

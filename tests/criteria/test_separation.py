@@ -11,7 +11,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from pathgate.criteria import Deadline, OutOfTime, separation
+from pathgate.criteria import Deadline, OutOfTime, is_separated, separation
 from pathgate.graphs import CausalGraph, read_graph
 from tests.brute import Path, separated, shortest_open_length, subsets
 from tests.criteria.asking import assert_is_open_path, is_directed_path, roles_of
@@ -28,8 +28,8 @@ from tests.strategies import (
 from tests.values import Graph, arrows_of, node_names, with_explicit_causes
 
 MANY = [
-    pytest.param(range(2500), id="2500"),
-    pytest.param(range(2500, 14000), id="11500", marks=pytest.mark.slow),
+    pytest.param(range(1000), id="1000"),
+    pytest.param(range(1000, 8000), id="7000", marks=pytest.mark.slow),
 ]
 
 
@@ -45,8 +45,7 @@ def test_all_543_dags_on_four_nodes_every_pair_and_every_given_set():
         graph, names = read_graph(value), node_names(value)
         for x, y in combinations(names, 2):
             for fixed in subsets(name for name in names if name not in (x, y)):
-                answer = separation(graph, x, y, fixed)
-                assert answer.separated is separated(value, x, y, fixed), (value, x, y, fixed)
+                assert is_separated(graph, x, y, fixed) is separated(value, x, y, fixed), (value, x, y, fixed)
                 asked += 1
     assert (len(dags), asked) == (543, 543 * 6 * 4)
 
@@ -61,7 +60,7 @@ def test_all_543_dags_on_four_nodes_every_pair_of_sets():
             )
             # Separation is symmetric, which another test shows: one order of the two sets will do.
             if x and y and x[0] < y[0]:
-                assert separation(graph, x, y, fixed).separated is separated(value, x, y, fixed)
+                assert is_separated(graph, x, y, fixed) is separated(value, x, y, fixed)
 
 
 @pytest.mark.parametrize("seeds", MANY)
@@ -83,7 +82,7 @@ def test_sets_bidirected_edges_and_unmeasured_nodes_agree_with_the_paths(seeds: 
 
 def test_networkx_agrees_on_larger_dags_and_on_explicit_common_causes():
     seen: Counter[bool] = Counter()
-    for seed in range(600):
+    for seed in range(400):
         rng = random.Random(seed)
         size = rng.randint(5, 12)
         value = random_graph(rng, size, arrow=1.6 / size, bidirected=rng.choice([0, 0.05]))
@@ -91,9 +90,9 @@ def test_networkx_agrees_on_larger_dags_and_on_explicit_common_causes():
         plain = networkx.DiGraph(arrows_of(with_explicit_causes(value)))
         plain.add_nodes_from(node_names(value))
         expected = networkx.is_d_separator(plain, set(asked.x), set(asked.y), set(asked.given))
-        assert separation(read_graph(value), asked.x, asked.y, asked.given).separated is expected, seed
+        assert is_separated(read_graph(value), asked.x, asked.y, asked.given) is expected, seed
         seen[expected] += 1
-    assert min(seen.values()) > 100
+    assert min(seen.values()) > 60
 
 
 @st.composite

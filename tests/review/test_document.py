@@ -20,7 +20,7 @@ from tests.values import graph_of, node_names
 
 SEEDS = [
     pytest.param(range(300), id="300"),
-    pytest.param(range(300, 2000), id="1700", marks=pytest.mark.slow),
+    pytest.param(range(300, 1300), id="1000", marks=pytest.mark.slow),
 ]
 
 
@@ -75,7 +75,8 @@ def rename_config(question: Question, names: dict[str, str]) -> Question:
     treatments, outcomes, covariates = (tuple(names[name] for name in side) for side in sides)
     parts = tuple({**part, "columns": [names[name] for name in part["columns"]]} for part in question.parts)
     value = renamed(question.graph, names)
-    return Question(value, treatments, outcomes, covariates, parts, question.row_filter_fixed)
+    fixed, asks = question.row_filter_fixed, question.asks
+    return Question(value, treatments, outcomes, covariates, parts, fixed, asks)
 
 
 @pytest.mark.parametrize("seeds", SEEDS[:1])

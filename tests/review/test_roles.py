@@ -18,8 +18,8 @@ from tests.review.random_configs import random_config, review_of, reviewed
 from tests.values import Graph, graph_of, node_names
 
 CONFIGS = [
-    pytest.param(range(600), id="600"),
-    pytest.param(range(600, 4000), id="3400", marks=pytest.mark.slow),
+    pytest.param(range(800), id="800"),
+    pytest.param(range(800, 2400), id="1600", marks=pytest.mark.slow),
 ]
 
 

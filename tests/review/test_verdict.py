@@ -12,8 +12,8 @@ from tests.review.random_configs import random_config, review_of, reviewed
 from tests.values import as_set, graph_of, measured_names
 
 CONFIGS = [
-    pytest.param(range(1500), id="1500"),
-    pytest.param(range(1500, 7500), id="6000", marks=pytest.mark.slow),
+    pytest.param(range(800), id="800"),
+    pytest.param(range(800, 4800), id="4000", marks=pytest.mark.slow),
 ]
 MEASURED = [
     pytest.param(range(500), id="500"),
