@@ -11,6 +11,7 @@ import pytest
 
 from pathgate.criteria import Deadline, OutOfTime
 from pathgate.graphs import read_graph
+from pathgate.graphs.graph import SMALL
 from pathgate.review import read_config, review, review_document
 from pathgate.review.document import pointer
 from tests.review.brute_review import Question
@@ -93,6 +94,14 @@ def test_the_order_of_the_nodes_changes_neither_verdict_nor_rules_nor_changes(se
         assert [remedy.changes for remedy in one.remedies[:1]] == [r.changes for r in other.remedies[:1]]
         roles, others = ({each.column: each.role for each in answer.columns} for answer in (one, other))
         assert all(others.get(column, role) == role for column, role in roles.items()), seed
+
+
+def test_a_graph_too_large_for_masks_is_reviewed_with_the_same_bytes():
+    for seed in range(150):
+        question = random_config(seed)
+        unlinked = [f"unlinked {k}" for k in range(SMALL)]
+        large = question.graph | {"nodes": [*question.graph["nodes"], *unlinked]}
+        assert document_of(large, question.config()) == document_of(question.graph, question.config()), seed
 
 
 def test_hostile_names_come_through_whole():
