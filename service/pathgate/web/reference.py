@@ -119,8 +119,11 @@ class Pages:
             statuses=tuple(said["responses"]),
         )
 
-    def _schema(self, reference: Mapping[str, str]) -> Any:
-        return self._described["components"]["schemas"][reference["$ref"].removeprefix(_REFERENCE)]
+    def _schema(self, schema: Mapping[str, Any]) -> Any:
+        """The schema itself, where a reference stands for it (or a reference to a reference)."""
+        while "$ref" in schema:
+            schema = self._described["components"]["schemas"][schema["$ref"].removeprefix(_REFERENCE)]
+        return schema
 
     def _shapes(self) -> list[tuple[str, Mapping[str, Any], tuple[Member, ...]]]:
         """The named schemas that operations share: name, schema, members."""

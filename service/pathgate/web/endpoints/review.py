@@ -134,9 +134,36 @@ OPERATION = Operation(
     },
     response_schema={"$ref": "#/components/schemas/Review"},
     components=REVIEW_COMPONENTS,
-    examples=tuple(
-        Example(config["name"], config["meta"]["why"], {"graph": demo_graph(), "config": config})
-        for config in demo_configs()
+    examples=(
+        Example(
+            "a-filter-on-a-ticket",
+            "Only parcels with a ticket are kept, and late parcels are not the only ones that get a ticket.",
+            {
+                "graph": {
+                    "nodes": ["weather", "late_delivery", "ticket_opened", "order_value", "refund"],
+                    "edges": [
+                        {"source": "weather", "target": "late_delivery"},
+                        {"source": "weather", "target": "refund"},
+                        {"source": "late_delivery", "target": "refund"},
+                        {"source": "late_delivery", "target": "ticket_opened"},
+                        {"source": "order_value", "target": "ticket_opened"},
+                        {"source": "order_value", "target": "refund"},
+                    ],
+                },
+                "config": {
+                    "name": "refund-uplift",
+                    "treatment": "late_delivery",
+                    "outcome": "refund",
+                    "covariates": ["weather"],
+                    "row_filter": ["ticket_opened"],
+                },
+            },
+        ),
+        *(
+            Example(config["name"], config["meta"]["why"], {"graph": demo_graph(), "config": config})
+            for config in demo_configs()
+            if config["name"] in ("late-delivery-refunds", "ticket-refunds")
+        ),
     ),
     answer=answer,
 )
