@@ -132,8 +132,7 @@ def explained(graph: CausalGraph, statement: Statement, paths: int, deadline: De
 def _blockers(
     graph: CausalGraph, xs: int, ys: int, conditions: Conditions, paths: int, deadline: Deadline
 ) -> Iterator[Blocker]:
-    for trail in islice(shortest_paths(graph, xs, ys), paths):
-        deadline.poll()
+    for trail in islice(shortest_paths(graph, xs, ys, deadline), paths):
         for node, role in trail.inner:
             if role == "collider" and not conditions.opening >> node & 1:
                 yield Blocker(trail, node, role, "collider-not-conditioned")
