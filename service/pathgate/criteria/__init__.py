@@ -6,11 +6,20 @@ from pathgate.criteria.colliders import Collider, Induced, colliders, induced
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_nodes, open_paths
 from pathgate.criteria.errors import CriterionError, OutOfTime, Overlapping
+from pathgate.criteria.measuring import MeasureNext, measure_next
 from pathgate.criteria.paths import OpenPath, Step, Trail, directed_path, find_open_path
 from pathgate.criteria.selection import Kept, Label, Part, keep_rows
 from pathgate.criteria.separation import Blocker, Separation, is_separated, separation
 from pathgate.criteria.separators import Separators
 from pathgate.criteria.verdict import are_separated
+from pathgate.criteria.whole import (
+    is_weightable,
+    least_recovering_set,
+    recovering_set,
+    recovering_sets,
+    recovers,
+    weighting,
+)
 
 __all__ = [
     "Blocker",
@@ -22,6 +31,7 @@ __all__ = [
     "Induced",
     "Kept",
     "Label",
+    "MeasureNext",
     "Missing",
     "OpenPath",
     "Opened",
@@ -40,10 +50,17 @@ __all__ = [
     "induced",
     "is_separated",
     "is_valid",
+    "is_weightable",
     "keep_rows",
+    "least_recovering_set",
+    "measure_next",
     "open_paths",
+    "recovering_set",
+    "recovering_sets",
+    "recovers",
     "separated_each",
     "separation",
     "total_effect",
     "valid_set",
+    "weighting",
 ]
