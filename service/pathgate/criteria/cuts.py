@@ -1,8 +1,8 @@
 """Minimum vertex cuts of an augmented graph: flow through split nodes, hubs without bounds.
 
 The fewest nodes come from scipy's maximum flow over integer capacities; least cost from networkx's minimum
-cut over exact fractions, since costs are any positive numbers. Of the cuts that are least, the one nearest
-to the source side is taken, which is the same for every maximum flow.
+cut over exact fractions, since costs are any positive numbers. Where several cuts are least, the smallest is
+the one nearest to x and the cheapest the one nearest to y, which are the same for every maximum flow.
 """
 
 from __future__ import annotations

@@ -74,7 +74,7 @@ class Separators:
         return smallest_cut(self._hubs, self.xs, self.ys, self._choosable, self.required) | self.required
 
     def cheapest(self) -> int | None:
-        """A separating set whose columns cost least together; None where none separates."""
+        """A separating set whose columns cost least together: of those the one nearest to y. None likewise."""
         if not self.exists:
             return None
         costs = {node: Fraction(self.graph.cost(node)) for node in members(self._choosable)}
@@ -98,6 +98,7 @@ class Separators:
                 continue
             yield separator | self.required
             for node in members(separator & ~staying):
+                deadline.poll()
                 wider = self._absorbed(side | 1 << node)
                 waiting.append((wider, self._nearest(wider), staying))
                 staying |= 1 << node
