@@ -51,7 +51,8 @@ class Hubs:
         return cls(graph, relevant, tuple(hub_members), tuple(map(tuple, hubs_of)))
 
     @cached_property
-    def _member_masks(self) -> tuple[int, ...]:
+    def member_masks(self) -> tuple[int, ...]:
+        """The cliques as masks."""
         return tuple(map(mask_of, self.hub_members))
 
     def spread(self, starts: int, stopping: int) -> tuple[int, int]:
@@ -64,7 +65,7 @@ class Hubs:
         return self._spread_lists(starts, stopping)
 
     def _spread_masks(self, starts: int, stopping: int) -> tuple[int, int]:
-        masks, hubs_of = self._member_masks, self.hubs_of
+        masks, hubs_of = self.member_masks, self.hubs_of
         seen_hubs = set[int]()
         seen = frontier = starts
         while frontier:
@@ -98,6 +99,63 @@ class Hubs:
                             if not stops[node]:
                                 frontier.append(node)
         return mask_of(inside), mask_of(stopped)
+
+
+@dataclass(frozen=True, slots=True)
+class Cliques:
+    """The augmented graph of an ancestral set of a small graph, as masks; a clique goes by a node of its district.
+
+    Attributes:
+        graph: the causal graph.
+        relevant: mask of the ancestral set.
+        district_of: for each node in a district of several its lowest node; others are their own.
+        joint: for each such lowest node the clique: the district and the parents of its nodes.
+    """
+
+    graph: CausalGraph
+    relevant: int
+    district_of: dict[int, int]
+    joint: dict[int, int]
+
+    @classmethod
+    def over(cls, graph: CausalGraph, nodes: int) -> Cliques:
+        """The augmented graph of the ancestors of ``nodes``."""
+        relevant = ancestors(graph, nodes)
+        district_of: dict[int, int] = {}
+        joint: dict[int, int] = {}
+        if len(graph.lower_ends):
+            for district in _districts(graph, relevant, unpack(relevant, graph.size).tolist()):
+                if len(district) > 1:
+                    first = min(district)
+                    district_of.update(dict.fromkeys(district, first))
+                    joint[first] = mask_of(district)
+                    for node in district:
+                        joint[first] |= graph.parent_masks[node]
+        return cls(graph, relevant, district_of, joint)
+
+    def of(self, node: int) -> int:
+        """The cliques that a node is in, as a mask of the nodes they go by."""
+        found = self.graph.child_masks[node] & self.relevant | 1 << node
+        if self.district_of:
+            found = mask_of(self.district_of.get(member, member) for member in members(found))
+        return found
+
+    def together(self, cliques: int) -> int:
+        """The nodes of some cliques."""
+        found, parents, joint = cliques, self.graph.parent_masks, self.joint
+        while cliques:
+            lowest = cliques & -cliques
+            cliques ^= lowest
+            clique = lowest.bit_length() - 1
+            found |= joint[clique] if clique in joint else parents[clique]
+        return found
+
+    def around(self, nodes: int) -> int:
+        """Everything that shares a clique with one of the nodes."""
+        found = 0
+        for node in members(nodes):
+            found |= self.together(self.of(node))
+        return found
 
 
 def _districts(graph: CausalGraph, relevant: int, inside: list[bool]) -> Iterable[list[int]]:

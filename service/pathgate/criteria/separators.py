@@ -17,7 +17,9 @@ from functools import cached_property
 
 from pathgate.criteria.cuts import cheapest_cut, smallest_cut
 from pathgate.criteria.deadline import Deadline
-from pathgate.criteria.hubs import Hubs
+from pathgate.criteria.disjoint import fewest_nodes_between
+from pathgate.criteria.hubs import Cliques, Hubs
+from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
 
@@ -69,6 +71,13 @@ class Separators:
 
     def smallest(self) -> int | None:
         """A separating set of the fewest nodes: of those the one nearest to x. None where none separates."""
+        if are_separated(self.graph, self.xs, self.ys, self.required):
+            return self.required
+        if self.graph.is_small:
+            cliques = Cliques.over(self.graph, self.xs | self.ys | self.required)
+            choosable = self.allowed & cliques.relevant & ~(self.xs | self.ys | self.required)
+            found = fewest_nodes_between(cliques, self.xs, self.ys, choosable, self.required)
+            return None if found is None else found | self.required
         if not self.exists:
             return None
         return smallest_cut(self._hubs, self.xs, self.ys, self._choosable, self.required) | self.required

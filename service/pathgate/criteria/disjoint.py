@@ -1,0 +1,130 @@
+"""The fewest nodes that part two sets of a small augmented graph, by paths that share no choosable node.
+
+Menger's theorem (1927) with augmenting paths (Ford & Fulkerson 1956) over bit masks. A search goes from clique
+to clique (``hubs``) and opens each once; a choosable node lets one path through, every other node any number.
+O(answer · nodes) mask operations.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from pathgate.criteria.hubs import Cliques
+
+# Stand for x and y where a path begins and ends.
+_X, _Y = -1, -2
+
+
+def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, removed: int) -> int | None:
+    """The smallest set of choosable nodes without which nothing leads from x to y, nearest to x.
+
+    Args:
+        cliques: the augmented graph.
+        xs, ys: what is to be parted.
+        choosable: the nodes that the set may hold; neither x nor y.
+        removed: nodes that are gone already.
+
+    Returns:
+        The set, or None where choosable nodes cannot part the two.
+    """
+    # A node next to both is a way through by itself: every such set holds it.
+    inevitable = cliques.around(xs) & cliques.around(ys) & choosable & ~removed
+    paths = _Paths(cliques, xs, ys, choosable & ~inevitable, removed | inevitable)
+    while (last := paths.search()) is not None:
+        if last == _X:
+            return None
+        paths.reroute(last)
+    return inevitable | (paths.entered & ~paths.left & choosable)
+
+
+@dataclass(slots=True)
+class _Paths:
+    """Paths from x to y no two of which share a choosable node, and what the last search for one more reached.
+
+    Attributes:
+        before, after: for each node on a path the choosable node before and after it there.
+        entered, left: the nodes whose entry and whose exit the last search reached.
+        entry_from: for each node entered, the node whose exit led there.
+        exit_from: for each node left, the node entered that led there: itself, or the next on a path taken back.
+    """
+
+    cliques: Cliques
+    xs: int
+    ys: int
+    choosable: int
+    removed: int
+    before: dict[int, int] = field(default_factory=dict)
+    after: dict[int, int] = field(default_factory=dict)
+    entered: int = 0
+    left: int = 0
+    opened: int = 0
+    entry_from: dict[int, int] = field(default_factory=dict)
+    exit_from: dict[int, int] = field(default_factory=dict)
+
+    def search(self) -> int | None:
+        """Look for one more path; the last choosable node on it (``_X`` for none), or None where there is none."""
+        self.entered = self.xs | self.removed
+        self.left = self.opened = 0
+        self.entry_from, self.exit_from = {}, {}
+        waiting = self._leave(self.xs, _X)
+        if self.entered & self.ys:
+            return _X
+        while waiting:
+            lowest = waiting & -waiting
+            node = lowest.bit_length() - 1
+            waiting = (waiting ^ lowest) | self._leave(lowest, node)
+            if self.entered & self.ys:
+                return node
+        self.entered &= ~(self.xs | self.removed)
+        return None
+
+    def _leave(self, nodes: int, origin: int) -> int:
+        """Go on from the exits of nodes; returns the choosable nodes whose exits that reaches for the first time."""
+        reached = 0
+        while nodes:
+            lowest = nodes & -nodes
+            nodes ^= lowest
+            unopened = self.cliques.of(lowest.bit_length() - 1) & ~self.opened
+            self.opened |= unopened
+            new = self.cliques.together(unopened) & ~self.entered
+            self.entered |= new
+            nodes |= new & ~self.choosable
+            reached |= self._enter(new & self.choosable, origin)
+        return reached
+
+    def _enter(self, nodes: int, origin: int) -> int:
+        """Enter choosable nodes for the first time.
+
+        A free node is passed. A node on a path lets no other through, but the path's way to it can be taken
+        back: that leads to the exit of the node before it.
+        """
+        reached = 0
+        while nodes:
+            lowest = nodes & -nodes
+            nodes ^= lowest
+            node = lowest.bit_length() - 1
+            self.entry_from[node] = origin
+            beyond = self.before.get(node, node)
+            if beyond != _X and not self.left >> beyond & 1:
+                self.left |= 1 << beyond
+                self.exit_from[beyond] = node
+                reached |= 1 << beyond
+        return reached
+
+    def reroute(self, last: int) -> None:
+        """Put the path that was found into the others: steps taken back go first, then the new ones come."""
+        added = [(last, _Y)]
+        node = last
+        while node != _X:
+            entered = self.exit_from[node]
+            if entered != node:
+                # The exit was reached by taking back the step from this node to the one entered.
+                del self.after[node], self.before[entered]
+            node = self.entry_from[entered]
+            if node != entered:
+                added.append((node, entered))
+        for first, second in added:
+            self.after[first] = second
+            self.before[second] = first
+        self.after.pop(_X, None)
+        self.before.pop(_Y, None)
