@@ -13,6 +13,7 @@ from typing import Any
 import pytest
 
 from pathgate.web.endpoints import OPERATIONS
+from tests.http.conftest import TINY_GRAPH
 
 PATHS = [operation.path for operation in OPERATIONS]
 EXAMPLES = [
@@ -181,3 +182,18 @@ def test_the_same_request_gets_the_same_bytes_and_the_order_of_members_changes_n
     first, again = (service.post(path, request_body) for _ in range(2))
     assert first.data == again.data
     assert service.post(path, turned(request_body)).json == first.json
+
+
+@pytest.mark.parametrize(
+    ("path", "members"),
+    [
+        ("/v1/separation", {"statements": [{"x": 1, "y": 2, "given": 3}] * 5_000}),
+        ("/v1/adjustment", {"treatment": "weather", "outcome": "delay", "check": [1] * 10_001, "require": 5}),
+        ("/v1/colliders", {"given": [1] * 10_001, "selected_on": 5}),
+        ("/v1/review", {"config": {"covariates": [1] * 10_001, "row_filter": 5, "treatment": 5}}),
+    ],
+)
+def test_what_comes_after_more_faults_than_are_looked_for_is_not_taken_for_sound(service, path, members):
+    reply = service.post(path, {"graph": TINY_GRAPH, **members})
+    assert reply.status_code == 422
+    assert json.loads(reply.data)["errors_omitted"] == 10_000 - 100

@@ -14,7 +14,7 @@ from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import did_you_mean, quoted
 from pathgate.review.errors import InvalidConfig
 from pathgate.review.schema import CONFIG_SCHEMA
-from pathgate.review.shape import Shape
+from pathgate.review.shape import Shape, are_cut_off
 
 Asks = Literal["total", "direct"]
 
@@ -72,6 +72,8 @@ def read_config(value: object, graph: CausalGraph) -> Config:
     ['rain']
     """
     faults = _config_shape().faults(value)
+    if are_cut_off(faults):
+        raise InvalidConfig(faults)
     config = understand_config(value, graph, faults)
     if config is None:
         raise InvalidConfig(faults)

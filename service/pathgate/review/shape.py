@@ -12,7 +12,7 @@ version has not, and hold under ``x-not-yet-types`` a sentence for each type of 
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from itertools import islice
 from typing import Any
 
@@ -48,7 +48,7 @@ class Shape:
         """All that is wrong with ``value``, in its own order; the first ``MOST_FAULTS`` where it is more."""
         if self._whole.is_valid(value):
             return []
-        found = list(dict.fromkeys(islice(self._faults(self.schema, value, ()), MOST_FAULTS)))
+        found = list(islice(_each_once(self._faults(self.schema, value, ())), MOST_FAULTS))
         return found or [Fault("invalid-request", (), f"the body must be {expected(self.schema)}")]
 
     def _faults(self, schema: Schema, value: Any, place: Place) -> Iterator[Fault]:
@@ -106,6 +106,19 @@ class Shape:
 
     def _compiled(self, schema: Schema) -> Draft202012Validator:
         return Draft202012Validator(schema if isinstance(schema, bool) else {**schema, **self._components})
+
+
+def are_cut_off(faults: Sequence[Fault]) -> bool:
+    """Were faults of a shape left out? Then what none of them names may be at fault as well."""
+    return len(faults) >= MOST_FAULTS
+
+
+def _each_once(faults: Iterator[Fault]) -> Iterator[Fault]:
+    seen = set[Fault]()
+    for fault in faults:
+        if fault not in seen:
+            seen.add(fault)
+            yield fault
 
 
 def _shallow(schema: Schema) -> Schema:

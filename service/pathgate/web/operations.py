@@ -13,7 +13,7 @@ from typing import Any
 
 from pathgate.criteria.deadline import Deadline
 from pathgate.graphs.errors import Fault
-from pathgate.review.shape import Shape
+from pathgate.review.shape import Shape, are_cut_off
 from pathgate.web.problems import Refused
 from pathgate.web.settings import Settings
 
@@ -124,13 +124,15 @@ def open_call(shape: Shape, value: Any, settings: Settings, deadline: Deadline) 
     """The call that a parsed body makes, its envelope checked against ``shape``.
 
     Raises:
-        Refused: the body is no object.
+        Refused: the body is no object, or so faulty that not all of its faults were looked for.
     """
     if not isinstance(value, dict):
         raise Refused(shape.faults(value))
     whole = {member: said for member, said in value.items() if member != "graph"}
     has_graph = "graph" in value
     faults = shape.faults({**whole, "graph": None} if has_graph else whole)
+    if are_cut_off(faults):
+        raise Refused(faults)
     faulty = {fault.place[0] for fault in faults if fault.place}
     body = {member: said for member, said in whole.items() if member not in faulty} if faulty else whole
     return Call(
