@@ -15,11 +15,13 @@ keeps the formula from being evaluated there, so whoever knows of one takes that
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import replace
 from fractions import Fraction
 from typing import Literal
 
 from pathgate.criteria.adjustment import Effect, covariates_in, is_valid, valid_sets
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.joint_cuts import Cut, JointCuts
 from pathgate.criteria.separators import Separators
 from pathgate.graphs.kinship import ancestors
 from pathgate.graphs.masks import members
@@ -80,7 +82,7 @@ def recovering_set(effect: Effect, known: int = 0, *, required: int = 0, allowed
         return None
     found = covariates_in(effect, minimal, always)
     # Among the ancestors that matter a set that recovers may grow, so one pass over the weighting is enough.
-    for node in members(always & ~required):
+    for node in members(weight & ~required):
         if recovers(effect, found & ~(1 << node), known):
             found &= ~(1 << node)
     return found
@@ -91,18 +93,23 @@ def recovering_sets(
 ) -> Iterator[int]:
     """All minimal sets that recover the effect and hold ``required``, each once.
 
-    The next one comes in polynomial time where ``required`` undoes the selection already, or nothing has to.
-    Otherwise the sets come weighting by weighting, and one that is not minimal, or that comes with another
-    weighting, is passed over; no polynomial bound is known to us on how many in a row.
+    Where ``required`` undoes the selection already, or nothing has to, they are the minimal valid sets and
+    come with polynomial delay. Otherwise they come weighting by weighting, and a set that is not minimal, or
+    has its own weighting among the others, is passed over: no bound is known to us on how many in a row.
 
     Raises:
         OutOfTime: the deadline came first.
     """
-    for weight, bounded in _by_weighting(effect, known, deadline, required, allowed):
-        for separating in bounded.every_minimal(deadline):
-            found = covariates_in(effect, separating, required | weight)
-            own = _weightings(effect, known, required=required, allowed=found).minimal()
-            if own == weight and _is_minimal(effect, found, known, weight & ~required):
+    bounded = valid_sets(effect, required=required, allowed=allowed)
+    if bounded is None:
+        return
+    weightings = _weightings(effect, known, required=required, allowed=bounded.allowed)
+    weight_cut, joint = Cut.of(weightings), _joint(effect, known, bounded, required)
+    for weight in weightings.every_minimal(deadline):
+        spare = weight & ~required
+        for each in replace(bounded, required=bounded.required | weight).every_minimal(deadline):
+            found = covariates_in(effect, each, required)
+            if weight_cut.core(found) == spare and not spare & ~joint.needed(found):
                 yield found
 
 
@@ -117,21 +124,21 @@ def least_recovering_set(
 ) -> int | None:
     """A recovering set of the fewest columns, or of the least cost; None where none recovers.
 
-    One minimum cut for each minimal weighting, so polynomial where there are few of them.
+    One minimum cut where ``required`` undoes the selection or nothing has to, otherwise a bounded search.
 
     Raises:
         OutOfTime: the deadline came first.
     """
-    best: tuple[Fraction, int] | None = None
-    for weight, bounded in _by_weighting(effect, known, deadline, required, allowed):
-        if best is not None and _amount(effect, required | weight, prefer) >= best[0]:
-            continue
-        least = bounded.smallest() if prefer == "smallest" else bounded.cheapest()
-        if least is not None:
-            found = covariates_in(effect, least, required | weight)
-            amount = _amount(effect, found, prefer)
-            best = (amount, found) if best is None or amount < best[0] else best
-    return None if best is None else best[1]
+    bounded = valid_sets(effect, required=required, allowed=allowed)
+    if bounded is None:
+        return None
+    joint = _joint(effect, known, bounded, required)
+    graph = effect.kept.graph
+    costs = {
+        node: Fraction(1 if prefer == "smallest" else graph.cost(node)) for node in members(joint.choosable)
+    }
+    least = joint.least(costs, deadline)
+    return None if least is None else least | required
 
 
 def _weightings(effect: Effect, known: int, *, required: int = 0, allowed: int) -> Separators:
@@ -140,27 +147,11 @@ def _weightings(effect: Effect, known: int, *, required: int = 0, allowed: int) 
     relevant = ancestors(graph, selected | effect.outcomes)
     usable = known & ~selected
     given = required & usable & relevant
-    return Separators(graph, selected, effect.outcomes, required=given, allowed=allowed & usable)
+    # Weightings near the outcomes come first: what else carries the effect seldom makes them superfluous.
+    return Separators(graph, effect.outcomes, selected, required=given, allowed=allowed & usable)
 
 
-def _by_weighting(
-    effect: Effect, known: int, deadline: Deadline, required: int, allowed: int
-) -> Iterator[tuple[int, Separators]]:
-    """Each minimal weighting, and the sets that hold it and carry the effect among the rows kept."""
-    weightings = _weightings(effect, known, required=required, allowed=effect.usable & allowed)
-    for weight in weightings.every_minimal(deadline):
-        bounded = valid_sets(effect, required=required | weight, allowed=allowed)
-        if bounded is not None:
-            yield weight, bounded
-
-
-def _is_minimal(effect: Effect, found: int, known: int, spare: int) -> bool:
-    """Is no column of the weighting one too many? The others are needed beside it as they are."""
-    return not any(recovers(effect, found & ~(1 << node), known) for node in members(spare))
-
-
-def _amount(effect: Effect, columns: int, prefer: Literal["smallest", "cheapest"]) -> Fraction:
-    if prefer == "smallest":
-        return Fraction(columns.bit_count())
-    graph = effect.kept.graph
-    return sum((Fraction(graph.cost(node)) for node in members(columns)), Fraction(0))
+def _joint(effect: Effect, known: int, bounded: Separators, required: int) -> JointCuts:
+    """Recovering sets as the sets that cut treatments, and by known columns the selection, from outcomes."""
+    weightings = _weightings(effect, known, required=required, allowed=bounded.allowed)
+    return JointCuts((Cut.of(weightings), Cut.of(bounded)))
