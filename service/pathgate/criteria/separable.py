@@ -51,7 +51,7 @@ class Pairs:
         blocked = [0] * graph.size
         for other in members(self.columns & ~(1 << node)):
             # Lane y stands for the pair of node and y, and y is not conditioned on in its own lane.
-            lanes = later if always >> other & 1 else self._below[other] & later
+            lanes = later if always >> other & 1 else self.below[other] & later
             blocked[other] = lanes & ~(1 << other)
         for conditioned in members(self.kept.conditioned):
             blocked[conditioned] = later
@@ -102,7 +102,7 @@ class Pairs:
         return ancestors(self.kept.graph, self.kept.conditioned)
 
     @cached_property
-    def _below(self) -> list[int]:
+    def below(self) -> list[int]:
         """For each node itself and its descendants."""
         graph = self.kept.graph
         below = [1 << node for node in range(graph.size)]
