@@ -138,8 +138,8 @@ FIRST_EXAMPLES = {operation.path: operation.examples[0].request for operation in
 @pytest.mark.parametrize(("path", "request_body"), EXAMPLES)
 def test_a_wrong_value_at_any_place_is_refused_or_answered(service, path, request_body):
     for place in places(request_body):
-        # Every operation reads its graph in the same way, so one example of each is spoilt there.
-        if place[0] != "graph" or request_body is FIRST_EXAMPLES[path]:
+        # Every operation reads its graphs in the same way, so one example of each is spoilt there.
+        if place[0] not in ("graph", "other") or request_body is FIRST_EXAMPLES[path]:
             for wrong in WRONG:
                 check_refusal(service.post(path, changed(request_body, place, wrong)))
 
@@ -147,7 +147,8 @@ def test_a_wrong_value_at_any_place_is_refused_or_answered(service, path, reques
 @pytest.mark.parametrize(("path", "request_body"), EXAMPLES)
 def test_an_unknown_member_beside_any_known_one_of_the_envelope_is_refused(service, path, request_body):
     for place in places(request_body):
-        in_free_object = place[:2] in (("graph", "nodes"), ("graph", "edges"), ("graph", "graph"))
+        in_graph = place[0] in ("graph", "other")
+        in_free_object = in_graph and place[1:2] in (("nodes",), ("edges",), ("graph",))
         if isinstance(place[-1], str) and not in_free_object and "meta" not in place:
             beside = (*place[:-1], "no_such_member")
             reply = service.post(path, changed(request_body, beside, 1))
@@ -197,3 +198,16 @@ def test_what_comes_after_more_faults_than_are_looked_for_is_not_taken_for_sound
     reply = service.post(path, {"graph": TINY_GRAPH, **members})
     assert reply.status_code == 422
     assert json.loads(reply.data)["errors_omitted"] == 10_000 - 100
+
+
+def test_of_a_hundred_thousand_misspelt_names_only_the_first_are_given_hints(service):
+    nodes = [f"locker_{number:05}" for number in range(20_000)]
+    edges = [{"source": f"lokcer_{number:05}", "target": "x"} for number in range(50_000)]
+    covariates = [f"lokcer_{number:05}" for number in range(100_000)]
+    config = {"treatment": nodes[0], "outcome": nodes[1], "covariates": covariates}
+    for more in ({"edges": edges}, {"edges": []}):
+        reply = service.post("/v1/review", {"graph": {"nodes": nodes, **more}, "config": config})
+        problem = json.loads(reply.data)
+        assert problem["errors_omitted"] >= 99_900
+        assert "did you mean" in problem["errors"][0]["detail"]
+        assert "did you mean" not in problem["errors"][-1]["detail"]

@@ -6,7 +6,7 @@ them, or to read the few members most edges lack.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping, Sequence, Sized
 from dataclasses import dataclass, field
 from operator import itemgetter
 from typing import Any
@@ -16,7 +16,7 @@ import numpy as np
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import Edge
 from pathgate.graphs.masks import BoolArray, IntArray
-from pathgate.graphs.names import did_you_mean, quoted
+from pathgate.graphs.names import hint_within, quoted
 from pathgate.graphs.node_list import NodeList, check_attributes, json_type, name_fault
 
 EDGE_MEMBERS = ("source", "target", "kind", "doubtful", "note", "key")
@@ -96,7 +96,7 @@ def _as_columns(places: IntArray, sources: list[int], targets: list[int], kinds:
 def _columns_one_by_one(values: Sequence[object], nodes: NodeList, faults: list[Fault]) -> _Columns:
     good: list[tuple[int, int, int, str]] = []
     for place, value in enumerate(values):
-        wrong = _edge_faults(place, value, nodes)
+        wrong = _edge_faults(place, value, nodes, faults)
         faults.extend(wrong)
         if not wrong and isinstance(value, dict):
             ends = nodes.index[value["source"]], nodes.index[value["target"]]
@@ -107,7 +107,7 @@ def _columns_one_by_one(values: Sequence[object], nodes: NodeList, faults: list[
     )
 
 
-def _edge_faults(place: int, value: object, nodes: NodeList) -> list[Fault]:
+def _edge_faults(place: int, value: object, nodes: NodeList, before: Sized) -> list[Fault]:
     at: tuple[str | int, ...] = ("edges", place)
     if not isinstance(value, dict):
         return [
@@ -115,7 +115,7 @@ def _edge_faults(place: int, value: object, nodes: NodeList) -> list[Fault]:
                 "invalid-request", at, f"an edge is an object with source and target, not {json_type(value)}"
             )
         ]
-    wrong = [fault for end in ("source", "target") for fault in _end_faults(at, end, value, nodes)]
+    wrong = [fault for end in ("source", "target") for fault in _end_faults(at, end, value, nodes, before)]
     kind = value.get("kind", "directed")
     if kind not in KINDS:
         wrong.append(Fault("invalid-request", (*at, "kind"), '"kind" is "directed" or "bidirected"'))
@@ -123,7 +123,7 @@ def _edge_faults(place: int, value: object, nodes: NodeList) -> list[Fault]:
 
 
 def _end_faults(
-    at: tuple[str | int, ...], end: str, value: Mapping[str, object], nodes: NodeList
+    at: tuple[str | int, ...], end: str, value: Mapping[str, object], nodes: NodeList, before: Sized
 ) -> list[Fault]:
     if end not in value:
         return [Fault("invalid-request", at, f'an edge needs the member "{end}"')]
@@ -133,7 +133,7 @@ def _end_faults(
         return [fault]
     if name in nodes.index:
         return []
-    detail = f"no node is declared as {quoted(str(name))}{did_you_mean(str(name), nodes.names)}"
+    detail = f"no node is declared as {quoted(str(name))}{hint_within(before, str(name), nodes.names)}"
     return [Fault("unknown-node", (*at, end), detail, (str(name),), rule="undeclared-node")]
 
 

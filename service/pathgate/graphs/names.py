@@ -6,7 +6,8 @@ against 20,000.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterable
+from collections.abc import Collection, Iterable, Sized
+from itertools import chain
 
 from rapidfuzz import process
 from rapidfuzz.distance import OSA, Levenshtein
@@ -15,6 +16,8 @@ from rapidfuzz.distance import OSA, Levenshtein
 MISSPELT_WITHIN = 2
 # … of names long enough that so few letters cannot turn one honest word into another.
 MISSPELT_FROM_LENGTH = 6
+# Faults of one input that are found before hints are no longer looked for.
+MOST_HINTS = 50
 
 
 def nearest_names(name: str, known: Collection[str], *, most: int = 3) -> tuple[str, ...]:
@@ -36,6 +39,14 @@ def did_you_mean(name: str, known: Collection[str]) -> str:
     """`` (did you mean "a" or "b"?)``, or nothing where no known name is near."""
     near = nearest_names(name, known)
     return f" (did you mean {' or '.join(quoted(other) for other in near)}?)" if near else ""
+
+
+def hint_within(faults: Sized, name: str, *known: Collection[str]) -> str:
+    """The same for one more fault of an input, as long as few have been found.
+
+    Past ``MOST_HINTS`` faults nobody reads hints any more, and a hundred thousand would take minutes.
+    """
+    return did_you_mean(name, [*chain(*known)]) if len(faults) < MOST_HINTS else ""
 
 
 def misspelt_member(name: str, known: Iterable[str]) -> str | None:

@@ -6,14 +6,14 @@ Names are checked as a set; only nodes that carry more than a name are visited o
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence, Sized
 from dataclasses import dataclass, field
 from operator import itemgetter
 from typing import Any, NamedTuple
 
 from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.masks import mask_of
-from pathgate.graphs.names import did_you_mean, misspelt_member, quoted
+from pathgate.graphs.names import did_you_mean, hint_within, misspelt_member, quoted
 
 NODE_MEMBERS = ("id", "measured", "cost", "recorded", "constant_within", "columns")
 MAX_NAME = 200
@@ -160,7 +160,7 @@ def _read_attributes(values: Sequence[object], nodes: NodeList, faults: list[Fau
         "measured": lambda node, said: _read_measured(node, said, unmeasured),
         "cost": lambda node, said: _read_cost(node, said, nodes),
         "recorded": lambda node, said: _read_recorded(node, said, nodes),
-        "constant_within": lambda node, said: _read_constant_within(node, said, nodes),
+        "constant_within": lambda node, said: _read_constant_within(node, said, nodes, faults),
         "columns": lambda node, said: _read_aliases(node, said, nodes),
     }
     for member, reader in readers.items():
@@ -214,7 +214,7 @@ def _read_recorded(node: int, said: object, nodes: NodeList) -> Iterable[_Wrong]
     return ()
 
 
-def _read_constant_within(node: int, said: object, nodes: NodeList) -> Iterable[_Wrong]:
+def _read_constant_within(node: int, said: object, nodes: NodeList, before: Sized) -> Iterable[_Wrong]:
     if not isinstance(said, list):
         yield _Wrong('"constant_within" is a list of names')
         return
@@ -225,7 +225,7 @@ def _read_constant_within(node: int, said: object, nodes: NodeList) -> Iterable[
         elif name in nodes.index:
             found[nodes.index[name]] = None
         else:
-            detail = f"no node is declared as {quoted(name)}{did_you_mean(name, nodes.names)}"
+            detail = f"no node is declared as {quoted(name)}{hint_within(before, name, nodes.names)}"
             yield _Wrong(detail, (place,), "unknown-node", "undeclared-node")
     nodes.constant_within[node] = tuple(found)
 

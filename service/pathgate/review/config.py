@@ -11,7 +11,7 @@ from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
-from pathgate.graphs.names import did_you_mean, quoted
+from pathgate.graphs.names import hint_within, quoted
 from pathgate.review.errors import InvalidConfig
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.review.shape import Shape, are_cut_off
@@ -119,8 +119,9 @@ def understand_ends(
     """The treatments and the outcomes that the members of those names mean; they must not share a column."""
     treatments = names.read(value.get("treatment", []), ("treatment",))
     outcomes = names.read(value.get("outcome", []), ("outcome",))
+    treated = {treatment.node for treatment in treatments}
     for outcome in outcomes:
-        if any(outcome.node == treatment.node for treatment in treatments):
+        if outcome.node in treated:
             name = names.graph.name(outcome.node)
             detail = f"{quoted(name)} cannot be both treatment and outcome"
             names.faults.append(Fault("invalid-request", outcome.place, detail, (name,)))
@@ -164,8 +165,9 @@ class NameReader:
         for name, at in listed:
             node = self.find(name)
             if node is None:
-                known = (*self.graph.names, *self.graph.aliases) if self.by_alias else self.graph.names
-                detail = f"no node is named {quoted(name)}{did_you_mean(name, known)}"
+                aliases = self.graph.aliases if self.by_alias else ()
+                hint = hint_within(self.faults, name, self.graph.names, aliases)
+                detail = f"no node is named {quoted(name)}{hint}"
                 self.faults.append(Fault("unknown-node", at, detail, (name,)))
             elif node not in found:
                 found[node] = Named(node, at)
