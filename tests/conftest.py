@@ -7,8 +7,13 @@ from contextlib import AbstractContextManager, contextmanager
 from typing import Any
 
 import pytest
+from hypothesis import settings
 
 from pathgate.graphs import CausalGraph, PathgateError
+
+# How long an example takes says more of the machine's other work than of the code.
+settings.register_profile("untimed", deadline=None)
+settings.load_profile("untimed")
 
 RaisesProblem = Callable[..., AbstractContextManager[None]]
 

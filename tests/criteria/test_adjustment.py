@@ -38,8 +38,8 @@ WORLDS = [
     pytest.param(range(300, 2500), id="2200", marks=pytest.mark.slow),
 ]
 DISCRETE = [
-    pytest.param(range(60), id="60"),
-    pytest.param(range(60, 300), id="240", marks=pytest.mark.slow),
+    pytest.param(range(40), id="40"),
+    pytest.param(range(40, 280), id="240", marks=pytest.mark.slow),
 ]
 
 

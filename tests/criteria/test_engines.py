@@ -39,7 +39,7 @@ def both_sizes(value: Graph) -> tuple[CausalGraph, CausalGraph]:
 
 
 def test_both_engines_find_the_same_nodes_whatever_blocks_and_opens():
-    for seed in range(400):
+    for seed in range(150):
         rng = random.Random(seed)
         small, large = both_sizes(random_graph(rng, rng.randint(1, 10), arrow=0.3, bidirected=0.15))
         starts, blocking = random_mask(rng, small, 0.2), random_mask(rng, small, 0.3)
@@ -48,7 +48,7 @@ def test_both_engines_find_the_same_nodes_whatever_blocks_and_opens():
 
 
 def test_both_engines_name_the_same_kin():
-    for seed in range(300):
+    for seed in range(100):
         rng = random.Random(seed)
         small, large = both_sizes(random_graph(rng, rng.randint(1, 10), arrow=0.3))
         nodes, avoided = random_mask(rng, small, 0.3), rng.choice([0, random_mask(rng, small, 0.3)])
@@ -58,7 +58,7 @@ def test_both_engines_name_the_same_kin():
 
 def test_both_engines_explain_a_separation_alike():
     seen: Counter[bool] = Counter()
-    for seed in range(300):
+    for seed in range(100):
         rng = random.Random(seed)
         value = random_graph(rng, rng.randint(2, 8), arrow=0.3, bidirected=0.15)
         small, large = both_sizes(value)
@@ -68,12 +68,12 @@ def test_both_engines_explain_a_separation_alike():
         sides = [small.mask(side) for side in (asked.x, asked.y, asked.given)]
         assert are_separated(large, *sides) is are_separated(small, *sides) is answer.separated, seed
         seen[answer.separated] += 1
-    assert min(seen.values()) > 60
+    assert min(seen.values()) > 20
 
 
 def test_both_engines_judge_adjustment_sets_alike():
     seen: Counter[bool] = Counter()
-    for seed in range(300):
+    for seed in range(100):
         rng = random.Random(seed)
         value = random_graph(rng, rng.randint(2, 8), arrow=0.3, bidirected=0.15)
         asked, parts = random_question(rng, value), random_parts(rng, value)
@@ -84,7 +84,7 @@ def test_both_engines_judge_adjustment_sets_alike():
             verdicts.append((is_valid(effect, graph.mask(asked.given)), valid_set(effect)))
         assert verdicts[0] == verdicts[1], seed
         seen[verdicts[0][0]] += 1
-    assert min(seen.values()) > 30
+    assert min(seen.values()) > 10
 
 
 def large_value(seed: int, *, size: int = SMALL + 500) -> Graph:
@@ -133,7 +133,7 @@ def test_on_a_large_graph_open_paths_exist_and_no_shorter_one_does(
     graph, plain = large
     undirected = plain.to_undirected()
     value = {"nodes": list(plain), "edges": [{"source": s, "target": t} for s, t in plain.edges]}
-    for seed in range(25):
+    for seed in range(8):
         rng = random.Random(seed)
         x, y = rng.sample(list(plain), 2)
         path = separation(graph, x, y).open_path

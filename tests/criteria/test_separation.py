@@ -28,8 +28,8 @@ from tests.strategies import (
 from tests.values import Graph, arrows_of, node_names, with_explicit_causes
 
 MANY = [
-    pytest.param(range(1000), id="1000"),
-    pytest.param(range(1000, 8000), id="7000", marks=pytest.mark.slow),
+    pytest.param(range(600), id="600"),
+    pytest.param(range(600, 6600), id="6000", marks=pytest.mark.slow),
 ]
 
 
@@ -82,7 +82,7 @@ def test_sets_bidirected_edges_and_unmeasured_nodes_agree_with_the_paths(seeds: 
 
 def test_networkx_agrees_on_larger_dags_and_on_explicit_common_causes():
     seen: Counter[bool] = Counter()
-    for seed in range(400):
+    for seed in range(250):
         rng = random.Random(seed)
         size = rng.randint(5, 12)
         value = random_graph(rng, size, arrow=1.6 / size, bidirected=rng.choice([0, 0.05]))
@@ -92,7 +92,7 @@ def test_networkx_agrees_on_larger_dags_and_on_explicit_common_causes():
         expected = networkx.is_d_separator(plain, set(asked.x), set(asked.y), set(asked.given))
         assert is_separated(read_graph(value), asked.x, asked.y, asked.given) is expected, seed
         seen[expected] += 1
-    assert min(seen.values()) > 60
+    assert min(seen.values()) > 30
 
 
 @st.composite

@@ -12,12 +12,12 @@ from tests.review.random_configs import random_config, review_of, reviewed
 from tests.values import as_set, graph_of, measured_names
 
 CONFIGS = [
-    pytest.param(range(800), id="800"),
-    pytest.param(range(800, 4800), id="4000", marks=pytest.mark.slow),
+    pytest.param(range(500), id="500"),
+    pytest.param(range(500, 4500), id="4000", marks=pytest.mark.slow),
 ]
 MEASURED = [
-    pytest.param(range(500), id="500"),
-    pytest.param(range(500, 2000), id="1500", marks=pytest.mark.slow),
+    pytest.param(range(250), id="250"),
+    pytest.param(range(250, 1500), id="1250", marks=pytest.mark.slow),
 ]
 
 

@@ -14,8 +14,8 @@ from tests.review.random_configs import random_config, review_of, reviewed
 from tests.values import arrows_of, measured_names
 
 CONFIGS = [
-    pytest.param(range(600), id="600"),
-    pytest.param(range(600, 3600), id="3000", marks=pytest.mark.slow),
+    pytest.param(range(400), id="400"),
+    pytest.param(range(400, 3000), id="2600", marks=pytest.mark.slow),
 ]
 
 

@@ -28,7 +28,7 @@ def view_of(operation: Operation, settings: Settings) -> Callable[[], Response]:
         # Time spent waiting for the body is the caller's; only what follows is computing.
         deadline = Deadline(settings.time_budget_seconds)
         value = read_json(body, settings.max_depth)
-        call = open_call(shape, value, settings, deadline)
+        call = open_call(operation, shape, value, settings, deadline)
         answer = operation.answer(call)
         call.refuse_faults()
         return json_reply(answer)

@@ -143,7 +143,7 @@ def _examples(operation: Operation, values: Sequence[Json]) -> Json:
 def _answer_to(operation: Operation, example: Example) -> Json:
     # Decoded from text, so that the operation cannot change the example it is asked about.
     request = json.loads(json.dumps(example.request))
-    call = open_call(envelope_shape(operation), request, Settings(), Deadline.never())
+    call = open_call(operation, envelope_shape(operation), request, Settings(), Deadline.never())
     answer = operation.answer(call)
     call.refuse_faults()
     return answer

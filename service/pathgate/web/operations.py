@@ -1,8 +1,8 @@
 """What an operation is, and one call of it: the question as it reached us, checked as far as its schema goes.
 
 An operation is declared once, as data: its two schemas are published and enforced, its examples are published
-and replayed. The graph, the one part of a request that can be large, is kept away from the schema library:
-reading it checks its shape in bulk.
+and replayed. Graphs, the one part of a request that can be large, are kept away from the schema library:
+reading them checks their shape in bulk.
 """
 
 from __future__ import annotations
@@ -46,7 +46,7 @@ class Operation:
         name: the last step of its path, kebab-case.
         summary: one line on what it is for.
         description: what it means exactly (Markdown).
-        request_schema: JSON Schema of the body; the graph in it is ``GRAPH_REFERENCE``.
+        request_schema: JSON Schema of the body; a member that is a graph is ``GRAPH_REFERENCE``.
         response_schema: JSON Schema of the answer.
         examples: at least one.
         answer: computes the answer, whose members leave in the order in which it holds them.
@@ -67,29 +67,44 @@ class Operation:
         """Where it is served."""
         return f"/v1/{self.name}"
 
+    @property
+    def graph_members(self) -> tuple[str, ...]:
+        """The members of a request that are graphs."""
+        parts = self.request_schema.get("properties", {}).items()
+        return tuple(member for member, part in parts if _is_graph(part))
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Call:
-    """One request to an operation, its envelope checked and its graph not yet read.
+    """One request to an operation, its envelope checked and its graphs not yet read.
 
     Attributes:
-        body: the members whose shape is right, without ``graph``; a member with a fault anywhere in it is
+        body: the members whose shape is right, without graphs; a member with a fault anywhere in it is
             left out, so that what is here can be used without looking twice.
-        graph: the value of the member ``graph`` as it came (None where ``has_graph`` is false).
-        has_graph: was there one? Where not, that is among the faults already.
+        graphs: the members that are graphs, as they came. Where one that is required is not among them,
+            that is among the faults already.
         faults: all that is wrong so far. Whoever reads on adds to it, and then calls ``refuse_faults``.
         settings: the limits in force.
         deadline: how much time there is.
-        whole: all of the body, faulty members included, without ``graph``.
+        whole: all of the body, faulty members included, without graphs.
     """
 
     body: Mapping[str, Any]
-    graph: Any
-    has_graph: bool
+    graphs: Mapping[str, Any]
     faults: list[Fault]
     settings: Settings
     deadline: Deadline
     whole: Mapping[str, Any]
+
+    @property
+    def graph(self) -> Any:
+        """The member ``graph`` as it came; None where ``has_graph`` is false."""
+        return self.graphs.get("graph")
+
+    @property
+    def has_graph(self) -> bool:
+        """Was there one?"""
+        return "graph" in self.graphs
 
     def is_sound(self, *place: str | int) -> bool:
         """No fault has been found at or below ``place``."""
@@ -114,13 +129,13 @@ class Call:
 
 
 def envelope_shape(operation: Operation) -> Shape:
-    """The shape of a request of ``operation`` whatever its graph, ready to check many."""
-    schema = _graph_taken_out(operation.request_schema)
-    components = {name: _graph_taken_out(each) for name, each in operation.components.items()}
+    """The shape of a request of ``operation`` whatever its graphs, ready to check many."""
+    schema = _graphs_taken_out(operation.request_schema)
+    components = {name: _graphs_taken_out(each) for name, each in operation.components.items()}
     return Shape({**schema, "components": {"schemas": components}})
 
 
-def open_call(shape: Shape, value: Any, settings: Settings, deadline: Deadline) -> Call:
+def open_call(operation: Operation, shape: Shape, value: Any, settings: Settings, deadline: Deadline) -> Call:
     """The call that a parsed body makes, its envelope checked against ``shape``.
 
     Raises:
@@ -128,17 +143,16 @@ def open_call(shape: Shape, value: Any, settings: Settings, deadline: Deadline) 
     """
     if not isinstance(value, dict):
         raise Refused(shape.faults(value))
-    whole = {member: said for member, said in value.items() if member != "graph"}
-    has_graph = "graph" in value
-    faults = shape.faults({**whole, "graph": None} if has_graph else whole)
+    graphs = {member: value[member] for member in operation.graph_members if member in value}
+    whole = {member: said for member, said in value.items() if member not in graphs}
+    faults = shape.faults({**whole, **dict.fromkeys(graphs)})
     if are_cut_off(faults):
         raise Refused(faults)
     faulty = {fault.place[0] for fault in faults if fault.place}
     body = {member: said for member, said in whole.items() if member not in faulty} if faulty else whole
     return Call(
         body=body,
-        graph=value.get("graph"),
-        has_graph=has_graph,
+        graphs=graphs,
         faults=faults,
         settings=settings,
         deadline=deadline,
@@ -146,12 +160,16 @@ def open_call(shape: Shape, value: Any, settings: Settings, deadline: Deadline) 
     )
 
 
-def _graph_taken_out(schema: Any) -> Any:
+def _graphs_taken_out(schema: Any) -> Any:
     """The schema with every reference to a graph replaced by "anything"."""
+    if _is_graph(schema):
+        return True
     if isinstance(schema, Mapping):
-        if schema.get("$ref") == GRAPH_REFERENCE["$ref"]:
-            return True
-        return {key: _graph_taken_out(each) for key, each in schema.items()}
+        return {key: _graphs_taken_out(each) for key, each in schema.items()}
     if isinstance(schema, list | tuple):
-        return [_graph_taken_out(each) for each in schema]
+        return [_graphs_taken_out(each) for each in schema]
     return schema
+
+
+def _is_graph(schema: Any) -> bool:
+    return isinstance(schema, Mapping) and schema.get("$ref") == GRAPH_REFERENCE["$ref"]

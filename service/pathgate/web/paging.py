@@ -63,7 +63,7 @@ def _until_expired(call: Call, items: Iterable[Any]) -> Iterator[Any]:
 
 def _request_digest(call: Call, operation: str) -> bytes:
     asked = {member: said for member, said in call.whole.items() if member not in ("limit", "cursor")}
-    canonical = msgspec.json.encode([operation, VERSION, asked, call.graph], order="deterministic")
+    canonical = msgspec.json.encode([operation, VERSION, asked, call.graphs], order="deterministic")
     return hashlib.sha256(canonical).digest()
 
 

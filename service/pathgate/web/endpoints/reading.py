@@ -1,4 +1,4 @@
-"""What endpoints share in reading a call: its graph within the limits, and the nodes its names mean."""
+"""What endpoints share in reading a call: its graphs within the limits, and the nodes its names mean."""
 
 from __future__ import annotations
 
@@ -12,32 +12,34 @@ from pathgate.web.operations import Call
 from pathgate.web.problems import Refused
 
 
-def examine(call: Call) -> Examined:
-    """The call's graph and its faults, which are not yet among those of the call.
+def examine(call: Call, member: str = "graph") -> Examined:
+    """The graph that a member holds and its faults, which are not yet among those of the call.
 
     Raises:
         Refused: the graph is over a limit; nothing else is looked at then.
     """
+    said = call.graphs[member]
+    called = "the graph" if member == "graph" else f'the graph "{member}"'
     over = [
-        Fault("over-limit", ("graph", member), f"the graph has {len(held):,} {member}; the limit is {most:,}")
-        for member, most in (("nodes", call.settings.max_nodes), ("edges", call.settings.max_edges))
-        if len(held := _list_in(call.graph, member)) > most
+        Fault("over-limit", (member, items), f"{called} has {len(held):,} {items}; the limit is {most:,}")
+        for items, most in (("nodes", call.settings.max_nodes), ("edges", call.settings.max_edges))
+        if len(held := _list_in(said, items)) > most
     ]
     if over:
         raise Refused(over)
     call.deadline.poll()
-    return examine_graph(call.graph)
+    return examine_graph(said)
 
 
-def graph_of(call: Call) -> CausalGraph:
-    """The call's graph; what is wrong with it is added to the call's faults.
+def graph_of(call: Call, member: str = "graph") -> CausalGraph:
+    """The graph that a member holds; what is wrong with it is added to the call's faults.
 
     Names can be looked up in it even where it has faults, so that all faults come in one answer.
     """
-    if not call.has_graph:
+    if member not in call.graphs:
         return CausalGraph.of()
-    examined = examine(call)
-    call.faults.extend(fault.below(("graph",)) for fault in examined.faults)
+    examined = examine(call, member)
+    call.faults.extend(fault.below((member,)) for fault in examined.faults)
     return examined.graph
 
 
