@@ -9,6 +9,7 @@ from typing import Any
 from uuid import UUID
 
 import pytest
+from gunicorn.http.errors import InvalidChunkSize
 
 from tests.http.conftest import TINY_GRAPH, TRIAL, Service, service_with
 
@@ -258,3 +259,28 @@ def test_two_operations_cannot_give_one_name_to_two_schemas():
 
 def _fields(operation: Any) -> dict[str, Any]:
     return {name: getattr(operation, name) for name in operation.__dataclass_fields__}
+
+
+class Garbled(BytesIO):
+    """A body sent in chunks that are none, as the server finds out while it is read."""
+
+    def read(self, *_size: Any) -> bytes:
+        raise InvalidChunkSize(b"zz")
+
+    readinto = read
+
+
+def test_chunks_that_are_none_are_the_callers_fault(trial):
+    assert "chunks" in problem(chunked(trial, Garbled()), "not-json", 400)["detail"]
+
+
+def test_a_body_shorter_than_declared_is_not_taken_for_whole_even_where_it_is_json(trial):
+    body = json.dumps(GOOD).encode()
+    environ = {
+        "wsgi.input": BytesIO(body),
+        "wsgi.input_terminated": True,
+        "CONTENT_LENGTH": str(len(body) + 1),
+    }
+    reply = trial.unchecked.post(PATH, content_type="application/json", environ_overrides=environ)
+    trial.check("POST", PATH, reply)
+    assert "ended before" in problem(reply, "not-json", 400)["detail"]

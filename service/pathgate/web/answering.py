@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 
 from flask import Response, request
+from gunicorn.http.errors import ParseException  # type: ignore[import-untyped]
 from werkzeug.exceptions import ClientDisconnected
 
 from pathgate.criteria.deadline import Deadline
@@ -46,8 +47,12 @@ def _read_body(limit: int) -> bytes:
         body = request.get_data(cache=False)
     except ClientDisconnected as error:
         raise _cut_short(timed_out=isinstance(error.__context__, TimeoutError)) from None
+    except ParseException:
+        raise _unreadable("the chunks that the body is sent in do not follow HTTP") from None
     if len(body) > limit:
         raise _too_large(limit)
+    if len(body) < (request.content_length or 0):
+        raise _cut_short(timed_out=False)
     return body
 
 
@@ -58,5 +63,8 @@ def _too_large(limit: int) -> Failed:
 def _cut_short(*, timed_out: bool) -> Failed:
     if timed_out:
         return Failed(Problem.of("request-timeout", "the body of the request did not arrive in time"))
-    detail = "the request ended before its body was complete"
+    return _unreadable("the request ended before its body was complete")
+
+
+def _unreadable(detail: str) -> Failed:
     return Failed(Problem.of("not-json", detail, line=1, column=1))

@@ -12,6 +12,7 @@ from types import MappingProxyType
 from typing import Any
 
 from pathgate.graphs.errors import Fault, PathgateError, pointer
+from pathgate.web.json_faults import LONGEST_NUMBER
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,7 +47,8 @@ _TYPES = (
         "The body could not be read as JSON (RFC 8259) in UTF-8; line and column say where reading stopped,"
         " counted from 1. Besides broken syntax, the service refuses what different readers would understand"
         " differently: a key that stands twice in one object, NaN and Infinity, numbers beyond the range of a"
-        " double or longer than 400 characters, lone surrogates, a byte order mark, and very deep nesting."
+        f" double or longer than {LONGEST_NUMBER} characters, lone surrogates, a byte order mark, and very"
+        " deep nesting."
         " Write the body with a JSON library, and send it unchanged.",
     ),
     ProblemType(
