@@ -211,3 +211,10 @@ def test_of_a_hundred_thousand_misspelt_names_only_the_first_are_given_hints(ser
         assert problem["errors_omitted"] >= 99_900
         assert "did you mean" in problem["errors"][0]["detail"]
         assert "did you mean" not in problem["errors"][-1]["detail"]
+
+
+def test_a_node_with_a_million_faults_is_told_the_first_hundred_thousand(service):
+    graph = {"nodes": [{"id": "locker", "columns": [1] * 1_000_000}], "edges": []}
+    problem = json.loads(service.post("/v1/graph-check", {"graph": graph}).data)
+    assert problem["errors_omitted"] == 100_000 - 100
+    assert problem["errors"][0]["pointer"] == "#/graph/nodes/0/columns/0"

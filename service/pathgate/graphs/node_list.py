@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Iterable, Sequence, Sized
 from dataclasses import dataclass, field
+from itertools import islice
 from operator import itemgetter
 from typing import Any, NamedTuple
 
@@ -17,6 +18,8 @@ from pathgate.graphs.names import did_you_mean, hint_within, misspelt_member, qu
 
 NODE_MEMBERS = ("id", "measured", "cost", "recorded", "constant_within", "columns")
 MAX_NAME = 200
+# Faults of one graph after which its attributes are no longer looked into: a list in one may be millions long.
+MOST_FAULTS = 100_000
 
 
 @dataclass(slots=True)
@@ -168,7 +171,8 @@ def _read_attributes(values: Sequence[object], nodes: NodeList, faults: list[Fau
             for place, value in enumerate(values):
                 if isinstance(value, dict) and member in value:
                     columns = (nodes.names[place],) if nodes.names[place] else ()
-                    for wrong in reader(place, value[member]):
+                    left = max(MOST_FAULTS - len(faults), 0)
+                    for wrong in islice(reader(place, value[member]), left):
                         at: Place = ("nodes", place, member, *wrong.within)
                         faults.append(Fault(wrong.slug, at, wrong.detail, columns, rule=wrong.rule))
     nodes.measured = ((1 << len(nodes.names)) - 1) & ~mask_of(unmeasured)
