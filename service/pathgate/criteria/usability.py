@@ -48,7 +48,11 @@ def unusable_columns(effect: Effect, deadline: Deadline) -> tuple[Unusable, ...]
     for node in members(choosable):
         blocked[node] = all_lanes if always >> node & 1 else lanes_below[node]
     joined = _joined_lanes(effect, blocked, all_lanes, deadline)
-    return tuple(_unusable(effect, candidates[lane]) for lane in members(joined))
+    found = []
+    for lane in members(joined):
+        deadline.poll()
+        found.append(_unusable(effect, candidates[lane]))
+    return tuple(found)
 
 
 def needed_columns(effect: Effect, deadline: Deadline) -> int:

@@ -69,7 +69,7 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
     findings = [
         *degenerate_findings(claim, config),
         *breaking_findings(claim, config, deadline),
-        *warning_findings(claim, config),
+        *warning_findings(claim, config, deadline),
     ]
     findings.sort(key=lambda finding: _GRAVITY[finding.severity])
     verdict = _verdict(claim, findings)

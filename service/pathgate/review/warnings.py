@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from pathgate.criteria.deadline import Deadline
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
@@ -11,17 +12,22 @@ from pathgate.review.findings import Finding
 from pathgate.review.wording import listed, part_text
 
 
-def warning_findings(claim: Claim, config: Config) -> Iterator[Finding]:
-    """Warnings on treatments, outcomes and filter; none of them changes the verdict."""
-    yield from _directions(claim, config)
-    yield from _treatments(claim, config)
+def warning_findings(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
+    """Warnings on treatments, outcomes and filter; none of them changes the verdict.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    yield from _directions(claim, config, deadline)
+    yield from _treatments(claim, config, deadline)
     yield from _filter(claim, config)
 
 
-def _directions(claim: Claim, config: Config) -> Iterator[Finding]:
+def _directions(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
     graph = claim.graph
     outcomes = listed(graph.names_of(claim.outcomes), "or")
     for treatment in config.treatments:
+        deadline.poll()
         name = graph.name(treatment.node)
         if not descendants(graph, 1 << treatment.node) & claim.outcomes:
             message = (
@@ -35,8 +41,10 @@ def _directions(claim: Claim, config: Config) -> Iterator[Finding]:
                 " any other number is bias or chance."
             )
             yield Finding("no-arrow", (name,), message, treatment.place)
-        for outcome in config.outcomes:
-            if ancestors(graph, 1 << treatment.node) >> outcome.node & 1:
+        earlier = ancestors(graph, 1 << treatment.node) & claim.outcomes
+        for outcome in config.outcomes if earlier else ():
+            if earlier >> outcome.node & 1:
+                deadline.poll()
                 names = graph.names_of(1 << treatment.node | 1 << outcome.node)
                 message = (
                     f"The outcome {listed([graph.name(outcome.node)])} is a cause of the treatment"
@@ -45,9 +53,10 @@ def _directions(claim: Claim, config: Config) -> Iterator[Finding]:
                 yield Finding("outcome-precedes-treatment", names, message, outcome.place)
 
 
-def _treatments(claim: Claim, config: Config) -> Iterator[Finding]:
+def _treatments(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
     graph = claim.graph
     for treatment in config.treatments:
+        deadline.poll()
         later = descendants(graph, 1 << treatment.node) & claim.treatments & ~(1 << treatment.node)
         if later:
             earlier, names = graph.name(treatment.node), graph.names_of(later)

@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from typing import Any
 
-from pathgate.criteria.adjustment import Effect, covariates_in, valid_set, valid_sets
-from pathgate.criteria.diagnosis import forbidden_nodes
-from pathgate.criteria.usability import needed_columns, unusable_columns
+from pathgate.criteria.populations import AmongKept, InEverybody, Population
+from pathgate.criteria.precision import most_precise
 from pathgate.demo import demo_graph
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
@@ -21,12 +19,20 @@ from pathgate.review.document import finding_document
 from pathgate.review.findings import Finding
 from pathgate.review.schema import ASKS, NAMES, SOME_NAMES
 from pathgate.review.warnings import warning_findings
-from pathgate.review.wording import arrow_text, listed
+from pathgate.web.endpoints.adjustment_words import (
+    forbidden_told,
+    measure_told,
+    not_recovered_told,
+    precision_told,
+    set_told,
+    unusable_told,
+)
 from pathgate.web.endpoints.reading import graph_of, mask_in, names_of
 from pathgate.web.endpoints.shared_schemas import (
     CURSOR,
     GRAPH,
     LIMIT,
+    MEASURE_NEXT,
     NAME_LIST,
     NEXT_PAGE,
     PATH_COMPONENTS,
@@ -42,23 +48,21 @@ def answer(call: Call) -> Json:
     names = names_of(call, graph)
     config = _question(call, names)
     required, excluded = mask_in(call, names, "require"), mask_in(call, names, "exclude")
+    known = mask_in(call, names, "measured_everywhere")
     _refuse_meaningless(call, graph, config, required, excluded)
     call.refuse_faults()
     claim = Claim.of(graph, config)
     effect = claim.effect_among(claim.parts)
-    found, page = _page(call, effect, required, ~excluded)
-    document: Json = {
-        "exists": bool(found) or valid_set(effect, required=required, allowed=~excluded) is not None,
-        "sets": [_set_document(graph, columns) for columns in found],
-        **page,
-    }
+    is_whole = call.body.get("population", "kept") == "whole"
+    population: Population = InEverybody(effect, known) if is_whole else AmongKept(effect)
+    document = _listed(call, population, required, ~excluded)
     if "check" in call.body:
-        document["check"] = _check(call, claim, config)
+        document["check"] = _check(call, claim, config, population)
     return document | {
-        "forbidden": _forbidden(call, effect),
-        "unusable": _unusable(call, effect),
-        "needed": list(graph.names_of(needed_columns(effect, call.deadline))),
-        "warnings": [_reason(finding) for finding in warning_findings(claim, config)],
+        "forbidden": forbidden_told(call.deadline, effect),
+        "unusable": unusable_told(call.deadline, population),
+        "needed": list(graph.names_of(population.needed(call.deadline))),
+        "warnings": [_reason(finding) for finding in warning_findings(claim, config, call.deadline)],
     }
 
 
@@ -85,61 +89,56 @@ def _refuse_meaningless(call: Call, graph: CausalGraph, config: Config, required
     for node in members(required & ~graph.measured):
         detail = f"{quoted(graph.name(node))} is marked as unmeasured and cannot be required"
         call.faults.append(Fault("invalid-request", ("require",), detail, (graph.name(node),)))
+    if call.body.get("population") == "whole":
+        if config.asks == "direct":
+            detail = "a direct effect is judged among the rows kept only"
+            call.faults.append(Fault("invalid-request", ("population",), detail))
+        if call.body.get("prefer") == "most-precise":
+            detail = "the most precise set is known for the effect among the rows kept only"
+            call.faults.append(Fault("invalid-request", ("prefer",), detail))
+    elif "measured_everywhere" in call.body:
+        detail = 'what is measured everywhere matters for "population": "whole" only'
+        call.faults.append(Fault("invalid-request", ("measured_everywhere",), detail))
+    if config.asks == "direct" and call.body.get("prefer") == "most-precise":
+        detail = "there is no theory of the most precise set for a direct effect"
+        call.faults.append(Fault("invalid-request", ("prefer",), detail))
     for node in members(required & excluded):
         detail = f"{quoted(graph.name(node))} is both required and excluded"
         call.faults.append(Fault("invalid-request", ("exclude",), detail, (graph.name(node),)))
 
 
-def _page(call: Call, effect: Effect, required: int, allowed: int) -> tuple[list[int], dict[str, Any]]:
-    """The sets of this page; of every minimal set, the smallest of a page come first."""
-    bounded = valid_sets(effect, required=required, allowed=allowed)
+def _listed(call: Call, population: Population, required: int, allowed: int) -> Json:
+    """Does any set exist, and those of this page; where none exists, what to measure."""
     prefer = call.body.get("prefer", "every-minimal")
+    extra: Json = {}
     if prefer == "every-minimal":
-
-        def minimal() -> Iterator[int]:
-            if bounded is not None:
-                yield from (
-                    covariates_in(effect, each, required) for each in bounded.every_minimal(call.deadline)
-                )
-
-        found, page = page_of(call, "adjustment", minimal())
-        return sorted(found, key=lambda columns: (columns.bit_count(), list(members(columns)))), page
-    best = None if bounded is None else bounded.smallest() if prefer == "smallest" else bounded.cheapest()
-    return ([] if best is None else [covariates_in(effect, best, required)]), {"complete": True}
-
-
-def _set_document(graph: CausalGraph, columns: int) -> Json:
-    cost = sum(graph.cost(node) for node in members(columns))
-    return {"columns": list(graph.names_of(columns)), "cost": cost}
-
-
-def _forbidden(call: Call, effect: Effect) -> list[Json]:
-    told = []
-    for found in forbidden_nodes(effect, effect.forbidden & ~effect.outcomes):
-        call.deadline.poll()
-        name = effect.kept.graph.name(found.node)
-        if name:
-            drawn = arrow_text(effect.kept, found.causal_path, 0)
-            above = listed([effect.kept.graph.name(found.descends_from)])
-            lies = "lies on" if found.is_on_path else f"is a consequence of {above} on"
-            told.append({"column": name, "why": f"{lies} the causal path {drawn}"})
-    return told
+        every = population.every_minimal(call.deadline, required=required, allowed=allowed)
+        found, page = page_of(call, "adjustment", every)
+        found.sort(key=lambda columns: (columns.bit_count(), list(members(columns))))
+    elif prefer == "most-precise":
+        best = most_precise(population.effect, call.deadline, required=required, allowed=allowed)
+        found, page = list(best.sets), {"complete": True}
+        extra = {"uniform": best.uniform, "every_candidate": best.complete}
+    else:
+        least = population.least(prefer, call.deadline, required=required, allowed=allowed)
+        found, page = [] if least is None else [least], {"complete": True}
+    exists = bool(found) or population.one(required=required, allowed=allowed) is not None
+    if not exists:
+        extra["measure_next"] = measure_told(
+            population.effect.kept.graph,
+            population.measure_next(call.deadline, required=required, allowed=allowed),
+        )
+    sets = [set_told(population.effect.kept.graph, columns) for columns in found]
+    return {"exists": exists, "sets": sets, **page, **extra}
 
 
-def _unusable(call: Call, effect: Effect) -> list[Json]:
-    told = []
-    for found in unusable_columns(effect, call.deadline):
-        call.deadline.poll()
-        drawn = arrow_text(effect.kept, found.opens, 1 << found.node)
-        name = effect.kept.graph.name(found.node)
-        why = f"adjusting for it opens the path {drawn}, whatever else is adjusted for"
-        told.append({"column": name, "why": why})
-    return told
-
-
-def _check(call: Call, claim: Claim, config: Config) -> Json:
+def _check(call: Call, claim: Claim, config: Config, population: Population) -> Json:
     findings = [*degenerate_findings(claim, config), *breaking_findings(claim, config, call.deadline)]
-    return {"valid": not findings, "reasons": [_reason(finding) for finding in findings]}
+    reasons = [_reason(finding) for finding in findings]
+    if not findings and not population.carries(claim.covariates):
+        reasons = [not_recovered_told(population, claim.covariates)]
+    notes = precision_told(population.effect, claim.covariates) if not reasons else []
+    return {"valid": not reasons, "reasons": reasons, "precision": notes}
 
 
 def _reason(finding: Finding) -> Json:
@@ -185,7 +184,10 @@ OPERATION = Operation(
         " `check` asks whether exactly this set is valid, with every reason why not. `forbidden` lists the nodes"
         " that no valid set can hold because they lie on causal paths or descend from them, `unusable` the"
         " other measured columns that no valid set holds, `needed` those that every valid set holds; these three"
-        " depend neither on `require` nor on `exclude`. `selected_on` says which rows are kept."
+        " depend neither on `require` nor on `exclude`. `selected_on` says which rows are kept; `population` whose"
+        " effect is meant. `most-precise` lists the set of least large-sample variance (in linear models), or the"
+        " candidates where that depends on unknown strengths. Where no set exists, `measure_next` says what"
+        " measuring would make one."
     ),
     request_schema={
         "type": "object",
@@ -198,8 +200,19 @@ OPERATION = Operation(
             "require": {**NAMES, "description": "columns that every set listed must hold"},
             "exclude": {**NAMES, "description": "columns that no set listed may hold"},
             "selected_on": SELECTED_ON,
+            "population": {
+                "enum": ["kept", "whole"],
+                "default": "kept",
+                "description": "whose effect: that of the rows kept, or that of everybody recovered from them by"
+                " adjusting (total effects only)",
+            },
+            "measured_everywhere": {
+                **NAMES,
+                "description": "columns whose joint distribution over everybody is known, to recover the effect in"
+                " everybody with",
+            },
             "prefer": {
-                "enum": ["every-minimal", "smallest", "cheapest"],
+                "enum": ["every-minimal", "smallest", "cheapest", "most-precise"],
                 "default": "every-minimal",
                 "description": "which valid sets to list",
             },
@@ -208,7 +221,6 @@ OPERATION = Operation(
         },
         "required": ["graph", "treatment", "outcome"],
         "additionalProperties": False,
-        "x-not-yet": ["population", "measured_everywhere"],
     },
     response_schema={
         "type": "object",
@@ -227,14 +239,43 @@ OPERATION = Operation(
                 },
             },
             **NEXT_PAGE,
+            "uniform": {
+                "type": "boolean",
+                "description": "with most-precise: is the one set best whatever the strengths?",
+            },
+            "every_candidate": {
+                "type": "boolean",
+                "description": "with most-precise: false where the search for candidates had to stop early",
+            },
+            "measure_next": {
+                "description": "where no set exists: the cheapest unmeasured nodes and common causes behind"
+                " bidirected edges whose measuring would make one; null where none would",
+                "anyOf": [MEASURE_NEXT, {"type": "null"}],
+            },
             "check": {
                 "type": "object",
                 "description": "present where the request has check",
                 "properties": {
                     "valid": {"type": "boolean"},
                     "reasons": {"type": "array", "description": "none where valid", "items": _REASON},
+                    "precision": {
+                        "type": "array",
+                        "description": "for a valid set: columns that only raise the variance, or lower it",
+                        "items": {
+                            "type": "object",
+                            "properties": {
+                                "rule": {
+                                    "enum": ["raises-variance", "lowers-variance", "would-lower-variance"]
+                                },
+                                "columns": NAME_LIST,
+                                "message": {"type": "string"},
+                            },
+                            "required": ["rule", "columns", "message"],
+                            "additionalProperties": False,
+                        },
+                    },
                 },
-                "required": ["valid", "reasons"],
+                "required": ["valid", "reasons", "precision"],
                 "additionalProperties": False,
             },
             "forbidden": _TOLD,
