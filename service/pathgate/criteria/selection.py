@@ -12,6 +12,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, field
 
 from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.masks import mask_of
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -84,7 +85,4 @@ def keep_rows(graph: CausalGraph, parts: Iterable[Part] = ()) -> Kept:
     for part in listed:
         if part.fixed:
             part_of[part.columns.bit_length() - 1] = part
-    conditioned = 0
-    for node in part_of:
-        conditioned |= 1 << node
-    return Kept(extended, conditioned, listed, part_of)
+    return Kept(extended, mask_of(part_of), listed, part_of)
