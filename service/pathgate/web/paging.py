@@ -9,12 +9,13 @@ from __future__ import annotations
 import base64
 import binascii
 import hashlib
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from itertools import islice
 from typing import Any
 
 import msgspec
 
+from pathgate.criteria.errors import OutOfTime
 from pathgate.version import VERSION
 from pathgate.web.operations import Call
 from pathgate.web.problems import Failed, Problem
@@ -32,33 +33,39 @@ def page_of(call: Call, operation: str, items: Iterable[Any]) -> tuple[list[Any]
         Failed: the cursor was not made for this request.
         OutOfTime: the time ran out before the first item.
     """
+    return page_from(call, operation, lambda start: _after(call, items, start))
+
+
+def page_from(
+    call: Call, operation: str, listing: Callable[[int], Iterable[Any]]
+) -> tuple[list[Any], dict[str, Any]]:
+    """As ``page_of``, for a listing that passes over its first ``start`` items faster than it makes them."""
     limit = min(int(call.body.get("limit", DEFAULT_LIMIT)), call.settings.max_page)
     request = _request_digest(call, operation)
     start = _place_of(call.body["cursor"], request) if "cursor" in call.body else 0
     found: list[Any] = []
     was_cut = False
-    for item in islice(_until_expired(call, items), start, start + limit + 1):
-        if item is _CUT:
-            was_cut = True
-        else:
+    try:
+        for item in islice(listing(start), limit + 1):
             found.append(item)
-    if was_cut and not found:
-        call.deadline.poll()
+            call.deadline.poll()
+    except OutOfTime:
+        if not found:
+            raise
+        was_cut = True
     if len(found) <= limit and not was_cut:
         return found, {"complete": True}
     found = found[:limit]
     return found, {"complete": False, "cursor": _cursor(start + len(found), request)}
 
 
-_CUT = object()
-
-
-def _until_expired(call: Call, items: Iterable[Any]) -> Iterator[Any]:
-    for count, item in enumerate(items):
-        if count % 64 == 63 and call.deadline.expired:
-            yield _CUT
-            return
-        yield item
+def _after(call: Call, items: Iterable[Any], start: int) -> Iterator[Any]:
+    """The items from ``start`` on; the time is watched while those before are passed over."""
+    for place, item in enumerate(items):
+        if place >= start:
+            yield item
+        else:
+            call.deadline.poll()
 
 
 def _request_digest(call: Call, operation: str) -> bytes:

@@ -1,0 +1,58 @@
+"""Pages of a listing when the time runs out: before the first item, among them, and while passing over some."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Any
+
+import pytest
+
+from pathgate.criteria import Deadline, OutOfTime
+from pathgate.web.operations import Call
+from pathgate.web.paging import page_from, page_of
+from pathgate.web.settings import Settings
+
+
+def call_of(deadline: Deadline, **body: Any) -> Call:
+    return Call(body=body, graphs={}, faults=[], settings=Settings(), deadline=deadline, whole=body)
+
+
+def looking(times: int) -> Deadline:
+    """A deadline that comes after so many looks at the clock; making it takes the first."""
+    moments = iter([0.0] * (times + 1))
+    return Deadline(1, clock=lambda: next(moments, 2.0))
+
+
+def test_a_page_holds_what_was_found_in_time_and_the_rest_follows():
+    found, page = page_of(call_of(looking(3), limit=10), "trial", iter(range(8)))
+    assert found == [0, 1, 2, 3]
+    assert page["complete"] is False
+    rest, last = page_of(call_of(Deadline.never(), limit=10, cursor=page["cursor"]), "trial", iter(range(8)))
+    assert (found + rest, last) == (list(range(8)), {"complete": True})
+
+
+def test_time_that_runs_out_inside_the_listing_leaves_what_it_gave_before():
+    def listing() -> Iterator[int]:
+        yield from (0, 1)
+        raise OutOfTime(1)
+
+    found, page = page_of(call_of(Deadline.never()), "trial", listing())
+    assert (found, page["complete"]) == ([0, 1], False)
+
+
+def test_a_page_is_not_called_complete_where_time_runs_out_before_it_begins():
+    cursor = page_of(call_of(Deadline.never(), limit=500), "trial", iter(range(900)))[1]["cursor"]
+    with pytest.raises(OutOfTime):
+        page_of(call_of(looking(100), limit=500, cursor=cursor), "trial", iter(range(900)))
+
+
+def test_a_listing_that_can_begin_anywhere_is_told_where_to_begin():
+    starts = []
+
+    def listing(start: int) -> Iterator[int]:
+        starts.append(start)
+        return iter(range(start, 5))
+
+    first, page = page_from(call_of(Deadline.never(), limit=3), "trial", listing)
+    second, last = page_from(call_of(Deadline.never(), limit=3, cursor=page["cursor"]), "trial", listing)
+    assert (first, second, last, starts) == ([0, 1, 2], [3, 4], {"complete": True}, [0, 3])
