@@ -7,7 +7,7 @@ from typing import Any
 
 import pytest
 
-from pathgate.criteria import is_separated, is_valid, separation, valid_set
+from pathgate.criteria import Deadline, is_separated, is_valid, separation, tetrads, valid_set
 from pathgate.graphs import read_graph
 from tests.criteria.asking import effect_of
 from tests.published.cases import load_published, rows_of, selected_on
@@ -94,6 +94,16 @@ def test_minimal_separations_are_as_published():
             rest = [name for name in row["given"] if name != left_out]
             assert not is_separated(read, row["x"], row["y"], rest)
     assert rows
+
+
+def test_exactly_the_published_tetrads_are_listed():
+    by_case: dict[str, tuple[Graph, list[Any]]] = {}
+    for name, graph, row in rows_of("tetrads"):
+        by_case.setdefault(name, (graph, []))[1].append(row)
+    for graph, published in by_case.values():
+        found = tetrads(read_graph(graph), Deadline.never())
+        assert [[list(each.rows), list(each.columns)] for each in found] == published
+    assert by_case
 
 
 def test_as_many_dags_are_read_as_are_known_to_exist():

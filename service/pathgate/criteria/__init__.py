@@ -11,6 +11,7 @@ from pathgate.criteria.paths import OpenPath, Step, Trail, directed_path, find_o
 from pathgate.criteria.selection import Kept, Label, Part, keep_rows
 from pathgate.criteria.separation import Blocker, Separation, is_separated, separation
 from pathgate.criteria.separators import Separators
+from pathgate.criteria.tetrads import Tetrad, tetrads
 from pathgate.criteria.verdict import are_separated
 from pathgate.criteria.whole import (
     is_weightable,
@@ -41,6 +42,7 @@ __all__ = [
     "Separation",
     "Separators",
     "Step",
+    "Tetrad",
     "Trail",
     "are_separated",
     "colliders",
@@ -60,6 +62,7 @@ __all__ = [
     "recovers",
     "separated_each",
     "separation",
+    "tetrads",
     "total_effect",
     "valid_set",
     "weighting",
