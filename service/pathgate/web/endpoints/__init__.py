@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from pathgate.web.endpoints import adjustment, colliders, graph_check, review, separation
+from pathgate.web.endpoints import adjustment, colliders, constraints, graph_check, review, separation
 from pathgate.web.operations import Operation
 
 OPERATIONS: tuple[Operation, ...] = (
@@ -10,5 +10,6 @@ OPERATIONS: tuple[Operation, ...] = (
     adjustment.OPERATION,
     separation.OPERATION,
     colliders.OPERATION,
+    constraints.OPERATION,
     graph_check.OPERATION,
 )
