@@ -83,6 +83,14 @@ def _item_lines(item: Item, wrap: Wrap, *, colour: bool) -> Iterator[str]:
     for finding in item.review["findings"]:
         yield wrap("  ", f"{finding['severity']} {finding['rule']}: {visible(finding['message'])}")
     yield from (wrap("  ", line) for line in _remedy_lines(item.review["remedies"]))
+    yield from (wrap("  ", line) for line in _measuring_lines(item.review.get("measure_next")))
+
+
+def _measuring_lines(found: Json | None) -> Iterator[str]:
+    """What would have to be measured, where nothing that is measured will do."""
+    if found is not None:
+        causes = [f"what {first} and {second} have in common" for first, second in found["causes_of"]]
+        yield f"It could be answered if this were measured: {visible(', '.join([*found['measure'], *causes]))}."
 
 
 def _remedy_lines(remedies: list[Json]) -> Iterator[str]:

@@ -16,6 +16,9 @@ from pathgate.review.errors import InvalidConfig
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.review.shape import Shape, are_cut_off
 
+NO_META = object()
+"""Stands where a config has no ``meta``: null is something a config may say."""
+
 Asks = Literal["total", "direct"]
 
 
@@ -45,7 +48,7 @@ class Config:
         filter_parts: the conditions on the rows kept.
         row_filter_fixed: may no part of the filter be dropped?
         asks: the total effect, or the direct one.
-        meta: what the caller put there; None where nothing.
+        meta: what the caller put there, which may be None; ``NO_META`` where nothing.
         may_read_unmeasured: may conditions on the rows read unmeasured nodes? Not in a team's config.
     """
 
@@ -56,7 +59,7 @@ class Config:
     filter_parts: tuple[FilterPart, ...] = ()
     row_filter_fixed: bool = False
     asks: Asks = "total"
-    meta: object = None
+    meta: object = NO_META
     may_read_unmeasured: bool = False
 
 
@@ -109,7 +112,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         filter_parts=parts,
         row_filter_fixed=said.get("row_filter_fixed", False),
         asks=said.get("asks", "total"),
-        meta=said.get("meta"),
+        meta=said.get("meta", NO_META),
     )
 
 

@@ -4,10 +4,13 @@ from __future__ import annotations
 
 from typing import Any
 
+from pathgate.criteria.measuring import MeasureNext
 from pathgate.criteria.paths import OpenPath, Step
 from pathgate.criteria.selection import Label, Part
 from pathgate.graphs.errors import pointer
+from pathgate.graphs.graph import CausalGraph
 from pathgate.review.claims import Claim
+from pathgate.review.config import NO_META
 from pathgate.review.findings import Finding
 from pathgate.review.remedies import Remedy
 from pathgate.review.review import Review
@@ -30,7 +33,10 @@ def review_document(answer: Review) -> Json:
         "remedies": [remedy_document(claim, remedy) for remedy in answer.remedies],
         "cautions": [SOUND_MEANS, ABOUT_THE_GRAPH] if answer.verdict == "sound" else [ABOUT_THE_GRAPH],
     }
-    if answer.meta is not None:
+    if answer.verdict == "unanswerable":
+        found = answer.measure_next
+        document["measure_next"] = None if found is None else measure_document(claim.graph, found)
+    if answer.meta is not NO_META:
         document["meta"] = answer.meta
     return document
 
@@ -64,6 +70,14 @@ def remedy_document(claim: Claim, remedy: Remedy) -> Json:
         "drop_filter_parts": [part.written for part in remedy.drop_parts],
         "population": "kept",
         "message": remedy_text(claim, remedy),
+    }
+
+
+def measure_document(graph: CausalGraph, found: MeasureNext) -> Json:
+    """What to measure so that some choice of covariates would do."""
+    return {
+        "measure": list(graph.names_of(found.nodes)),
+        "causes_of": [[graph.name(first), graph.name(second)] for first, second in found.causes_of],
     }
 
 

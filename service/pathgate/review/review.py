@@ -11,11 +11,12 @@ from dataclasses import dataclass
 from typing import Literal
 
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.measuring import MeasureNext, measure_next
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
 from pathgate.review.breaks import breaking_findings
 from pathgate.review.claims import Claim
-from pathgate.review.config import Config
+from pathgate.review.config import NO_META, Config
 from pathgate.review.degenerate import degenerate_findings
 from pathgate.review.findings import Finding
 from pathgate.review.remedies import Remedy, find_remedies
@@ -38,6 +39,8 @@ class Review:
         findings: errors first, then warnings, each group in the order of the config.
         columns: role and advice for the columns of the config, its remedies and its open paths.
         remedies: fewest changes first; empty unless the verdict is ``biased``.
+        measure_next: where the verdict is ``unanswerable``, the cheapest that would have to be measured for some
+            choice to do; None where nothing helps.
         summary: the whole in one sentence.
     """
 
@@ -48,7 +51,8 @@ class Review:
     columns: tuple[ColumnRole, ...]
     remedies: tuple[Remedy, ...]
     summary: str
-    meta: object = None
+    measure_next: MeasureNext | None = None
+    meta: object = NO_META
 
 
 def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None) -> Review:
@@ -84,6 +88,7 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
         columns=column_roles(claim, columns, first, deadline, is_sound=verdict == "sound"),
         remedies=remedies,
         summary=summarise(claim, verdict, findings, first),
+        measure_next=_measure_next(claim, deadline) if verdict == "unanswerable" else None,
         meta=config.meta,
     )
 
@@ -92,6 +97,13 @@ def _verdict(claim: Claim, findings: list[Finding]) -> Verdict:
     if not any(finding.severity == "error" for finding in findings):
         return "sound"
     return "biased" if claim.can_be_carried else "unanswerable"
+
+
+def _measure_next(claim: Claim, deadline: Deadline) -> MeasureNext | None:
+    parts = claim.parts if claim.row_filter_fixed else ()
+    if claim.ends & ~claim.graph.measured or not all(map(claim.can_filter_by, parts)):
+        return None
+    return measure_next(claim.effect_among(parts), deadline)
 
 
 def _columns_in_question(claim: Claim, findings: list[Finding], remedies: tuple[Remedy, ...]) -> int:

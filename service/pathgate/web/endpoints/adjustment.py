@@ -50,20 +50,22 @@ def answer(call: Call) -> Json:
     required, excluded = mask_in(call, names, "require"), mask_in(call, names, "exclude")
     known = mask_in(call, names, "measured_everywhere")
     _refuse_meaningless(call, graph, config, required, excluded)
+    _refuse_combinations(call, config)
     call.refuse_faults()
     claim = Claim.of(graph, config)
     effect = claim.effect_among(claim.parts)
     is_whole = call.body.get("population", "kept") == "whole"
     population: Population = InEverybody(effect, known) if is_whole else AmongKept(effect)
-    document = _listed(call, population, required, ~excluded)
-    if "check" in call.body:
-        document["check"] = _check(call, claim, config, population)
-    return document | {
+    # What every page repeats comes first, so that a long listing may use up the rest of the time.
+    repeated: Json = {
         "forbidden": forbidden_told(call.deadline, effect),
         "unusable": unusable_told(call.deadline, population),
         "needed": list(graph.names_of(population.needed(call.deadline))),
         "warnings": [_reason(finding) for finding in warning_findings(claim, config, call.deadline)],
     }
+    if "check" in call.body:
+        repeated["check"] = _check(call, claim, config, population)
+    return _listed(call, population, required, ~excluded) | repeated
 
 
 def _question(call: Call, names: NameReader) -> Config:
@@ -89,6 +91,13 @@ def _refuse_meaningless(call: Call, graph: CausalGraph, config: Config, required
     for node in members(required & ~graph.measured):
         detail = f"{quoted(graph.name(node))} is marked as unmeasured and cannot be required"
         call.faults.append(Fault("invalid-request", ("require",), detail, (graph.name(node),)))
+    for node in members(required & excluded):
+        detail = f"{quoted(graph.name(node))} is both required and excluded"
+        call.faults.append(Fault("invalid-request", ("exclude",), detail, (graph.name(node),)))
+
+
+def _refuse_combinations(call: Call, config: Config) -> None:
+    """Refuse what nobody has an answer to."""
     if call.body.get("population") == "whole":
         if config.asks == "direct":
             detail = "a direct effect is judged among the rows kept only"
@@ -102,9 +111,6 @@ def _refuse_meaningless(call: Call, graph: CausalGraph, config: Config, required
     if config.asks == "direct" and call.body.get("prefer") == "most-precise":
         detail = "there is no theory of the most precise set for a direct effect"
         call.faults.append(Fault("invalid-request", ("prefer",), detail))
-    for node in members(required & excluded):
-        detail = f"{quoted(graph.name(node))} is both required and excluded"
-        call.faults.append(Fault("invalid-request", ("exclude",), detail, (graph.name(node),)))
 
 
 def _listed(call: Call, population: Population, required: int, allowed: int) -> Json:
@@ -137,7 +143,9 @@ def _check(call: Call, claim: Claim, config: Config, population: Population) -> 
     reasons = [_reason(finding) for finding in findings]
     if not findings and not population.carries(claim.covariates):
         reasons = [not_recovered_told(population, claim.covariates)]
-    notes = precision_told(population.effect, claim.covariates) if not reasons else []
+    # What is known of variances is about total effects among the rows that the model sees.
+    has_notes = not reasons and config.asks == "total" and isinstance(population, AmongKept)
+    notes = precision_told(population.effect, claim.covariates) if has_notes else []
     return {"valid": not reasons, "reasons": reasons, "precision": notes}
 
 

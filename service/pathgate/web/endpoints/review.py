@@ -13,7 +13,7 @@ from pathgate.review.roles import Advice, Role
 from pathgate.review.rules import RULES
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.web.endpoints.reading import graph_of
-from pathgate.web.endpoints.shared_schemas import GRAPH, NAME_LIST, PATH_COMPONENTS
+from pathgate.web.endpoints.shared_schemas import GRAPH, MEASURE_NEXT, NAME_LIST, PATH_COMPONENTS
 from pathgate.web.operations import Call, Example, Json, Operation
 
 
@@ -100,6 +100,11 @@ REVIEW: dict[str, Any] = {
             "type": "array",
             "description": "fewest changes first; each one, applied, reviews as sound",
             "items": {"$ref": "#/components/schemas/Remedy"},
+        },
+        "measure_next": {
+            "description": "where unanswerable: the cheapest unmeasured nodes and common causes behind bidirected"
+            " edges whose measuring would make some choice do; null where none would",
+            "anyOf": [MEASURE_NEXT, {"type": "null"}],
         },
         "cautions": {"type": "array", "items": {"type": "string"}},
         "meta": {"description": "the config's own meta"},

@@ -89,3 +89,17 @@ NEXT_PAGE: dict[str, Schema] = {
     "complete": {"type": "boolean", "description": "is this the last page?"},
     "cursor": {"type": "string", "description": "present where complete is false"},
 }
+
+MEASURE_NEXT: Schema = {
+    "type": "object",
+    "properties": {
+        "measure": {**NAME_LIST, "description": "unmeasured nodes"},
+        "causes_of": {
+            "type": "array",
+            "description": "the common cause behind each of these bidirected edges",
+            "items": {**NAME_LIST, "minItems": 2, "maxItems": 2},
+        },
+    },
+    "required": ["measure", "causes_of"],
+    "additionalProperties": False,
+}
