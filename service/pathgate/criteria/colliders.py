@@ -2,7 +2,8 @@
 
 A collider is a node with arrowheads from two distinct neighbours; conditioning on it or on a descendant of
 it opens it (Pearl 1988). A node with k neighbours above it has k(k-1)/2 of them, so they are generated one
-by one. Induced pairs take two reachability searches a node: O(nodes · (nodes + edges)).
+by one. Induced pairs take two reachability searches a node and a search for paths where they find any:
+O(nodes · (nodes + edges) log nodes).
 """
 
 from __future__ import annotations
@@ -12,7 +13,7 @@ from dataclasses import dataclass
 from itertools import combinations
 
 from pathgate.criteria.deadline import Deadline
-from pathgate.criteria.paths import find_open_path
+from pathgate.criteria.paths import Trail, find_open_paths
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import Kept
 from pathgate.graphs.graph import CausalGraph
@@ -85,9 +86,15 @@ def induced(kept: Kept, given: int, *, deadline: Deadline) -> Iterator[Induced]:
         deadline.poll()
         later = candidates >> (x + 1) << (x + 1)
         now = connected(graph, 1 << x, conditions) & later
-        for y in members(now & ~connected(graph, 1 << x, Conditions()) if now else 0):
-            deadline.poll()
-            yield Induced(graph.name(x), graph.name(y), _through(kept, x, y, conditions))
+        joined = now & ~connected(graph, 1 << x, Conditions()) if now else 0
+        if joined:
+            through = {
+                trail.nodes[-1]: _through(kept, trail)
+                for trail in find_open_paths(graph, 1 << x, joined, conditions)
+            }
+            for y in members(joined):
+                deadline.poll()
+                yield Induced(graph.name(x), graph.name(y), through[y])
 
 
 def _openers(kept: Kept, given: int, node: int) -> int:
@@ -102,8 +109,6 @@ def _are_adjacent(graph: CausalGraph, first: int, second: int) -> bool:
     return second in graph.neighbour_lists[first]
 
 
-def _through(kept: Kept, x: int, y: int, conditions: Conditions) -> tuple[str, ...]:
-    trail = find_open_path(kept.graph, 1 << x, 1 << y, conditions)
-    inner = trail.inner if trail else ()
-    named = (kept.graph.name(node) for node, role in inner if role == "collider")
+def _through(kept: Kept, trail: Trail) -> tuple[str, ...]:
+    named = (kept.graph.name(node) for node, role in trail.inner if role == "collider")
     return tuple(name for name in named if name)

@@ -78,9 +78,16 @@ def find_open_path(
 
     With ``fewest_colliders`` a path that needs no opened collider is preferred to any that does.
     """
+    return next(find_open_paths(graph, starts, ends, conditions, fewest_colliders=fewest_colliders), None)
+
+
+def find_open_paths(
+    graph: CausalGraph, starts: int, ends: int, conditions: Conditions, *, fewest_colliders: bool = False
+) -> Iterator[Trail]:
+    """The same for each of ``ends`` that there is an open path to, nearest first; one search for all."""
     per_collider = 2 * graph.size + 1 if fewest_colliders else 0
     passes, opens = _flags(graph, ~conditions.blocking), _flags(graph, conditions.opening)
-    starting, ending = _flags(graph, starts), _flags(graph, ends)
+    starting, awaited = _flags(graph, starts), bytearray(_flags(graph, ends))
     came_from: dict[int, tuple[int, Arrow]] = {}
     best = {2 * node: 0 for node in members(starts)}
     queue = [(0, state) for state in best]
@@ -89,8 +96,9 @@ def find_open_path(
         if length > best[state]:
             continue
         node, by_head = state >> 1, bool(state & 1)
-        if ending[node]:
-            return _trail(came_from, state)
+        if awaited[node]:
+            awaited[node] = False
+            yield _trail(came_from, state)
         may_pass = passes[node] or (starting[node] and not by_head)
         # Entered by an arrowhead and left against one, the node is a collider.
         may_turn = opens[node] if by_head else may_pass
@@ -100,7 +108,6 @@ def find_open_path(
                 best[reached] = total
                 came_from[reached] = (state, arrow)
                 heapq.heappush(queue, (total, reached))
-    return None
 
 
 def explain_path(kept: Kept, trail: Trail, openers: int) -> OpenPath:

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from itertools import islice
+from collections.abc import Iterator
 
-from pathgate.criteria.colliders import Collider, colliders, induced
+from pathgate.criteria.colliders import Collider, Induced, colliders, induced
+from pathgate.criteria.errors import OutOfTime
 from pathgate.criteria.selection import keep_rows
 from pathgate.review.config import read_parts
 from pathgate.web.endpoints.reading import graph_of, mask_in, names_of
@@ -31,18 +32,26 @@ def answer(call: Call) -> Json:
     kept = keep_rows(graph, (one.part for one in parts))
     listing = colliders(kept, given, columns=graph.everything)
     found, page = page_of(call, "colliders", listing)
-    joined = induced(kept, given, deadline=call.deadline)
-    shown = [
-        {"x": pair.x, "y": pair.y, "through": list(pair.through)}
-        for pair in islice(joined, call.settings.max_page + 1)
-    ]
-    is_all = len(shown) <= call.settings.max_page
+    joined, is_all = _as_far_as_allowed(call, induced(kept, given, deadline=call.deadline))
     return {
         "colliders": [_collider(each) for each in found],
-        "induced": shown[: call.settings.max_page],
+        "induced": [{"x": pair.x, "y": pair.y, "through": list(pair.through)} for pair in joined],
         "induced_complete": is_all,
         **page,
     }
+
+
+def _as_far_as_allowed(call: Call, pairs: Iterator[Induced]) -> tuple[list[Induced], bool]:
+    """The pairs found in time, up to the largest page, and whether these are all."""
+    found: list[Induced] = []
+    try:
+        for pair in pairs:
+            if len(found) == call.settings.max_page:
+                return found, False
+            found.append(pair)
+    except OutOfTime:
+        return found, False
+    return found, True
 
 
 def _collider(found: Collider) -> Json:
@@ -113,7 +122,7 @@ OPERATION = Operation(
             },
             "induced_complete": {
                 "type": "boolean",
-                "description": "false where there are more induced pairs than the operator's largest page",
+                "description": "false where the largest page or the time had no room for more induced pairs",
             },
             **NEXT_PAGE,
         },
