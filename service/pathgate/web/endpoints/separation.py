@@ -26,8 +26,7 @@ def answer(call: Call) -> Json:
     _refuse_too_many(call)
     graph = graph_of(call)
     names = names_of(call, graph)
-    statements = [_sets(names, ("statements", place), said) for place, said in call.sound_items("statements")]
-    sweeps = [_sets(names, ("sweeps", place), said) for place, said in call.sound_items("sweeps")]
+    statements, sweeps = (_read(call, names, member) for member in ("statements", "sweeps"))
     call.refuse_faults()
     document: Json = {"verdicts": _verdicts(call, graph, statements)}
     if "sweeps" in call.body:
@@ -49,6 +48,24 @@ def _refuse_too_many(call: Call) -> None:
 
 def _is_list(call: Call, member: str) -> bool:
     return isinstance(call.whole.get(member), list)
+
+
+def _read(call: Call, names: NameReader, member: str) -> list[Statement]:
+    """The statements or sweeps of a member; one with a fault is read as far as it goes, to find all its faults."""
+    if not _is_list(call, member):
+        return []
+    sound = dict(call.sound_items(member))
+    return [
+        _sets(names, (member, place), sound.get(place) or _sound_sides(call, member, place, said))
+        for place, said in enumerate(call.whole[member])
+    ]
+
+
+def _sound_sides(call: Call, member: str, place: int, said: Any) -> dict[str, Any]:
+    sides = (
+        {side: said[side] for side in ("x", "y", "given") if side in said} if isinstance(said, dict) else {}
+    )
+    return {side: named for side, named in sides.items() if call.is_sound(member, place, side)}
 
 
 def _sets(names: NameReader, place: tuple[str | int, ...], said: dict[str, Any]) -> Statement:
