@@ -14,6 +14,7 @@ from tests.bench.adjusting import checking_a_set, first_hundred_sets, first_set_
 from tests.bench.harness import Figure, table
 from tests.bench.in_process import many_statements, single_verdicts, whole_large_request
 from tests.bench.over_http import memory_after_a_large_request, small_review
+from tests.bench.promising import smallest_for_all_pairs
 
 BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "large-request": whole_large_request,
@@ -23,6 +24,7 @@ BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "hundred-sets": first_hundred_sets,
     "first-set": first_set_of_very_many,
     "check-a-set": checking_a_set,
+    "all-pairs": smallest_for_all_pairs,
     "memory": memory_after_a_large_request,
 }
 

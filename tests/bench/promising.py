@@ -1,0 +1,71 @@
+"""Figures of promised independencies."""
+
+from __future__ import annotations
+
+import json
+import random
+import statistics
+import time
+from collections.abc import Iterator
+from typing import Any
+
+import networkx as nx
+from flask.testing import FlaskClient
+
+from pathgate.criteria import Deadline, keep_rows
+from pathgate.criteria.independencies import separable_pairs
+from pathgate.criteria.separable import Pairs
+from pathgate.graphs import read_graph
+from pathgate.web.app import create_app
+from pathgate.web.settings import Settings
+from tests.bench.harness import Figure
+from tests.bench.worlds import body_of, graph_value, peer_graph, random_pairs
+
+SAMPLE = 400
+
+
+def smallest_for_all_pairs() -> Iterator[Figure]:
+    """A smallest statement for every pair of a 150-node DAG through HTTP, against networkx looped over the pairs.
+
+    The peer is asked about a sample of the pairs, in turn with our pages, and its time extrapolated.
+    """
+    arrows = random_pairs(150, 375)
+    value, peer = graph_value(150, arrows), peer_graph(150, arrows)
+    graph = read_graph(value)
+    pairs = list(separable_pairs(Pairs(keep_rows(graph)), Deadline.never()))
+    sample = random.Random(5).sample(pairs, SAMPLE)
+    client = create_app(Settings()).test_client()
+    ratios, ours, theirs = [], 0.0, 0.0
+    for turn in range(3):
+        part = sample[turn::3]
+        began = time.perf_counter()
+        for first, second in part:
+            nx.find_minimal_d_separator(peer, {graph.name(first)}, {graph.name(second)})
+        theirs = (time.perf_counter() - began) / len(part) * len(pairs)
+        began = time.perf_counter()
+        listed = _all_pages(client, value)
+        ours = time.perf_counter() - began
+        if listed != len(pairs):
+            raise RuntimeError(f"{listed} statements for {len(pairs)} pairs")
+        ratios.append(theirs / ours)
+    yield Figure(
+        what=f"smallest for all {len(pairs):,} pairs of 150 nodes, all pages",
+        peer="networkx's minimal separator, looped",
+        seen=statistics.median(ratios),
+        wanted=">= 10",
+        ours=ours,
+        theirs=theirs,
+    )
+
+
+def _all_pages(client: FlaskClient, value: dict[str, Any]) -> int:
+    count = 0
+    cursor: dict[str, str] = {}
+    while True:
+        body = body_of({"graph": value, "limit": 1000, **cursor})
+        answer = client.post("/v1/independencies", data=body, content_type="application/json")
+        document = json.loads(answer.get_data())
+        count += len(document["independencies"])
+        if document["complete"]:
+            return count
+        cursor = {"cursor": document["cursor"]}
