@@ -142,6 +142,35 @@ def test_with_every_node_measured_the_parents_of_causal_paths_are_best_and_found
     assert tried > 100
 
 
+def test_a_column_that_only_some_valid_sets_join_to_the_treatment_is_not_free_to_add_to_all():
+    # x → y, x ↔ o → d ↔ y, o ↔ c ↔ y: c is free to add to {} and makes {o, d} invalid
+    bows = [("x", "o"), ("d", "y"), ("o", "c"), ("c", "y")]
+    value = graph_of(("x", "y"), ("o", "d"), bidirected=bows)
+    effect = effect_of(value, "x", "y")
+    sets = (effect.kept.graph.mask("c"), effect.kept.graph.mask(["o", "d"]))
+    assert most_precise(effect, NEVER) == MostPrecise(uniform=False, sets=sets, complete=True)
+
+
+@pytest.mark.parametrize(
+    ("value", "required", "best"),
+    [
+        # x ← app ← region → y, x → y: region takes the place of app
+        (graph_of(("app", "x"), ("region", "app"), ("region", "y"), ("x", "y")), [], ["region"]),
+        # with w held anyway, m is free to add
+        (TRADE_OFF, ["w"], ["w", "m"]),
+        # i → x → y ← p: neither more nor less than p
+        (graph_of(("i", "x"), ("x", "y"), ("p", "y")), [], ["p"]),
+    ],
+)
+def test_without_time_to_search_the_set_named_is_still_one_that_no_step_improves(
+    value: Graph, required: list[str], best: list[str]
+):
+    effect = effect_of(value, "x", "y")
+    graph = effect.kept.graph
+    answer = most_precise(effect, Deadline(0), required=graph.mask(required))
+    assert answer == MostPrecise(uniform=False, sets=(graph.mask(best),), complete=False)
+
+
 def test_a_search_cut_short_says_so_and_names_a_valid_set_all_the_same():
     effect = effect_of(TRADE_OFF, "x", "y")
     late = most_precise(effect, Deadline(0))

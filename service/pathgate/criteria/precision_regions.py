@@ -139,7 +139,7 @@ def _bound_to_outcomes(effect: Effect, region: Region) -> int:
     while waiting:
         node, is_by_tail = waiting.pop()
         bit = 1 << node
-        if bit & (reached[is_by_tail] | effect.treatments):
+        if bit & reached[is_by_tail]:
             continue
         reached[is_by_tail] |= bit
         is_passed = not bit & sometimes
