@@ -118,16 +118,21 @@ def test_a_chunked_body_is_read_and_limited_as_well(trial):
 
 
 class Stalled(BytesIO):
-    """A body that never comes."""
+    """A body that never comes, as the server finds out while it is read."""
+
+    def __init__(self, error: type[OSError]) -> None:
+        super().__init__()
+        self.error = error
 
     def read(self, *_size: Any) -> bytes:
-        raise TimeoutError
+        raise self.error
 
     readinto = read
 
 
-def test_a_body_that_does_not_arrive_is_a_request_timeout(trial):
-    assert problem(chunked(trial, Stalled()), "request-timeout", 408)["retryable"] is True
+@pytest.mark.parametrize("error", [TimeoutError, BlockingIOError])
+def test_a_body_that_does_not_arrive_is_a_request_timeout(trial, error):
+    assert problem(chunked(trial, Stalled(error)), "request-timeout", 408)["retryable"] is True
 
 
 def test_a_body_that_ends_early_is_not_json(trial):

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import socket
+
 import pytest
 from gunicorn.config import KNOWN_SETTINGS, Config
 
+from pathgate.web import serving
 from pathgate.web.serving import gunicorn_options, serve
 from pathgate.web.settings import InvalidSettings
 
@@ -46,3 +49,24 @@ def test_settings_that_cannot_be_used_start_nothing(monkeypatch: pytest.MonkeyPa
     monkeypatch.setenv("PATHGATE_MAX_NODES", "many")
     with pytest.raises(InvalidSettings, match="PATHGATE_MAX_NODES"):
         serve("127.0.0.1:8123", 1)
+
+
+class Server:
+    """As much of gunicorn's master as the hook looks at."""
+
+    class Listener:
+        def __init__(self, sock: socket.socket) -> None:
+            self.sock = sock
+
+    def __init__(self, sock: socket.socket) -> None:
+        self.LISTENERS = [self.Listener(sock)]
+
+
+def test_no_connection_is_waited_for_for_ever(monkeypatch: pytest.MonkeyPatch):
+    monkeypatch.setattr(serving, "WAITING_SECONDS", 1)
+    with socket.create_server(("127.0.0.1", 0)) as listening:
+        configured().when_ready(Server(listening))
+        with socket.create_connection(listening.getsockname()):
+            stalled, _address = listening.accept()
+            with stalled, pytest.raises(BlockingIOError):
+                stalled.recv(1)

@@ -46,7 +46,7 @@ def _read_body(limit: int) -> bytes:
     try:
         body = request.get_data(cache=False)
     except ClientDisconnected as error:
-        raise _cut_short(timed_out=isinstance(error.__context__, TimeoutError)) from None
+        raise _cut_short(timed_out=isinstance(error.__context__, TimeoutError | BlockingIOError)) from None
     except ParseException:
         raise _unreadable("the chunks that the body is sent in do not follow HTTP") from None
     if len(body) > limit:

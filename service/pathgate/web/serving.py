@@ -8,6 +8,8 @@ port; each answers a few requests at a time in threads.
 from __future__ import annotations
 
 import os
+import socket
+import struct
 from pathlib import Path
 from typing import Any
 
@@ -17,6 +19,9 @@ from gunicorn.config import KNOWN_SETTINGS  # type: ignore[import-untyped]
 from pathgate.web.settings import Settings
 
 SHARED_MEMORY = Path("/dev/shm")  # noqa: S108 - gunicorn makes a file with a random name there
+
+# How long a thread waits for the next bytes of a client, and for a client to take the next ones of an answer.
+WAITING_SECONDS = 20
 
 
 def gunicorn_options(
@@ -50,6 +55,7 @@ def gunicorn_options(
         "forwarder_headers": "",
         "secure_scheme_headers": {},
         "proc_name": "pathgate",
+        "when_ready": _limit_waiting,
     }
     if SHARED_MEMORY.is_dir() and os.access(SHARED_MEMORY, os.W_OK):
         # A worker's sign of life is a file; on a disk it could stall, on a read-only root it could not be.
@@ -58,6 +64,17 @@ def gunicorn_options(
         # Newer releases open a socket in the home folder for their own command, which nothing here uses.
         options["control_socket_disable"] = True
     return options
+
+
+def _limit_waiting(server: Any) -> None:
+    """Have no thread wait for ever: a few clients that stall would stop the service.
+
+    gunicorn has no setting for it. Connections inherit these options from the sockets they are accepted on.
+    """
+    waiting = struct.pack("@ll", WAITING_SECONDS, 0)
+    for listener in server.LISTENERS:
+        for option in (socket.SO_RCVTIMEO, socket.SO_SNDTIMEO):
+            listener.sock.setsockopt(socket.SOL_SOCKET, option, waiting)
 
 
 def serve(bind: str, workers: int) -> None:
