@@ -13,12 +13,11 @@ from pathgate.criteria.independencies import (
     basis,
     basis_sets,
     every_minimal,
-    is_fully_measured,
     separable_pairs,
     sequential,
     smallest,
 )
-from pathgate.criteria.separable import Pairs
+from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.graphs import CausalGraph, read_graph
 from tests.brute import minimal_separators, separated, separating_sets, with_selection
 from tests.published.cases import load_published

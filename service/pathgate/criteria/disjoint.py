@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from pathgate.criteria.hubs import Cliques
+from pathgate.graphs.masks import mask_of, members
 
 # Stand for x and y where a path begins and ends.
 _X, _Y = -1, -2
@@ -28,8 +29,9 @@ def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, rem
         The set, or None where choosable nodes cannot part the two.
     """
     # A node next to both is a way through by itself: every such set holds it.
-    inevitable = cliques.around(xs) & cliques.around(ys) & choosable & ~removed
-    paths = _Paths(cliques, xs, ys, choosable & ~inevitable, removed | inevitable)
+    near_y = cliques.around(ys) & choosable & ~removed
+    inevitable = cliques.around(xs) & near_y
+    paths = _Paths(cliques, xs, ys, choosable & ~inevitable, removed | inevitable, near_y & ~inevitable)
     while (last := paths.search()) is not None:
         if last == _X:
             return None
@@ -42,9 +44,11 @@ class _Paths:
     """Paths from x to y no two of which share a choosable node, and what the last search for one more reached.
 
     Attributes:
+        next_to_y: the choosable nodes that share a clique with y.
         before, after: for each node on a path the choosable node before and after it there.
+        passed: the nodes on paths.
         entered, left: the nodes whose entry and whose exit the last search reached.
-        entry_from: for each node entered, the node whose exit led there.
+        entry_from: for each choosable node entered, the one whose exit led there.
         exit_from: for each node left, the node entered that led there: itself, or the next on a path taken back.
     """
 
@@ -53,47 +57,47 @@ class _Paths:
     ys: int
     choosable: int
     removed: int
+    next_to_y: int
     before: dict[int, int] = field(default_factory=dict)
     after: dict[int, int] = field(default_factory=dict)
+    passed: int = 0
     entered: int = 0
     left: int = 0
-    opened: int = 0
     entry_from: dict[int, int] = field(default_factory=dict)
     exit_from: dict[int, int] = field(default_factory=dict)
 
     def search(self) -> int | None:
         """Look for one more path; the last choosable node on it (``_X`` for none), or None where there is none."""
-        self.entered = self.xs | self.removed
-        self.left = self.opened = 0
         self.entry_from, self.exit_from = {}, {}
-        waiting = self._leave(self.xs, _X)
-        if self.entered & self.ys:
-            return _X
-        while waiting:
-            lowest = waiting & -waiting
+        self.left = opened = 0
+        entered, leaving = self.xs | self.removed, self.xs
+        # Who led to a node that lets any number of paths through: the last choosable one before it.
+        led_to = dict.fromkeys(members(self.xs), _X)
+        while leaving:
+            lowest = leaving & -leaving
+            leaving ^= lowest
             node = lowest.bit_length() - 1
-            waiting = (waiting ^ lowest) | self._leave(lowest, node)
-            if self.entered & self.ys:
-                return node
-        self.entered &= ~(self.xs | self.removed)
+            origin = led_to.get(node, node)
+            new_cliques, new = self.cliques.next_to(node, opened)
+            opened |= new_cliques
+            new &= ~entered
+            entered |= new
+            if new & self.ys:
+                return origin
+            fixed = new & ~self.choosable
+            leaving |= fixed
+            while fixed:
+                led_to[(fixed & -fixed).bit_length() - 1] = origin
+                fixed &= fixed - 1
+            leaving |= self._enter(new & self.choosable, origin)
+            arrived = self.left & self.next_to_y & ~self.passed
+            if arrived:
+                return (arrived & -arrived).bit_length() - 1
+        self.entered = entered
         return None
 
-    def _leave(self, nodes: int, origin: int) -> int:
-        """Go on from the exits of nodes; returns the choosable nodes whose exits that reaches for the first time."""
-        reached = 0
-        while nodes:
-            lowest = nodes & -nodes
-            nodes ^= lowest
-            unopened = self.cliques.of(lowest.bit_length() - 1) & ~self.opened
-            self.opened |= unopened
-            new = self.cliques.together(unopened) & ~self.entered
-            self.entered |= new
-            nodes |= new & ~self.choosable
-            reached |= self._enter(new & self.choosable, origin)
-        return reached
-
     def _enter(self, nodes: int, origin: int) -> int:
-        """Enter choosable nodes for the first time.
+        """Enter choosable nodes for the first time; returns those whose exits that reaches for the first time.
 
         A free node is passed. A node on a path lets no other through, but the path's way to it can be taken
         back: that leads to the exit of the node before it.
@@ -128,3 +132,4 @@ class _Paths:
             self.before[second] = first
         self.after.pop(_X, None)
         self.before.pop(_Y, None)
+        self.passed = mask_of(self.before)

@@ -150,6 +150,11 @@ class Cliques:
             found |= joint[clique] if clique in joint else parents[clique]
         return found
 
+    def next_to(self, node: int, opened: int) -> tuple[int, int]:
+        """The cliques of a node that are not opened yet, and the nodes in them."""
+        unopened = self.of(node) & ~opened
+        return unopened, self.together(unopened)
+
     def around(self, nodes: int) -> int:
         """Everything that shares a clique with one of the nodes."""
         found = 0

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.projection import latent_projection
-from pathgate.criteria.separable import Pairs
+from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.criteria.separators import Separators
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors, descendants
@@ -43,6 +43,8 @@ def separators_of(pairs: Pairs, first: int, second: int) -> Separators:
 
 def smallest(pairs: Pairs, first: int, second: int) -> Independency:
     """A statement for a separable pair with the fewest columns given."""
+    if not pairs.joined_alone(first) >> second & 1:
+        return Independency(first, 1 << second, 0)
     found = separators_of(pairs, first, second).smallest()
     if found is None:
         message = "a pair that can be separated has a smallest separating set"
@@ -108,11 +110,6 @@ def sequential(graph: CausalGraph) -> Iterator[Independency]:
                 yield Independency(node, 1 << other, given)
                 given |= 1 << other
         earlier.append(node)
-
-
-def is_fully_measured(graph: CausalGraph) -> bool:
-    """Every node measured and no bidirected edge."""
-    return graph.measured == graph.everything and not len(graph.lower_ends)
 
 
 def _boundaries(graph: CausalGraph, node: int, earlier: int, deadline: Deadline) -> Iterator[Independency]:

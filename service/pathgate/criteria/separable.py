@@ -9,16 +9,22 @@ O(nodes · (nodes + edges)) bit operations a node.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 from pathgate.criteria.batch import Lanes
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import Trail, find_open_path
-from pathgate.criteria.reachability import Conditions
+from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import Kept
+from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
 from pathgate.graphs.masks import members
+
+
+def is_fully_measured(graph: CausalGraph) -> bool:
+    """Every node measured and no bidirected edge."""
+    return graph.measured == graph.everything and not len(graph.lower_ends)
 
 
 @dataclass(frozen=True)
@@ -30,6 +36,7 @@ class Pairs:
     """
 
     kept: Kept
+    _joined: dict[int, int] = field(default_factory=dict, repr=False)
 
     @cached_property
     def columns(self) -> int:
@@ -45,8 +52,9 @@ class Pairs:
         graph = self.kept.graph
         later = self.columns >> (node + 1) << (node + 1)
         later &= ~self.adjacent(node)
-        if not later:
-            return 0
+        if not later or (is_fully_measured(graph) and not self.kept.conditioned):
+            # In a DAG all of whose nodes are measured, the parents of the two separate them.
+            return later
         always = self._above(node)
         blocked = [0] * graph.size
         for other in members(self.columns & ~(1 << node)):
@@ -67,6 +75,16 @@ class Pairs:
             later = self.columns >> (node + 1) << (node + 1)
             joined = later & ~self.adjacent(node) & ~self.separable(node, deadline)
             yield from ((node, other) for other in members(joined))
+
+    def joined_alone(self, node: int) -> int:
+        """The nodes that an open path joins to this one on the kept rows, with no column conditioned on."""
+        found = self._joined.get(node)
+        if found is None:
+            # Asked about pair by pair: the last node's answer is all that is worth keeping.
+            self._joined.clear()
+            conditions = Conditions.on(self.kept.graph, self.kept.conditioned)
+            found = self._joined[node] = connected(self.kept.graph, 1 << node, conditions)
+        return found
 
     def adjacent(self, node: int) -> int:
         """The nodes that an edge joins to this one."""

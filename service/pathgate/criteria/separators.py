@@ -19,7 +19,7 @@ from pathgate.criteria.cuts import cheapest_cut, smallest_cut
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.disjoint import fewest_nodes_between
 from pathgate.criteria.hubs import Cliques, Hubs
-from pathgate.criteria.verdict import are_separated
+from pathgate.criteria.verdict import are_apart
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
 
@@ -71,10 +71,10 @@ class Separators:
 
     def smallest(self) -> int | None:
         """A separating set of the fewest nodes: of those the one nearest to x. None where none separates."""
-        if are_separated(self.graph, self.xs, self.ys, self.required):
-            return self.required
         if self.graph.is_small:
             cliques = Cliques.over(self.graph, self.xs | self.ys | self.required)
+            if are_apart(self.graph, self.xs, self.ys, self.required, cliques.relevant):
+                return self.required
             choosable = self.allowed & cliques.relevant & ~(self.xs | self.ys | self.required)
             found = fewest_nodes_between(cliques, self.xs, self.ys, choosable, self.required)
             return None if found is None else found | self.required

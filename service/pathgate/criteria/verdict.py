@@ -24,7 +24,11 @@ def are_separated(graph: CausalGraph, xs: int, ys: int, given: int) -> bool:
     >>> are_separated(graph, 1, 4, 0), are_separated(graph, 1, 4, 2)
     (True, False)
     """
-    relevant = ancestors(graph, xs | ys | given)
+    return are_apart(graph, xs, ys, given, ancestors(graph, xs | ys | given))
+
+
+def are_apart(graph: CausalGraph, xs: int, ys: int, given: int, relevant: int) -> bool:
+    """The same where ``relevant``, the ancestors of the three sets, is at hand already."""
     if graph.is_small:
         return _are_apart_by_masks(graph, xs, ys, given, relevant)
     return _are_apart_by_arrays(graph, xs, ys, given, relevant)

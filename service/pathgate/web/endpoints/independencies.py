@@ -12,13 +12,12 @@ from pathgate.criteria.independencies import (
     basis,
     basis_sets,
     every_minimal,
-    is_fully_measured,
     separable_pairs,
     sequential,
     smallest,
 )
 from pathgate.criteria.selection import Kept, keep_rows
-from pathgate.criteria.separable import Pairs
+from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.demo import demo_graph
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.masks import members
