@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from itertools import combinations, product
+from itertools import combinations
 from typing import Any
 
 import numpy as np
@@ -11,7 +11,6 @@ import pytest
 from tests.brute import (
     Path,
     all_paths,
-    colliders,
     inseparable_pairs,
     is_open,
     is_valid_adjustment,
@@ -22,6 +21,7 @@ from tests.brute import (
     valid_sets,
     with_selection,
 )
+from tests.brute_classes import class_members, signature
 from tests.linear_worlds import (
     adjustment_holds,
     direct_effect_holds,
@@ -33,11 +33,9 @@ from tests.strategies import all_dags
 from tests.values import (
     Graph,
     arrows_of,
-    graph_of,
     is_adjacent,
     measured_names,
     node_names,
-    topological_names,
 )
 
 Row = dict[str, Any]
@@ -50,7 +48,7 @@ def named(kind: str) -> list[Any]:
 
 def test_every_case_names_its_source():
     cases = load_published()["cases"]
-    assert len(cases) == 34
+    assert len(cases) == 35
     assert all(case["source"] for case in cases)
     assert len({case["name"] for case in cases}) == len(cases)
 
@@ -133,25 +131,9 @@ def test_the_published_basis_holds_with_one_statement_for_each_pair_without_an_e
         assert separated(graph, row["x"], row["y"], row["given"])
 
 
-def signature(graph: Graph) -> frozenset[tuple[frozenset[str], frozenset[str]]]:
-    """Skeleton and unshielded colliders: equal exactly for equivalent DAGs (Verma & Pearl 1990)."""
-    skeleton = {(frozenset(arrow), frozenset[str]()) for arrow in arrows_of(graph)}
-    unshielded = {
-        (pair, frozenset([node])) for node, pair in colliders(graph) if not is_adjacent(graph, *pair)
-    }
-    return frozenset(skeleton | unshielded)
-
-
-def orientations(graph: Graph) -> list[Graph]:
-    """Every DAG with the same pairs joined."""
-    choices = [((source, target), (target, source)) for source, target in arrows_of(graph)]
-    candidates = (graph_of(*arrows, isolated=node_names(graph)) for arrows in product(*choices))
-    return [candidate for candidate in candidates if topological_names(candidate) is not None]
-
-
 @pytest.mark.parametrize(("graph", "row"), named("equivalence"))
 def test_classes_have_the_published_size_and_compelled_arrows(graph: Graph, row: Row):
-    members = [other for other in orientations(graph) if signature(other) == signature(graph)]
+    members = class_members(graph)
     assert len(members) == row["class_size"]
     shared = set.intersection(*(set(arrows_of(member)) for member in members))
     if "compelled" in row:

@@ -5,7 +5,9 @@ from pathgate.criteria.batch import separated_each
 from pathgate.criteria.colliders import Collider, Induced, colliders, induced
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_nodes, open_paths
-from pathgate.criteria.errors import CriterionError, OutOfTime, Overlapping
+from pathgate.criteria.distinguishing import Distinction, are_equivalent, distinguishing
+from pathgate.criteria.equivalence import Equivalence, equivalence
+from pathgate.criteria.errors import CriterionError, DifferentNodes, OutOfTime, Overlapping
 from pathgate.criteria.measuring import MeasureNext, measure_next
 from pathgate.criteria.paths import OpenPath, Step, Trail, directed_path, find_open_path
 from pathgate.criteria.selection import Kept, Label, Part, keep_rows
@@ -27,7 +29,10 @@ __all__ = [
     "Collider",
     "CriterionError",
     "Deadline",
+    "DifferentNodes",
+    "Distinction",
     "Effect",
+    "Equivalence",
     "Forbidden",
     "Induced",
     "Kept",
@@ -44,9 +49,12 @@ __all__ = [
     "Step",
     "Tetrad",
     "Trail",
+    "are_equivalent",
     "are_separated",
     "colliders",
     "directed_path",
+    "distinguishing",
+    "equivalence",
     "find_open_path",
     "forbidden_nodes",
     "induced",

@@ -37,3 +37,12 @@ class Overlapping(CriterionError):
             else "nothing is named on one side"
         )
         super().__init__(text, columns=list(columns))
+
+
+class DifferentNodes(CriterionError):
+    """Two graphs that are compared are not over the same nodes; ``details`` holds the names in one alone."""
+
+    slug = "invalid-request"
+
+    def __init__(self, columns: tuple[str, ...]) -> None:
+        super().__init__(f"only one of the two graphs has: {', '.join(columns)}", columns=list(columns))

@@ -2,7 +2,15 @@
 
 from __future__ import annotations
 
-from pathgate.web.endpoints import adjustment, colliders, constraints, graph_check, review, separation
+from pathgate.web.endpoints import (
+    adjustment,
+    colliders,
+    constraints,
+    equivalence,
+    graph_check,
+    review,
+    separation,
+)
 from pathgate.web.operations import Operation
 
 OPERATIONS: tuple[Operation, ...] = (
@@ -11,5 +19,6 @@ OPERATIONS: tuple[Operation, ...] = (
     separation.OPERATION,
     colliders.OPERATION,
     constraints.OPERATION,
+    equivalence.OPERATION,
     graph_check.OPERATION,
 )
