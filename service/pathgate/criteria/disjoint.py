@@ -32,6 +32,7 @@ def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, rem
     near_y = cliques.around(ys) & choosable & ~removed
     inevitable = cliques.around(xs) & near_y
     paths = _Paths(cliques, xs, ys, choosable & ~inevitable, removed | inevitable, near_y & ~inevitable)
+    paths.take_short_ones(cliques.around(xs) & choosable & ~(removed | inevitable))
     while (last := paths.search()) is not None:
         if last == _X:
             return None
@@ -65,6 +66,17 @@ class _Paths:
     left: int = 0
     entry_from: dict[int, int] = field(default_factory=dict)
     exit_from: dict[int, int] = field(default_factory=dict)
+
+    def take_short_ones(self, next_to_x: int) -> None:
+        """Begin with paths of two nodes, which need no search; later ones reroute them where they are in the way."""
+        for first in members(next_to_x):
+            _cliques, near = self.cliques.next_to(first, 0)
+            ends = near & self.next_to_y & ~self.passed
+            if ends and not self.passed >> first & 1:
+                last = (ends & -ends).bit_length() - 1
+                self.before.update({first: _X, last: first})
+                self.after.update({first: last, last: _Y})
+                self.passed |= 1 << first | 1 << last
 
     def search(self) -> int | None:
         """Look for one more path; the last choosable node on it (``_X`` for none), or None where there is none."""
