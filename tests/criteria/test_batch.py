@@ -171,7 +171,7 @@ def test_on_a_graph_beyond_masks_networkx_agrees():
     rng = random.Random(2)
     groups = []
     for group in range(SMALL // 10 + 5):
-        value = random_graph(rng, 10, arrow=0.15, bidirected=0.05)
+        value = random_graph(rng, 10, arrow=0.15, bidirected=0.15)
         groups.append(renamed(value, {name: f"{name} of {group}" for name in node_names(value)}))
     whole: Graph = {
         "nodes": [node for value in groups for node in value["nodes"]],
@@ -187,7 +187,9 @@ def test_on_a_graph_beyond_masks_networkx_agrees():
         networkx.is_d_separator(each, set(one.x), set(one.y), set(one.given))
         for each, one in zip(plain, asked, strict=True)
     ]
-    assert separated_each(graph, masks_of(graph, asked), Deadline.never()) == expected
+    statements = masks_of(graph, asked)
+    assert separated_each(graph, statements, Deadline.never()) == expected
+    assert [are_separated(graph, *statement) for statement in statements] == expected
     assert min(Counter(expected).values()) > 20
 
 

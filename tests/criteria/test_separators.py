@@ -263,16 +263,16 @@ def test_of_equally_good_sets_the_smallest_is_the_one_nearest_to_x_and_the_cheap
 
 
 def test_costs_are_added_up_exactly():
-    # Floats say 0.1 + 0.2 > 0.3 and 1e16 + 1 == 1e16; either set separates a from b, the second costs less.
-    for dear, cheap in (((1e16, 1.0), (1e16,)), ((1e16,), (1e16 - 2, 1.0))):
-        left, right = [f"l{k}" for k in range(len(dear))], [f"r{k}" for k in range(len(cheap))]
-        arrows = [("a", name) for name in left]
-        arrows += [*product(left, right), *((name, "b") for name in right)]
-        costs = dict(zip([*left, *right], [*dear, *cheap], strict=True))
+    # Either layer separates a from b. In floats the two cost the same, and the layer nearest to b would be taken.
+    for near_a, near_b in (((1e16,), (1e16, 1.0)), ((1e-9, 1e12), (1e-9, 1e-30, 1e12))):
+        layers = [[f"{side}{k}" for k in range(len(costs))] for side, costs in (("l", near_a), ("r", near_b))]
+        left, right = layers
+        arrows = [*product("a", left), *product(left, right), *product(right, "b")]
+        costs = dict(zip(left + right, near_a + near_b, strict=True))
         value = graph_of(*arrows)
         graph = read_graph({**value, "nodes": [{**n, "cost": costs.get(n["id"], 1)} for n in value["nodes"]]})
         found = Separators(graph, graph.mask("a"), graph.mask("b"), 0, graph.measured)
-        assert set(graph.names_of(found.cheapest() or 0)) == set(right)
+        assert set(graph.names_of(found.cheapest() or 0)) == set(left)
 
 
 # Large graphs.
