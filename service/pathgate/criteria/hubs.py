@@ -120,7 +120,11 @@ class Cliques:
     @classmethod
     def over(cls, graph: CausalGraph, nodes: int) -> Cliques:
         """The augmented graph of the ancestors of ``nodes``."""
-        relevant = ancestors(graph, nodes)
+        return cls.within(graph, ancestors(graph, nodes))
+
+    @classmethod
+    def within(cls, graph: CausalGraph, relevant: int) -> Cliques:
+        """The augmented graph of a set that holds its own ancestors."""
         district_of: dict[int, int] = {}
         joint: dict[int, int] = {}
         if len(graph.lower_ends):

@@ -12,6 +12,8 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.disjoint import fewest_nodes_between
+from pathgate.criteria.hubs import Cliques
 from pathgate.criteria.projection import latent_projection
 from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.criteria.separators import Separators
@@ -43,13 +45,20 @@ def separators_of(pairs: Pairs, first: int, second: int) -> Separators:
 
 def smallest(pairs: Pairs, first: int, second: int) -> Independency:
     """A statement for a separable pair with the fewest columns given."""
+    kept = pairs.kept
     if not pairs.joined_alone(first) >> second & 1:
         return Independency(first, 1 << second, 0)
-    found = separators_of(pairs, first, second).smallest()
+    if kept.graph.is_small:
+        # What Separators would find, without finding out again what is known of the pair.
+        cliques = Cliques.within(kept.graph, pairs.above(first) | pairs.above(second))
+        choosable = pairs.widest(first, second)
+        found = fewest_nodes_between(cliques, 1 << first, 1 << second, choosable, kept.conditioned)
+    else:
+        found = separators_of(pairs, first, second).smallest()
     if found is None:
         message = "a pair that can be separated has a smallest separating set"
         raise AssertionError(message)
-    return Independency(first, 1 << second, found & ~pairs.kept.conditioned)
+    return Independency(first, 1 << second, found & ~kept.conditioned)
 
 
 def every_minimal(pairs: Pairs, deadline: Deadline) -> Iterator[Independency]:

@@ -36,6 +36,7 @@ class Pairs:
     """
 
     kept: Kept
+    _above: dict[int, int] = field(default_factory=dict, repr=False)
     _joined: dict[int, int] = field(default_factory=dict, repr=False)
 
     @cached_property
@@ -55,7 +56,7 @@ class Pairs:
         if not later or (is_fully_measured(graph) and not self.kept.conditioned):
             # In a DAG all of whose nodes are measured, the parents of the two separate them.
             return later
-        always = self._above(node)
+        always = self.above(node)
         blocked = [0] * graph.size
         for other in members(self.columns & ~(1 << node)):
             # Lane y stands for the pair of node and y, and y is not conditioned on in its own lane.
@@ -95,7 +96,7 @@ class Pairs:
 
     def widest(self, first: int, second: int) -> int:
         """The columns above a pair: they separate it where anything does."""
-        above = self._above(first) | self._above(second)
+        above = self.above(first) | self.above(second)
         return above & self.columns & ~(1 << first | 1 << second)
 
     def inducing_path(self, first: int, second: int) -> Trail:
@@ -112,8 +113,12 @@ class Pairs:
             raise AssertionError(message)
         return trail
 
-    def _above(self, node: int) -> int:
-        return ancestors(self.kept.graph, 1 << node) | self._above_kept
+    def above(self, node: int) -> int:
+        """A node, its ancestors, and those of what the kept rows condition on."""
+        found = self._above.get(node)
+        if found is None:
+            found = self._above[node] = ancestors(self.kept.graph, 1 << node) | self._above_kept
+        return found
 
     @cached_property
     def _above_kept(self) -> int:

@@ -8,6 +8,7 @@ from pathgate.web.endpoints import (
     constraints,
     equivalence,
     graph_check,
+    independencies,
     review,
     separation,
 )
@@ -18,6 +19,7 @@ OPERATIONS: tuple[Operation, ...] = (
     adjustment.OPERATION,
     separation.OPERATION,
     colliders.OPERATION,
+    independencies.OPERATION,
     constraints.OPERATION,
     equivalence.OPERATION,
     graph_check.OPERATION,

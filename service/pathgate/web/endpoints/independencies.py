@@ -35,6 +35,7 @@ def answer(call: Call) -> Json:
     """The statements of the form asked for, a page at a time; on the last page the pairs no statement is about."""
     graph = graph_of(call)
     parts = read_parts(call.body.get("selected_on", []), names_of(call, graph), ("selected_on",))
+    call.refuse_faults()
     kept = keep_rows(graph, (one.part for one in parts))
     form = call.body.get("form", "smallest")
     _refuse_combination(call, kept, form)
