@@ -102,8 +102,8 @@ def test_sets_are_separated_where_each_pair_of_their_nodes_is():
 # Linear worlds: a correlation vanishes where the graph says so, and nowhere else.
 
 WORLDS = [
-    pytest.param(range(1200), id="1200"),
-    pytest.param(range(1200, 10_000), id="8800", marks=pytest.mark.slow),
+    pytest.param(range(600), id="600"),
+    pytest.param(range(600, 10_000), id="9400", marks=pytest.mark.slow),
 ]
 
 
