@@ -29,10 +29,15 @@ def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, rem
         The set, or None where choosable nodes cannot part the two.
     """
     # A node next to both is a way through by itself: every such set holds it.
-    near_y = cliques.around(ys) & choosable & ~removed
-    inevitable = cliques.around(xs) & near_y
+    near_x, near_y = (cliques.around(side) & choosable & ~removed for side in (xs, ys))
+    inevitable = near_x & near_y
     paths = _Paths(cliques, xs, ys, choosable & ~inevitable, removed | inevitable, near_y & ~inevitable)
-    paths.take_short_ones(cliques.around(xs) & choosable & ~(removed | inevitable))
+    paths.take_short_ones(near_x & ~inevitable)
+    # Where what is nearest to x is no larger than the ways found, it is a smallest set already.
+    if not cliques.around(xs) & ~(choosable | removed | xs):
+        nearest = cliques.touched(ys, near_x | removed) & ~removed
+        if nearest.bit_count() == inevitable.bit_count() + len(paths.after) // 2:
+            return nearest
     while (last := paths.search()) is not None:
         if last == _X:
             return None

@@ -156,8 +156,30 @@ class Cliques:
 
     def next_to(self, node: int, opened: int) -> tuple[int, int]:
         """The cliques of a node that are not opened yet, and the nodes in them."""
-        unopened = self.of(node) & ~opened
-        return unopened, self.together(unopened)
+        if self.district_of:
+            unopened = self.of(node) & ~opened
+            return unopened, self.together(unopened)
+        # Without districts a clique is a node and its parents: the same, put on one spot for its speed.
+        unopened = left = (self.graph.child_masks[node] & self.relevant | 1 << node) & ~opened
+        found, parents = unopened, self.graph.parent_masks
+        while left:
+            lowest = left & -left
+            left ^= lowest
+            found |= parents[lowest.bit_length() - 1]
+        return unopened, found
+
+    def touched(self, starts: int, stopping: int) -> int:
+        """The nodes of ``stopping`` that can be reached from ``starts`` without passing others of them."""
+        seen, opened, leaving = starts, 0, starts
+        while leaving:
+            lowest = leaving & -leaving
+            leaving ^= lowest
+            new_cliques, new = self.next_to(lowest.bit_length() - 1, opened)
+            opened |= new_cliques
+            new &= ~seen
+            seen |= new
+            leaving |= new & ~stopping
+        return seen & stopping
 
     def around(self, nodes: int) -> int:
         """Everything that shares a clique with one of the nodes."""
