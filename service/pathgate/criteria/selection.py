@@ -54,20 +54,6 @@ class Kept:
         """The node's name, or the part that a selection node stands for."""
         return self.graph.names[node] or self.part_of[node]
 
-    @property
-    def selection_nodes(self) -> int:
-        """Mask of the added nodes."""
-        return self.conditioned & ~self.fixed_columns
-
-    @property
-    def fixed_columns(self) -> int:
-        """Mask of the columns held at one value."""
-        fixed = 0
-        for part in self.parts:
-            if part.fixed:
-                fixed |= part.columns
-        return fixed
-
 
 def keep_rows(graph: CausalGraph, parts: Iterable[Part] = ()) -> Kept:
     """The graph as it is seen through the rows that all the parts keep.

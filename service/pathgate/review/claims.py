@@ -118,11 +118,6 @@ class Claim:
         return all(map(self.can_filter_by, parts)) and is_valid(self.effect_among(parts), covariates)
 
     @cached_property
-    def droppable_parts(self) -> tuple[Part, ...]:
-        """The parts that a remedy may drop."""
-        return () if self.row_filter_fixed else self.parts
-
-    @cached_property
     def can_be_carried(self) -> bool:
         """Would any choice of measured covariates, with whichever filter parts may be dropped, do?
 

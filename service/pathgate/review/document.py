@@ -34,8 +34,7 @@ def review_document(answer: Review) -> Json:
         "cautions": [SOUND_MEANS, ABOUT_THE_GRAPH] if answer.verdict == "sound" else [ABOUT_THE_GRAPH],
     }
     if answer.verdict == "unanswerable":
-        found = answer.measure_next
-        document["measure_next"] = None if found is None else measure_document(claim.graph, found)
+        document["measure_next"] = measure_document(claim.graph, answer.measure_next)
     if answer.meta is not NO_META:
         document["meta"] = answer.meta
     return document
@@ -73,8 +72,10 @@ def remedy_document(claim: Claim, remedy: Remedy) -> Json:
     }
 
 
-def measure_document(graph: CausalGraph, found: MeasureNext) -> Json:
-    """What to measure so that some choice of covariates would do."""
+def measure_document(graph: CausalGraph, found: MeasureNext | None) -> Json | None:
+    """What to measure so that some choice of covariates would do; None where no measuring helps."""
+    if found is None:
+        return None
     return {
         "measure": list(graph.names_of(found.nodes)),
         "causes_of": [[graph.name(first), graph.name(second)] for first, second in found.causes_of],

@@ -15,13 +15,12 @@ from pathgate.review.breaks import breaking_findings
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config, NameReader, read_parts, understand_ends
 from pathgate.review.degenerate import degenerate_findings
-from pathgate.review.document import finding_document
+from pathgate.review.document import finding_document, measure_document
 from pathgate.review.findings import Finding
 from pathgate.review.schema import ASKS, NAMES, SOME_NAMES
 from pathgate.review.warnings import warning_findings
 from pathgate.web.endpoints.adjustment_words import (
     forbidden_told,
-    measure_told,
     not_recovered_told,
     precision_told,
     set_told,
@@ -58,8 +57,8 @@ def answer(call: Call) -> Json:
     population: Population = InEverybody(effect, known) if is_whole else AmongKept(effect)
     # What every page repeats comes first, so that a long listing may use up the rest of the time.
     repeated: Json = {
-        "forbidden": forbidden_told(call.deadline, effect),
-        "unusable": unusable_told(call.deadline, population),
+        "forbidden": forbidden_told(effect, call.deadline),
+        "unusable": unusable_told(population, call.deadline),
         "needed": list(graph.names_of(population.needed(call.deadline))),
         "warnings": [_reason(finding) for finding in warning_findings(claim, config, call.deadline)],
     }
@@ -130,7 +129,7 @@ def _listed(call: Call, population: Population, required: int, allowed: int) -> 
         found, page = [] if least is None else [least], {"complete": True}
     exists = bool(found) or population.one(required=required, allowed=allowed) is not None
     if not exists:
-        extra["measure_next"] = measure_told(
+        extra["measure_next"] = measure_document(
             population.effect.kept.graph,
             population.measure_next(call.deadline, required=required, allowed=allowed),
         )

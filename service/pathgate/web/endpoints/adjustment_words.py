@@ -7,7 +7,6 @@ from math import fsum
 from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.diagnosis import forbidden_nodes
-from pathgate.criteria.measuring import MeasureNext
 from pathgate.criteria.paths import explain_path, find_open_path
 from pathgate.criteria.populations import InEverybody, Population
 from pathgate.criteria.precision import precision_notes
@@ -15,7 +14,7 @@ from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.usability import unusable_columns
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
-from pathgate.review.document import measure_document, path_document
+from pathgate.review.document import path_document
 from pathgate.review.wording import arrow_text, listed, part_text
 from pathgate.web.operations import Json
 
@@ -28,8 +27,12 @@ def set_told(graph: CausalGraph, columns: int) -> Json:
     }
 
 
-def forbidden_told(deadline: Deadline, effect: Effect) -> list[Json]:
-    """The nodes that no set can hold for the causal path they lie on or descend from."""
+def forbidden_told(effect: Effect, deadline: Deadline) -> list[Json]:
+    """The nodes that no set can hold for the causal path they lie on or descend from.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
     told = []
     for found in forbidden_nodes(effect, effect.forbidden & ~effect.outcomes):
         deadline.poll()
@@ -42,8 +45,12 @@ def forbidden_told(deadline: Deadline, effect: Effect) -> list[Json]:
     return told
 
 
-def unusable_told(deadline: Deadline, population: Population) -> list[Json]:
-    """The other columns that no set can hold."""
+def unusable_told(population: Population, deadline: Deadline) -> list[Json]:
+    """The other columns that no set can hold.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
     effect = population.effect
     graph = effect.kept.graph
     opening = {found.node: found.opens for found in unusable_columns(effect, deadline)}
@@ -99,8 +106,3 @@ def precision_told(effect: Effect, covariates: int) -> list[Json]:
             name = effect.kept.graph.name(node)
             told.append({"rule": rule, "columns": [name], "message": f"{listed([name])} {text}."})
     return told
-
-
-def measure_told(graph: CausalGraph, found: MeasureNext | None) -> Json | None:
-    """What to measure next."""
-    return None if found is None else measure_document(graph, found)
