@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
-from pathgate.graphs.graph import CausalGraph
+from pathgate.graphs.graph import CausalGraph, Edge
 from pathgate.graphs.reading import read_graph
 
 if TYPE_CHECKING:
@@ -44,7 +44,7 @@ def from_networkx(graph: networkx.Graph[Any]) -> CausalGraph:
     return read_graph(networkx.node_link_data(graph, edges="edges"))
 
 
-def edges_of(graph: CausalGraph) -> list[tuple[str, int, int]]:
+def edges_of(graph: CausalGraph) -> list[Edge]:
     """All edges: the arrows by source and target, then the bidirected edges by their ends."""
     arrows = zip(graph.sources.tolist(), graph.targets.tolist(), strict=True)
     bows = zip(graph.lower_ends.tolist(), graph.upper_ends.tolist(), strict=True)
@@ -61,7 +61,7 @@ def _node_attributes(graph: CausalGraph, node: int) -> dict[str, object]:
     return said | ({"columns": aliases} if aliases else {})
 
 
-def _edge_attributes(graph: CausalGraph, edge: tuple[str, int, int]) -> dict[str, object]:
+def _edge_attributes(graph: CausalGraph, edge: Edge) -> dict[str, object]:
     said: dict[str, object] = {"kind": edge[0]}
     if edge in graph.doubtful:
         said["doubtful"] = True

@@ -120,6 +120,9 @@ class CausalGraph:
         Raises:
             UnknownNode: some are not in the graph; all of them are named, with the nearest known name.
         """
+        index = self.index
+        if isinstance(names, str) and names in index:
+            return 1 << index[names]
         listed = (names,) if isinstance(names, str) else tuple(names)
         try:
             return self._mask(listed)
@@ -252,6 +255,22 @@ class CausalGraph:
             return replace(self, sources=self.sources[kept], targets=self.targets[kept])
         kept = (self.lower_ends != min(first, second)) | (self.upper_ends != max(first, second))
         return replace(self, lower_ends=self.lower_ends[kept], upper_ends=self.upper_ends[kept])
+
+    def with_arrow_turned(self, source: int, target: int) -> CausalGraph:
+        """The same graph with one of its arrows the other way round; whether that makes a cycle is not looked at."""
+        kept = (self.sources != source) | (self.targets != target)
+        sources, targets = np.append(self.sources[kept], target), np.append(self.targets[kept], source)
+        order = np.lexsort((targets, sources))
+        turned = replace(self, sources=sources[order], targets=targets[order])
+        if self.is_small:
+            # Four masks differ: cheaper to change a copy than to make all of them anew.
+            children, parents = self.child_masks.copy(), self.parent_masks.copy()
+            children[source] ^= 1 << target
+            parents[target] ^= 1 << source
+            children[target] |= 1 << source
+            parents[source] |= 1 << target
+            vars(turned).update(child_masks=children, parent_masks=parents, spouse_masks=self.spouse_masks)
+        return turned
 
     def with_leaves(self, parents: Iterable[int]) -> CausalGraph:
         """The same graph with one more unmeasured, nameless node for each set of parents, at the end."""

@@ -43,11 +43,12 @@ def descendants(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
 
 def _spread(neighbours: Sequence[int], nodes: int, avoiding: int) -> int:
     found = frontier = nodes
+    free = ~avoiding
     while frontier:
         lowest = frontier & -frontier
-        new = neighbours[lowest.bit_length() - 1] & ~(found | avoiding)
+        new = neighbours[lowest.bit_length() - 1] & free & ~found
         found |= new
-        frontier = (frontier ^ lowest) | new
+        frontier ^= lowest | new
     return found
 
 

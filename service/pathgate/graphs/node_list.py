@@ -1,6 +1,7 @@
 """Reads the list of nodes: names, and what is said about each.
 
-Names are checked as a set; only nodes that carry more than a name are visited one by one.
+Names are checked as a set; only nodes that carry more than a name are visited one by one. O(nodes and whatever is
+said of them).
 """
 
 from __future__ import annotations
@@ -105,7 +106,7 @@ def _are_good_names(ids: Sequence[object]) -> bool:
 
 def _good_id(place: int, value: object, faults: list[Fault]) -> str:
     """The node's id, or the empty string and a fault."""
-    at: tuple[str | int, ...] = ("nodes", place)
+    at: Place = ("nodes", place)
     if isinstance(value, dict):
         if "id" not in value:
             hint = did_you_mean("id", [key for key in value if isinstance(key, str)])
@@ -122,7 +123,7 @@ def _good_id(place: int, value: object, faults: list[Fault]) -> str:
     return ""
 
 
-def name_fault(value: object, place: tuple[str | int, ...]) -> Fault | None:
+def name_fault(value: object, place: Place) -> Fault | None:
     """Why a value cannot be the name of a node, or None."""
     if not isinstance(value, str):
         return Fault("invalid-request", place, f"a name is a string, not {json_type(value)}")

@@ -26,7 +26,7 @@ class Examined:
 
     Attributes:
         graph: the graph without its faulty parts; meaningful for answers only where ``faults`` is empty.
-        faults: everything wrong, nodes first, then edges, then cycles.
+        faults: everything wrong: nodes first, then edges, other members, times and cycles.
         is_acyclic: no directed cycle, a self-loop counted as one.
     """
 
