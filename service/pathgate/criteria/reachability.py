@@ -47,12 +47,18 @@ def connected(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
         starts: where paths begin; passed freely.
         conditions: what blocks and what opens.
     """
+    by_tail, by_head = entered(graph, starts, conditions)
+    return by_tail | by_head
+
+
+def entered(graph: CausalGraph, starts: int, conditions: Conditions) -> tuple[int, int]:
+    """The same told apart: nodes entered by the tail of an edge (and the starts), nodes entered by an arrowhead."""
     if graph.is_small:
         return _by_masks(graph, starts, conditions)
     return _by_arrays(graph, starts, conditions)
 
 
-def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
+def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions) -> tuple[int, int]:
     blocking, opening = conditions.blocking, conditions.opening
     parents, children, spouses = graph.parent_masks, graph.child_masks, graph.spouse_masks
     by_tail = starts
@@ -81,10 +87,10 @@ def _by_masks(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
         by_head |= down
         fresh_by_tail |= up
         fresh_by_head |= down
-    return by_tail | by_head
+    return by_tail, by_head
 
 
-def _by_arrays(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
+def _by_arrays(graph: CausalGraph, starts: int, conditions: Conditions) -> tuple[int, int]:
     size = graph.size
     begins, opens = unpack(starts, size), unpack(conditions.opening, size)
     passes = ~unpack(conditions.blocking, size)
@@ -105,7 +111,7 @@ def _by_arrays(graph: CausalGraph, starts: int, conditions: Conditions) -> int:
     order = np.argsort(starting, kind="stable")
     rows = Rows.of(2 * size, starting[order], ending[order])
     flags = rows.reached_from(np.flatnonzero(begins))
-    return pack(flags[:size] | flags[size:])
+    return pack(flags[:size]), pack(flags[size:])
 
 
 def _steps(

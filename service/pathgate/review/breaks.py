@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
+from pathgate.criteria.adjustment import is_valid
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.diagnosis import Forbidden, Missing, Opened, forbidden_nodes, open_paths
 from pathgate.criteria.paths import Trail
@@ -24,6 +25,8 @@ def breaking_findings(claim: Claim, config: Config, deadline: Deadline) -> Itera
         OutOfTime: the deadline came first.
     """
     effect = claim.effect
+    if is_valid(effect, claim.usable_covariates):
+        return
     conditioned = claim.usable_covariates | effect.kept.conditioned
     for forbidden in forbidden_nodes(effect, conditioned):
         deadline.poll()
