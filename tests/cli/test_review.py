@@ -65,6 +65,18 @@ def test_json_is_one_document_with_the_reviews_of_the_package(tmp_path):
     assert result.stderr == "8 configs found, 8 reviewed: 1 sound, 6 biased, 1 unanswerable; 0 not judged.\n"
 
 
+def test_json_has_what_verdicts_hinge_on_where_that_is_asked_for(tmp_path):
+    graph = write(tmp_path, "graph.json", demo_graph())
+    configs = write(tmp_path, "configs.json", demo_configs())
+    asked = documents(pathgate(graph, configs, "--format", "json", "--hinges"))
+    others = documents(pathgate(graph, configs, "--format", "json"))
+    hinges = [item["review"].pop("hinges_on") for item in asked]
+    assert asked == others
+    assert [bool(each["absent_edges"]) for each in hinges] == [
+        item["review"]["verdict"] == "sound" for item in others
+    ]
+
+
 def test_a_config_that_means_nothing_carries_its_problem_as_over_http(tmp_path, graph):
     result = pathgate(graph, write(tmp_path, "c.json", [SOUND, MISNAMED]), "--format", "json")
     item = documents(result)[1]

@@ -52,6 +52,29 @@ def test_several_ways_to_mend_it_are_listed(tmp_path):
     assert set(lines[start + 1 : start + 3]) == {'  - adjust for "weather"', '  - adjust for "volume"'}
 
 
+def test_what_a_sound_verdict_hinges_on_is_told_as_sentences_and_the_rest_counted(tmp_path):
+    # depot_0 … depot_8 → late → refund: none of the nine may influence refund by another way.
+    graph = graph_of(*((f"depot_{k}", "late") for k in range(9)), ("late", "refund"))
+    config = {"name": "chain", "treatment": "late", "outcome": "refund", "covariates": []}
+    paths = [Path(write(tmp_path, name, said)) for name, said in (("g.json", graph), ("c.json", config))]
+    outcome = review_files(paths[0], [paths[1]], Settings(), hinges=True)
+    lines = outcome_text(outcome).splitlines()
+    start = lines.index("  The verdict hinges on every one of these being true:")
+    absent = outcome.items[0].review["hinges_on"]["absent_edges"]
+    assert lines[start + 1 : start + 9] == [f"  - {edge['question']}" for edge in absent[:8]]
+    assert lines[start + 9] == f"  … {len(absent) - 8} more"
+    assert "hinges on" not in outcome_text(outcome_of(tmp_path, BIASED))
+
+
+def test_doubtful_edges_that_decide_are_told(tmp_path):
+    graph = graph_of(("weather", "late"), ("late", "refund"), ("weather", "refund"))
+    edges = [{**edge, "doubtful": edge["source"] == "weather"} for edge in graph["edges"]]
+    config = {"treatment": "late", "outcome": "refund", "covariates": []}
+    text = outcome_text(outcome_of(tmp_path, config, graph={**graph, "edges": edges}))
+    line = "Whether it is sound depends on edges marked as doubtful: weather → late, weather → refund."
+    assert f"  {line}" in text.splitlines()
+
+
 HOSTILE = [
     "\x1b[31mred\x1b[0m",
     "\x1b]0;title\x07",

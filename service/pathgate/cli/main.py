@@ -101,7 +101,12 @@ def serve(bind: str, workers: int) -> None:
     show_default=True,
     help="Text for people, or one JSON document with the counts on standard error.",
 )
-def review(graph: Path, configs: Sequence[Path], form: str) -> int:
+@click.option(
+    "--hinges",
+    is_flag=True,
+    help="In JSON too, say what sound verdicts hinge on; text always shows some of it.",
+)
+def review(graph: Path, configs: Sequence[Path], form: str, hinges: bool) -> int:  # noqa: FBT001 - click's call
     """Review model configs against a causal graph, in this process.
 
     GRAPH is a JSON or YAML file (.yaml, .yml). Each CONFIG is such a file with one config or a list of them,
@@ -114,7 +119,7 @@ def review(graph: Path, configs: Sequence[Path], form: str) -> int:
     """
     from pathgate.cli.reviewing import review_files  # noqa: PLC0415
 
-    outcome = review_files(graph, configs, _settings())
+    outcome = review_files(graph, configs, _settings(), hinges=hinges or form == "text")
     if form == "json":
         _print_json(outcome)
     else:

@@ -20,8 +20,8 @@ from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.node_list import json_type
 from pathgate.graphs.reading import examine_graph
 from pathgate.review.config import read_config
-from pathgate.review.document import review_document
 from pathgate.review.errors import InvalidConfig
+from pathgate.review.hinge_document import whole_document
 from pathgate.review.review import review
 from pathgate.web.problems import Problem, problem_of, refusal
 from pathgate.web.settings import Settings
@@ -82,8 +82,10 @@ class Outcome:
         return {"reviews": reviews, "problem": self.problem} if self.problem else {"reviews": reviews}
 
 
-def review_files(graph: Path, configs: Iterable[Path], settings: Settings) -> Outcome:
-    """Review every config that the files hold."""
+def review_files(
+    graph: Path, configs: Iterable[Path], settings: Settings, *, hinges: bool = False
+) -> Outcome:
+    """Review every config that the files hold; ``hinges``: say what sound verdicts hinge on?"""
     try:
         value = _without_schema(read_file(graph, settings))
     except Unreadable as error:
@@ -93,10 +95,12 @@ def review_files(graph: Path, configs: Iterable[Path], settings: Settings) -> Ou
         problem = refusal([fault.below(("graph",)) for fault in examined.faults])
         return Outcome(problem=_document(problem, settings))
     files = config_files(configs, graph)
-    return Outcome(tuple(item for file in files for item in _items(file, examined.graph, settings)))
+    return Outcome(
+        tuple(item for file in files for item in _items(file, examined.graph, settings, hinges=hinges))
+    )
 
 
-def _items(file: Path, graph: CausalGraph, settings: Settings) -> Iterator[Item]:
+def _items(file: Path, graph: CausalGraph, settings: Settings, *, hinges: bool) -> Iterator[Item]:
     try:
         value = read_file(file, settings)
     except Unreadable as error:
@@ -106,12 +110,12 @@ def _items(file: Path, graph: CausalGraph, settings: Settings) -> Iterator[Item]
         yield Item(shown(file), problem=_unreadable(file, Unreadable("an empty list holds no config")))
     elif isinstance(value, list):
         for place, config in enumerate(value):
-            yield _item(config, f"{shown(file)}#/{place}", graph, settings)
+            yield _item(config, f"{shown(file)}#/{place}", graph, settings, hinges=hinges)
     else:
-        yield _item(value, shown(file), graph, settings)
+        yield _item(value, shown(file), graph, settings, hinges=hinges)
 
 
-def _item(value: Any, where: str, graph: CausalGraph, settings: Settings) -> Item:
+def _item(value: Any, where: str, graph: CausalGraph, settings: Settings, *, hinges: bool) -> Item:
     said = value.get("name") if isinstance(value, Mapping) else None
     name = said if said and isinstance(said, str) else where
     try:
@@ -119,7 +123,8 @@ def _item(value: Any, where: str, graph: CausalGraph, settings: Settings) -> Ite
             detail = f"a config is an object, not {json_type(value)}"
             raise InvalidConfig([Fault("invalid-request", (), detail)])  # noqa: TRY301 - as read_config would
         config = read_config(value, graph)
-        answer = review(graph, config, Deadline(settings.time_budget_seconds))
+        deadline = Deadline(settings.time_budget_seconds)
+        document = whole_document(review(graph, config, deadline), deadline, hinges=hinges)
     except InvalidConfig as error:
         problem = refusal([fault.below(("config",)) for fault in error.faults])
         return Item(name, problem=_document(problem, settings))
@@ -128,7 +133,7 @@ def _item(value: Any, where: str, graph: CausalGraph, settings: Settings) -> Ite
         if known is None:
             raise
         return Item(name, problem=_document(known, settings))
-    return Item(name, review=review_document(answer))
+    return Item(name, review=document)
 
 
 def _without_schema(value: Any) -> Any:

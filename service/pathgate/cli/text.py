@@ -20,6 +20,8 @@ Wrap = Callable[[str, str], str]
 
 # Faults of one config that are listed; more are counted.
 _MOST_FAULTS = 10
+# Sentences that a sound verdict hinges on that are listed; more are counted.
+_MOST_HINGES = 8
 
 _MEANINGS = {
     "sound": "If the graph is right, the number that this model reports is the effect it is read as.",
@@ -84,6 +86,8 @@ def _item_lines(item: Item, wrap: Wrap, *, colour: bool) -> Iterator[str]:
         yield wrap("  ", f"{finding['severity']} {finding['rule']}: {visible(finding['message'])}")
     yield from (wrap("  ", line) for line in _remedy_lines(item.review["remedies"]))
     yield from (wrap("  ", line) for line in _measuring_lines(item.review.get("measure_next")))
+    yield from (wrap("  ", line) for line in _doubtful_lines(item.review.get("doubtful")))
+    yield from (wrap("  ", line) for line in _hinge_lines(item.review.get("hinges_on")))
 
 
 def _measuring_lines(found: Json | None) -> Iterator[str]:
@@ -91,6 +95,24 @@ def _measuring_lines(found: Json | None) -> Iterator[str]:
     if found is not None:
         causes = [f"what {first} and {second} have in common" for first, second in found["causes_of"]]
         yield f"It could be answered if this were measured: {visible(', '.join([*found['measure'], *causes]))}."
+
+
+def _doubtful_lines(found: Json | None) -> Iterator[str]:
+    """On which of the edges in doubt it depends whether the config is sound."""
+    if found is not None and found["verdict"] == "depends":
+        arrows = {"directed": "→", "bidirected": "↔"}
+        edges = [f"{edge['source']} {arrows[edge['kind']]} {edge['target']}" for edge in found["depends_on"]]
+        yield f"Whether it is sound depends on edges marked as doubtful: {visible(', '.join(edges))}."
+
+
+def _hinge_lines(found: Json | None) -> Iterator[str]:
+    """What one must believe is absent for a sound verdict to stand."""
+    absent = found["absent_edges"] if found else []
+    if absent:
+        yield "The verdict hinges on every one of these being true:"
+        yield from (f"- {visible(edge['question'])}" for edge in absent[:_MOST_HINGES])
+    if len(absent) > _MOST_HINGES:
+        yield f"… {len(absent) - _MOST_HINGES:,} more"
 
 
 def _remedy_lines(remedies: list[Json]) -> Iterator[str]:

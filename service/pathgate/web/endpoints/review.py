@@ -7,18 +7,19 @@ from typing import Any, get_args
 
 from pathgate.demo import demo_configs, demo_graph
 from pathgate.review.config import understand_config
-from pathgate.review.document import review_document
+from pathgate.review.hinge_document import whole_document
 from pathgate.review.review import review
 from pathgate.review.roles import Advice, Role
 from pathgate.review.rules import RULES
 from pathgate.review.schema import CONFIG_SCHEMA
+from pathgate.web.endpoints.hinge_schema import HINGE_COMPONENTS
 from pathgate.web.endpoints.reading import graph_of
 from pathgate.web.endpoints.shared_schemas import GRAPH, MEASURE_NEXT, NAME_LIST, PATH_COMPONENTS
 from pathgate.web.operations import Call, Example, Json, Operation
 
 
 def answer(call: Call) -> Json:
-    """The verdict on one config."""
+    """The verdict on one config, and what it hinges on."""
     graph = graph_of(call)
     # Places are counted from the config while it is read, and from the request where it is refused.
     faults = [fault for fault in call.faults if fault.place[:1] != ("config",)]
@@ -31,7 +32,8 @@ def answer(call: Call) -> Json:
     if config is None:
         message = "a config without faults can be understood"
         raise AssertionError(message)
-    return review_document(review(graph, config, call.deadline))
+    judged = review(graph, config, call.deadline)
+    return whole_document(judged, call.deadline, hinges=call.whole.get("hinges", True))
 
 
 _LABELS: dict[str, Any] = {"type": "array", "items": {"$ref": "#/components/schemas/Label"}}
@@ -106,6 +108,8 @@ REVIEW: dict[str, Any] = {
             " edges whose measuring would make some choice do; null where none would",
             "anyOf": [MEASURE_NEXT, {"type": "null"}],
         },
+        "hinges_on": {"$ref": "#/components/schemas/HingesOn"},
+        "doubtful": {"$ref": "#/components/schemas/Doubtful"},
         "cautions": {"type": "array", "items": {"type": "string"}},
         "meta": {"description": "the config's own meta"},
     },
@@ -119,6 +123,7 @@ REVIEW_COMPONENTS = {
     "Finding": FINDING,
     "Remedy": REMEDY,
     "Review": REVIEW,
+    **HINGE_COMPONENTS,
 }
 
 OPERATION = Operation(
@@ -132,10 +137,19 @@ OPERATION = Operation(
     ),
     request_schema={
         "type": "object",
-        "properties": {"graph": GRAPH, "config": {"$ref": "#/components/schemas/Config"}},
+        "properties": {
+            "graph": GRAPH,
+            "config": {"$ref": "#/components/schemas/Config"},
+            "hinges": {
+                "title": "true or false",
+                "type": "boolean",
+                "default": True,
+                "description": "whether to say what a sound verdict hinges on",
+            },
+        },
         "required": ["graph", "config"],
         "additionalProperties": False,
-        "x-not-yet": ["hinges", "columns", "include", "as_gate"],
+        "x-not-yet": ["columns", "include", "as_gate"],
     },
     response_schema={"$ref": "#/components/schemas/Review"},
     components=REVIEW_COMPONENTS,
