@@ -3,6 +3,8 @@
 scipy's maximum flow over integer capacities finds the fewest nodes, and the cheapest where costs are whole numbers
 or simple fractions; else networkx's minimum cut does over exact fractions. Where several cuts are least, the
 smallest is the one nearest to x and the cheapest the one nearest to y, which are the same for every maximum flow.
+The fewest nodes take at most one pass over the network each, O(nodes + edges); the cheapest take O(nodes² · edges)
+at worst.
 """
 
 from __future__ import annotations

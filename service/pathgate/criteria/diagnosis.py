@@ -83,6 +83,9 @@ def open_paths(effect: Effect, covariates: int, deadline: Deadline) -> Iterator[
     """What leaves treatments and outcomes joined by non-causal paths, given the covariates on the rows kept.
 
     Forbidden nodes are to be left out of ``covariates`` by the caller: they are faults of their own.
+
+    Raises:
+        OutOfTime: the deadline came first.
     """
     graph = effect.back_door_graph
     blocking = openers = covariates | effect.kept.conditioned

@@ -3,7 +3,8 @@
 Pairs: ``smallest`` and ``every_minimal`` separating sets, and the ``basis`` (one statement a separable pair:
 given the parents of both in a fully measured DAG, Shipley 2000; else given the columns above the pair). Sets:
 ``basis_sets``, the ordered local Markov property over districts (Richardson 2003; Kang & Tian 2009; Jeong et
-al. 2025). ``sequential``: statements whose tests do not overlap. All are generators with polynomial delay.
+al. 2025). ``sequential``: statements whose tests do not overlap. A smallest statement costs a minimum cut, one of
+the basis O(nodes + edges); the listings come with polynomial delay.
 """
 
 from __future__ import annotations
@@ -32,7 +33,11 @@ class Independency:
 
 
 def separable_pairs(pairs: Pairs, deadline: Deadline) -> Iterator[tuple[int, int]]:
-    """Every pair of columns that some set of columns separates, in the graph's order."""
+    """Every pair of columns that some set of columns separates, in the graph's order.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
     for node in members(pairs.columns):
         yield from ((node, other) for other in members(pairs.separable(node, deadline)))
 
@@ -62,7 +67,11 @@ def smallest(pairs: Pairs, first: int, second: int) -> Independency:
 
 
 def every_minimal(pairs: Pairs, deadline: Deadline) -> Iterator[Independency]:
-    """Every statement about a pair none of whose given columns can be left out with some others."""
+    """Every statement about a pair none of whose given columns can be left out with some others.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
     for first, second in separable_pairs(pairs, deadline):
         for found in separators_of(pairs, first, second).every_minimal(deadline):
             yield Independency(first, 1 << second, found & ~pairs.kept.conditioned)
@@ -108,9 +117,11 @@ def basis_sets(graph: CausalGraph, deadline: Deadline) -> Iterator[Independency]
 
 
 def sequential(graph: CausalGraph) -> Iterator[Independency]:
-    """For a fully measured DAG: each column and each earlier one that is no parent of it, given its parents and
-    the earlier non-parents before that one. The statistics of their tests are asymptotically independent, so
-    they can be added up to one overall test."""
+    """For a fully measured DAG: each column and each earlier one that is no parent of it.
+
+    Given are its parents and the earlier non-parents before that one. The statistics of the tests are
+    asymptotically independent, so they can be added up to one overall test.
+    """
     earlier = list[int]()
     for node in graph.topological_order:
         given = mask_of(graph.parents(node))

@@ -3,7 +3,8 @@
 Every question is a vertex cut of an augmented graph (``hubs``); a joint cut holds a cut of each. One alone is
 ``separators``' business. A least joint cut is searched for: take or leave one node at a time, between the
 bounds that minimum cuts give (Land & Doig 1960), and give a branch up once what is left cannot cut, or some
-node taken cannot be needed any more: no open way leads to it from both sides.
+node taken cannot be needed any more: no open way leads to it from both sides. A branch costs one minimum cut for
+each thing to cut; at worst there are exponentially many branches, so the search watches the deadline.
 """
 
 from __future__ import annotations

@@ -1,7 +1,8 @@
 """Whose effect a covariate set carries: that of the rows kept, or that of everybody; one interface for both.
 
 For the rows kept a set must be valid (``adjustment``); for everybody it must also undo the selection, alone or
-with columns whose distribution over everybody is known (``whole``).
+with columns whose distribution over everybody is known (``whole``). Costs are those of the two modules; what no set
+and what every set holds is asked of all columns at once for the rows kept, of one after the other for everybody.
 """
 
 from __future__ import annotations
@@ -21,13 +22,17 @@ from pathgate.criteria.whole import (
     recovering_sets,
     recovers,
 )
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 
 Least = Literal["smallest", "cheapest"]
 
 
 class Population(Protocol):
-    """What one can ask about covariate sets for an effect in a population. ``allowed`` and the like are masks."""
+    """What one can ask about covariate sets for an effect in a population. ``allowed`` and the like are masks.
+
+    Raises:
+        OutOfTime: whatever takes a deadline, when that came first.
+    """
 
     @property
     def effect(self) -> Effect:
@@ -82,10 +87,7 @@ class AmongKept:
         return None if found is None else covariates_in(self.effect, found, required)
 
     def unusable(self, deadline: Deadline) -> int:
-        found = 0
-        for each in unusable_columns(self.effect, deadline):
-            found |= 1 << each.node
-        return found
+        return mask_of(each.node for each in unusable_columns(self.effect, deadline))
 
     def needed(self, deadline: Deadline) -> int:
         return needed_columns(self.effect, deadline)

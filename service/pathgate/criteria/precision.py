@@ -64,7 +64,8 @@ def most_precise(
     A claim about the coefficients of a linear regression, each treatment's on each outcome. In graphs with
     every node measured and no bidirected edge the parents of the nodes on causal paths come out at once; else
     the search may part the valid sets into regions, which can be many: it ends when it has looked at
-    ``budget`` nodes and edges. The work for each region is polynomial.
+    ``budget`` nodes and edges, or at the deadline, with what it has by then. The work for each region is
+    polynomial.
 
     >>> from pathgate.criteria import keep_rows, total_effect
     >>> from pathgate.graphs import CausalGraph

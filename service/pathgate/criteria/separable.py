@@ -19,7 +19,7 @@ from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import Kept
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 
 
 def is_fully_measured(graph: CausalGraph) -> bool:
@@ -68,10 +68,14 @@ class Pairs:
         starts[node] = later
         lanes_run = Lanes.of(graph, starts, blocked)
         lanes_run.run(deadline)
-        return later & ~sum(1 << other for other in members(later) if lanes_run.at(other) >> other & 1)
+        return later & ~mask_of(other for other in members(later) if lanes_run.at(other) >> other & 1)
 
     def inseparable(self, deadline: Deadline) -> Iterator[tuple[int, int]]:
-        """The pairs of columns without an edge between them that no set of columns separates."""
+        """The pairs of columns without an edge between them that no set of columns separates.
+
+        Raises:
+            OutOfTime: the deadline came first.
+        """
         for node in members(self.columns):
             later = self.columns >> (node + 1) << (node + 1)
             joined = later & ~self.adjacent(node) & ~self.separable(node, deadline)
@@ -89,10 +93,7 @@ class Pairs:
 
     def adjacent(self, node: int) -> int:
         """The nodes that an edge joins to this one."""
-        neighbours = 0
-        for other in self.kept.graph.neighbour_lists[node]:
-            neighbours |= 1 << other
-        return neighbours
+        return mask_of(self.kept.graph.neighbour_lists[node])
 
     def widest(self, first: int, second: int) -> int:
         """The columns above a pair: they separate it where anything does."""

@@ -2,7 +2,8 @@
 
 A column can be held exactly when it and all allowed ancestors of treatments, outcomes and itself separate; it
 can be left out exactly when all allowed ancestors but itself do (van der Zander, Liśkiewicz & Textor 2019). All
-columns are asked about at once, each as a lane of one search (``batch``).
+columns are asked about at once, each as a lane of one search (``batch``), and one search more finds the path for
+each column that no set holds.
 """
 
 from __future__ import annotations
@@ -15,7 +16,7 @@ from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import Trail, find_open_path
 from pathgate.criteria.reachability import Conditions
 from pathgate.graphs.kinship import ancestors
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,10 +71,7 @@ def needed_columns(effect: Effect, deadline: Deadline) -> int:
     for lane, node in enumerate(candidates):
         blocked[node] &= ~(1 << lane)
     joined = _joined_lanes(effect, blocked, all_lanes, deadline)
-    needed = 0
-    for lane in members(joined):
-        needed |= 1 << candidates[lane]
-    return needed
+    return mask_of(candidates[lane] for lane in members(joined))
 
 
 def _choosable(effect: Effect) -> int:
