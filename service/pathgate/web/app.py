@@ -28,7 +28,7 @@ class _App(Flask):
 def create_app(settings: Settings | None = None, operations: Sequence[Operation] = OPERATIONS) -> Flask:
     """The service as a WSGI application.
 
-    Arguments:
+    Args:
         settings: the limits; those that the environment asks for where none are given.
         operations: what it answers under ``/v1/``.
 

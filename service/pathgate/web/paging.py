@@ -10,7 +10,7 @@ import base64
 import hashlib
 from collections.abc import Callable, Iterable, Iterator
 from itertools import islice
-from typing import Any
+from typing import Any, TypeVar
 
 import msgspec
 
@@ -19,11 +19,13 @@ from pathgate.version import VERSION
 from pathgate.web.operations import Call
 from pathgate.web.problems import Failed, Problem
 
+Item = TypeVar("Item")
+
 DEFAULT_LIMIT = 100
 _DIGEST_BYTES = 16
 
 
-def page_of(call: Call, operation: str, items: Iterable[Any]) -> tuple[list[Any], dict[str, Any]]:
+def page_of(call: Call, operation: str, items: Iterable[Item]) -> tuple[list[Item], dict[str, Any]]:
     """The items of the page asked for, and the members ``complete`` and ``cursor`` that go beside them.
 
     A listing that the deadline cuts short ends as an incomplete page, unless it holds nothing at all.
@@ -36,13 +38,18 @@ def page_of(call: Call, operation: str, items: Iterable[Any]) -> tuple[list[Any]
 
 
 def page_from(
-    call: Call, operation: str, listing: Callable[[int], Iterable[Any]]
-) -> tuple[list[Any], dict[str, Any]]:
-    """As ``page_of``, for a listing that passes over its first ``start`` items faster than it makes them."""
+    call: Call, operation: str, listing: Callable[[int], Iterable[Item]]
+) -> tuple[list[Item], dict[str, Any]]:
+    """As ``page_of``, for a listing that passes over its first ``start`` items faster than it makes them.
+
+    Raises:
+        Failed: the cursor was not made for this request.
+        OutOfTime: the time ran out before the first item.
+    """
     limit = min(int(call.body.get("limit", DEFAULT_LIMIT)), call.settings.max_page)
     request = _request_digest(call, operation)
     start = _place_of(call.body["cursor"], request) if "cursor" in call.body else 0
-    found: list[Any] = []
+    found: list[Item] = []
     was_cut = False
     try:
         for item in islice(listing(start), limit + 1):
@@ -58,7 +65,7 @@ def page_from(
     return found, {"complete": False, "cursor": _cursor(start + len(found), request)}
 
 
-def _after(call: Call, items: Iterable[Any], start: int) -> Iterator[Any]:
+def _after(call: Call, items: Iterable[Item], start: int) -> Iterator[Item]:
     """The items from ``start`` on; the time is watched while those before are passed over."""
     for place, item in enumerate(items):
         if place >= start:

@@ -11,12 +11,15 @@ import os
 import socket
 import struct
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from gunicorn.app.base import BaseApplication  # type: ignore[import-untyped]
 from gunicorn.config import KNOWN_SETTINGS  # type: ignore[import-untyped]
 
 from pathgate.web.settings import Settings
+
+if TYPE_CHECKING:
+    from flask import Flask
 
 SHARED_MEMORY = Path("/dev/shm")  # noqa: S108 - gunicorn makes a file with a random name there
 
@@ -29,7 +32,7 @@ def gunicorn_options(
 ) -> dict[str, Any]:
     """The settings gunicorn is run with, by their names there.
 
-    Arguments:
+    Args:
         bind: ``HOST:PORT``.
         workers: how many processes.
         threads: how many requests each process answers at a time.
@@ -99,7 +102,7 @@ class _Server(BaseApplication):  # type: ignore[misc]
         for name, value in self._options.items():
             self.cfg.set(name, value)
 
-    def load(self) -> Any:
+    def load(self) -> Flask:
         # Imported here, since whoever only asks for the options or for help needs no application.
         from pathgate.web.app import create_app  # noqa: PLC0415
         from pathgate.web.memory import keep_heap_compact  # noqa: PLC0415

@@ -8,7 +8,7 @@ from that declaration.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import asdict, dataclass, field, fields
+from dataclasses import Field, asdict, dataclass, field, fields
 from math import isfinite
 from typing import Any
 
@@ -128,7 +128,7 @@ def _number(written: str, *, whole: bool) -> float:
     return value
 
 
-def _out_of_bounds(setting: Any, value: float) -> str | None:
+def _out_of_bounds(setting: Field[float], value: float) -> str | None:
     least, most = setting.metadata["least"], setting.metadata["most"]
     if isfinite(value) and least <= value <= most:
         return None

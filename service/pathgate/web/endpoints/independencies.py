@@ -28,6 +28,9 @@ from pathgate.web.endpoints.shared_schemas import CURSOR, GRAPH, LIMIT, NAME_LIS
 from pathgate.web.operations import Call, Example, Json, Operation
 from pathgate.web.paging import page_of
 
+_Token = Independency | tuple[int, int]
+"""What a page counts: a statement, or a separable pair whose statement is not worked out yet."""
+
 FORMS = ("smallest", "every-minimal", "basis", "basis-sets", "sequential")
 
 
@@ -69,8 +72,8 @@ class _Listing:
     max_given: int | None
     deadline: Deadline
 
-    def tokens(self) -> Iterator[Any]:
-        """What the pages count: statements, or the pairs that have one each."""
+    def tokens(self) -> Iterator[_Token]:
+        """What the pages count, in order."""
         graph = self.pairs.kept.graph
         if self.form in ("smallest", "basis"):
             found = separable_pairs(self.pairs, self.deadline)
@@ -82,7 +85,7 @@ class _Listing:
         else:
             yield from filter(self._fits, sequential(graph))
 
-    def document(self, token: Any) -> Json:
+    def document(self, token: _Token) -> Json:
         """A statement with what a contradiction of it would mean."""
         self.deadline.poll()
         statement = token if isinstance(token, Independency) else self._of_pair(token)
