@@ -59,19 +59,23 @@ class PathgateError(Exception):
         self.details: Mapping[str, object] = details
 
 
-class GraphError(PathgateError):
-    """Base of the errors of this layer."""
-
-
-class InvalidGraph(GraphError):
-    """The input is not a causal graph; ``faults`` says all that is wrong with it."""
-
-    slug = "invalid-graph"
+class FaultyInput(PathgateError):
+    """Base of the errors that name every fault of an input: ``faults`` holds them, at least one."""
 
     def __init__(self, faults: Sequence[Fault]) -> None:
         more = f" (and {len(faults) - 1} more)" if len(faults) > 1 else ""
         super().__init__(f"{faults[0].detail}{more}")
         self.faults = tuple(faults)
+
+
+class GraphError(PathgateError):
+    """Base of the errors of this layer."""
+
+
+class InvalidGraph(FaultyInput, GraphError):
+    """The input is not a causal graph; ``faults`` says all that is wrong with it."""
+
+    slug = "invalid-graph"
 
 
 class UnknownNode(GraphError):

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 from types import MappingProxyType
 from typing import Any
 
-from pathgate.graphs.errors import Fault, PathgateError, pointer
+from pathgate.graphs.errors import Fault, FaultyInput, PathgateError, pointer
 from pathgate.web.json_faults import LONGEST_NUMBER
 
 
@@ -254,8 +254,7 @@ def refusal(faults: Sequence[Fault]) -> Problem:
 
 def problem_of(error: PathgateError) -> Problem | None:
     """The problem that an error of a lower layer is, or None where it should never have come this far."""
-    faults = getattr(error, "faults", ())
-    if faults:
-        return refusal(faults)
+    if isinstance(error, FaultyInput):
+        return refusal(error.faults)
     known = PROBLEM_TYPES.get(getattr(error, "slug", ""))
     return Problem(known, str(error), extras=dict(error.details)) if known else None
