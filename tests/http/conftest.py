@@ -94,7 +94,7 @@ def count_names(call: Call) -> dict[str, Any]:
         case "time":
             raise OutOfTime(10)
     nodes: tuple[str, ...] = ()
-    if call.has_graph:
+    if "graph" in call.graphs:
         try:
             nodes = read_graph(call.graph).names
         except InvalidGraph as error:

@@ -8,14 +8,16 @@ from __future__ import annotations
 
 from typing import Any
 
+from pathgate.graphs.node_list import MAX_NAME
+
 Schema = dict[str, Any]
 
 NODE_NAME: Schema = {
     "title": "a name",
-    "description": "The name of a node: any string of 1 to 200 characters, matched exactly.",
+    "description": f"The name of a node: any string of 1 to {MAX_NAME} characters, matched exactly.",
     "type": "string",
     "minLength": 1,
-    "maxLength": 200,
+    "maxLength": MAX_NAME,
     "examples": ["late_pickup"],
 }
 

@@ -62,7 +62,7 @@ def document(operations: Sequence[Operation]) -> Json:
     Raises:
         ValueError: two operations give different schemas the same name.
     """
-    schemas = schemas_of(operations)
+    schemas = _schemas_of(operations)
     paths = get_paths(sorted(map(document_name, schemas)))
     return {
         "openapi": "3.1.0",
@@ -93,7 +93,7 @@ def document(operations: Sequence[Operation]) -> Json:
     }
 
 
-def rendered(operations: Sequence[Operation]) -> str:
+def _rendered(operations: Sequence[Operation]) -> str:
     """The document as text, ending in a newline."""
     return json.dumps(document(operations), indent=2, ensure_ascii=False) + "\n"
 
@@ -161,12 +161,8 @@ def _response_name(status: int) -> str:
     return f"Problem{status}"
 
 
-def schemas_of(operations: Sequence[Operation]) -> Json:
-    """Every named schema of the document.
-
-    Raises:
-        ValueError: two operations give different schemas the same name.
-    """
+def _schemas_of(operations: Sequence[Operation]) -> Json:
+    """Every named schema of the document."""
     schemas: Json = {"Graph": GRAPH_SCHEMA, "Problem": PROBLEM_SCHEMA}
     for operation in operations:
         own = {
@@ -184,7 +180,7 @@ def main(arguments: Sequence[str] | None = None) -> None:
     parser = argparse.ArgumentParser(description="Print the OpenAPI document of this service, or write it.")
     parser.add_argument("--write", metavar="PATH", type=Path, help="the file to write it to")
     path = parser.parse_args(arguments).write
-    text = rendered(OPERATIONS)
+    text = _rendered(OPERATIONS)
     if path is None:
         sys.stdout.write(text)
     else:

@@ -98,13 +98,8 @@ class Call:
 
     @property
     def graph(self) -> Any:
-        """The member ``graph`` as it came; None where ``has_graph`` is false."""
+        """The member ``graph`` as it came; None where there was none."""
         return self.graphs.get("graph")
-
-    @property
-    def has_graph(self) -> bool:
-        """Was there one?"""
-        return "graph" in self.graphs
 
     def is_sound(self, *place: str | int) -> bool:
         """No fault has been found at or below ``place``."""

@@ -4,8 +4,10 @@ from __future__ import annotations
 
 from typing import Any
 
+from pathgate.graphs.node_list import MAX_NAME
 from pathgate.review.schema import NAMES, PART
 from pathgate.web.operations import GRAPH_REFERENCE
+from pathgate.web.paging import DEFAULT_LIMIT
 
 Schema = dict[str, Any]
 
@@ -58,16 +60,18 @@ PATH: Schema = {
 
 PATH_COMPONENTS: dict[str, Schema] = {"Label": LABEL, "Path": PATH}
 
+_NAME: Schema = {"type": "string", "minLength": 1, "maxLength": MAX_NAME}
+
 SELECTED_ON: Schema = {
     "title": "a node's name, or a list of names (together one condition) and conditions {columns, fixed}",
     "description": "what decides which rows are kept",
     "anyOf": [
-        {"type": "string", "minLength": 1, "maxLength": 200},
+        _NAME,
         {
             "type": "array",
             "items": {
                 "title": "a name or a condition {columns, fixed}",
-                "anyOf": [{"type": "string", "minLength": 1, "maxLength": 200}, PART],
+                "anyOf": [_NAME, PART],
             },
         },
     ],
@@ -78,7 +82,7 @@ GIVEN: Schema = {**NAMES, "description": "the nodes conditioned on, measured or 
 LIMIT: Schema = {
     "type": "integer",
     "minimum": 1,
-    "default": 100,
+    "default": DEFAULT_LIMIT,
     "description": "most items on this page; lowered to the operator's maximum",
 }
 CURSOR: Schema = {
