@@ -32,10 +32,13 @@ class Exposing:
     Attributes:
         graph: the graph that promises them.
         deadline: when to stop.
+        hubs: nodes that many pairs have in common; these are asked about from there.
     """
 
     graph: CausalGraph
     deadline: Deadline
+    hubs: int = 0
+    _joined: dict[int, int] = field(default_factory=dict, repr=False)
     _above: dict[int, int] = field(default_factory=dict, repr=False)
     _separable: dict[int, tuple[int, int]] = field(default_factory=dict, repr=False)
 
@@ -81,8 +84,11 @@ class Exposing:
         asked &= ~(graph.child_masks[node] | graph.parent_masks[node] | graph.spouse_masks[node])
         if self._is_fully_measured:
             return asked
-        hopeful = Conditions(graph.measured & ~(1 << node), graph.everything)
-        doubted = asked & connected(graph, 1 << node, hopeful)
+        doubted = asked & ~self.hubs
+        doubted &= self._joined_to(node) if doubted else 0
+        for hub in members(asked & self.hubs):
+            if self._joined_to(hub) >> node & 1:
+                doubted |= 1 << hub
         separable = asked & ~doubted
         later = doubted >> node << node
         if later.bit_count() > FEW:
@@ -93,6 +99,13 @@ class Exposing:
             if are_separated(graph, 1 << node, 1 << other, self._widest(node, other)):
                 separable |= 1 << other
         return separable
+
+    def _joined_to(self, node: int) -> int:
+        """What a path joins to the node on which only colliders are measured; without one nothing is inseparable."""
+        if node not in self._joined:
+            hopeful = Conditions(self.graph.measured & ~(1 << node), self.graph.everything)
+            self._joined[node] = connected(self.graph, 1 << node, hopeful)
+        return self._joined[node]
 
     def _widest(self, first: int, second: int) -> int:
         """The columns above a pair: they separate it where anything does."""

@@ -60,7 +60,7 @@ class Hinges:
             return harmful & ~self._causal_ends | self._causal_ends & self._opening
         if self.is_direct or not at & self._downstream or not among & self._upstream:
             return harmful
-        return harmful & ~self._upstream | self._upstream & self._harmful_detours(source)
+        return harmful & ~self._upstream | self._upstream & self._harmful_detours(source, among)
 
     def bidirected_with(self, node: int) -> int:
         """The nodes whose joining to ``node`` by a bidirected edge would make the set invalid."""
@@ -107,18 +107,21 @@ class Hinges:
             harmful |= self._opening
         return harmful
 
-    def _harmful_detours(self, source: int) -> int:
+    def _harmful_detours(self, source: int, among: int) -> int:
         """Harmful targets upstream of the outcomes, for a source downstream of the treatments: a new causal path."""
         at = 1 << source
         if at & self._below_conditioned:
             return self._upstream
+        outcomes = self._from_outcomes
+        if not (self._upstream & outcomes.into & among or outcomes.out & at):
+            return self._opening
         # What leads from the treatments to the source becomes causal, and is no longer followed.
         to_source = ancestors(self._graph, at, avoiding=self.effect.treatments) & self._first_steps
         treatments = self._from_treatments_without(to_source)
         harmful = self._opening
         if treatments.out & at:
-            harmful |= self._from_outcomes.into
-        if self._from_outcomes.out & at:
+            harmful |= outcomes.into
+        if outcomes.out & at:
             harmful |= treatments.into
         return harmful
 

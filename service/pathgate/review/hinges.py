@@ -103,7 +103,7 @@ class _Search:
         self._graph = claim.graph
         self._deadline = deadline
         self._hinges = Hinges(claim.effect, claim.covariates, claim.asks == "direct")
-        self._exposing = Exposing(claim.graph, deadline)
+        self._exposing = Exposing(claim.graph, deadline, hubs=claim.ends)
         self._room = MOST_NAMES
 
     def absent_edges(self) -> Iterator[AbsentEdge]:
