@@ -39,7 +39,7 @@ _HOW_TO_READ_PATHS = (
 def outcome_text(outcome: Outcome, *, width: int | None = None, colour: bool = False) -> str:
     """Every item, what they have in common once, and how they ended.
 
-    Arguments:
+    Args:
         width: where to break lines; None breaks none, so that each finding stays on a line of its own.
         colour: mark verdicts by colour beside the words.
     """

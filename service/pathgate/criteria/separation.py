@@ -142,12 +142,17 @@ def _blockers(
                 break
 
 
+def on_two_sides(xs: int, ys: int, conditioned: int) -> int:
+    """The nodes that more than one of the three sets holds."""
+    return (xs & ys) | (xs & conditioned) | (ys & conditioned)
+
+
 def check_disjoint(graph: CausalGraph, xs: int, ys: int, conditioned: int) -> None:
     """Refuse a question that means nothing.
 
     Raises:
         Overlapping: two of the sets share a node, or x or y is empty.
     """
-    shared = (xs & ys) | (xs & conditioned) | (ys & conditioned)
+    shared = on_two_sides(xs, ys, conditioned)
     if shared or not xs or not ys:
         raise Overlapping(graph.names_of(shared))

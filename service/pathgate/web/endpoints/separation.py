@@ -6,7 +6,7 @@ from typing import Any
 
 from pathgate.criteria.batch import Statement, separated_each
 from pathgate.criteria.reachability import Conditions, connected
-from pathgate.criteria.separation import DEFAULT_PATHS, Blocker, Separation, explained
+from pathgate.criteria.separation import DEFAULT_PATHS, Blocker, Separation, explained, on_two_sides
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.names import quoted
@@ -71,8 +71,7 @@ def _sound_sides(call: Call, member: str, place: int, said: Any) -> dict[str, An
 def _sets(names: NameReader, place: tuple[str | int, ...], said: dict[str, Any]) -> Statement:
     """x, y and given of a statement, or x and given of a sweep; a node on two sides is a fault."""
     xs, ys, given = (names.mask(said.get(member, []), (*place, member)) for member in ("x", "y", "given"))
-    shared = (xs & ys) | (xs & given) | (ys & given)
-    for name in names.graph.names_of(shared):
+    for name in names.graph.names_of(on_two_sides(xs, ys, given)):
         detail = f"{quoted(name)} is named on more than one side"
         names.faults.append(Fault("invalid-request", place, detail, (name,)))
     return xs, ys, given
