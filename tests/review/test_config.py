@@ -94,7 +94,7 @@ def test_each_fault_is_found_at_its_place(change: dict[str, Any], faults: list[t
     "member",
     [
         *("formula", "derived", "rows_exist_because", "missing_because", "fixed_effects", "weighted_by"),
-        *("matched_on", "outside_graph", "accept", "dialect"),
+        *("matched_on", "outside_graph", "accept"),
     ],
 )
 def test_what_is_not_built_yet_is_refused_by_name(member: str):
@@ -102,7 +102,7 @@ def test_what_is_not_built_yet_is_refused_by_name(member: str):
 
 
 def test_other_things_not_built_yet_are_refused_and_not_misread():
-    for member, said in (("row_filter", "depot = 'north'"), ("population", "whole")):
+    for member, said in (("dialect", "parcel"), ("population", "whole")):
         with pytest.raises(InvalidConfig) as caught:
             read_config(GOOD | {member: said}, GRAPH)
         (fault,) = caught.value.faults

@@ -13,8 +13,9 @@ from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import hint_within, quoted
 from pathgate.review.errors import InvalidConfig
-from pathgate.review.schema import CONFIG_SCHEMA
+from pathgate.review.schema import CONFIG_SCHEMA, STANDARD_DIALECT
 from pathgate.review.shape import Shape, are_cut_off
+from pathgate.review.sql_names import Assumed, SqlFilter, read_sql_filter
 
 NO_META = object()
 """Stands where a config has no ``meta``: null is something a config may say."""
@@ -50,6 +51,7 @@ class Config:
         asks: the total effect, or the direct one.
         meta: what the caller put there, which may be None; ``NO_META`` where nothing.
         may_read_unmeasured: may conditions on the rows read unmeasured nodes? Not in a team's config.
+        assumed: what its row filter leaves unsaid.
     """
 
     name: str
@@ -61,6 +63,7 @@ class Config:
     asks: Asks = "total"
     meta: object = NO_META
     may_read_unmeasured: bool = False
+    assumed: tuple[Assumed, ...] = ()
 
 
 def read_config(value: object, graph: CausalGraph) -> Config:
@@ -101,7 +104,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     names = NameReader(graph, faults)
     treatments, outcomes = understand_ends(said, names)
     covariates = names.read(said.get("covariates", []), ("covariates",))
-    parts = read_parts(said.get("row_filter", []), names, ("row_filter",))
+    parts, assumed = _understand_rows(said, names, (*treatments, *outcomes, *covariates))
     if faults:
         return None
     return Config(
@@ -113,7 +116,27 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         row_filter_fixed=said.get("row_filter_fixed", False),
         asks=said.get("asks", "total"),
         meta=said.get("meta", NO_META),
+        assumed=assumed,
     )
+
+
+def _understand_rows(
+    value: Mapping[str, Any], names: NameReader, modelled: Sequence[Named]
+) -> tuple[tuple[FilterPart, ...], tuple[Assumed, ...]]:
+    """The parts of the row filter, and what is assumed about it; the model's columns must be left something."""
+    said, place = value.get("row_filter", []), ("row_filter",)
+    if not isinstance(said, str):
+        return read_parts(said, names, place), ()
+    if any(fault.place == ("dialect",) for fault in names.faults):
+        return (), ()
+    dialect = value.get("dialect", STANDARD_DIALECT)
+    found: SqlFilter = read_sql_filter(said, dialect, names.graph, names.faults, place)
+    for named in modelled:
+        if found.emptied >> named.node & 1:
+            name = names.graph.name(named.node)
+            detail = f"only rows where {quoted(name)} is null are kept, and the model needs its values"
+            names.faults.append(Fault("invalid-request", place, detail, (name,)))
+    return tuple(FilterPart(part, place) for part in found.parts), found.assumed
 
 
 def understand_ends(

@@ -14,6 +14,7 @@ from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.measuring import MeasureNext, measure_next
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
+from pathgate.review.assumptions import assumption_findings
 from pathgate.review.breaks import breaking_findings
 from pathgate.review.claims import Claim
 from pathgate.review.config import NO_META, Config
@@ -74,6 +75,7 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
         *degenerate_findings(claim, config),
         *breaking_findings(claim, config, deadline),
         *warning_findings(claim, config, deadline),
+        *assumption_findings(claim, config),
     ]
     findings.sort(key=lambda finding: _GRAVITY[finding.severity])
     verdict = _verdict(claim, findings)

@@ -103,5 +103,16 @@ RULES: dict[str, Rule] = {
         ),
         Rule("outcome-precedes-treatment", "warning", "The outcome is a cause of the treatment."),
         Rule("treatment-precedes-treatment", "warning", "One treatment is a cause of another."),
+        Rule(
+            "missing-at-random-assumed",
+            "note",
+            "Rows go missing where a column is null: assumed unrelated to everything in the graph.",
+        ),
+        Rule(
+            "join-selects-rows",
+            "note",
+            "A join keeps only rows with a partner: assumed unrelated to everything in the graph.",
+        ),
+        Rule("rows-are-groups", "note", "The rows are groups: the graph is taken to speak of them."),
     )
 }

@@ -6,6 +6,29 @@ from typing import Any
 
 Schema = dict[str, Any]
 
+STANDARD_DIALECT = "standard"
+"""The SQL of the standard, as far as most engines agree on it."""
+
+DIALECTS = (
+    STANDARD_DIALECT,
+    *(
+        "athena",
+        "bigquery",
+        "clickhouse",
+        "databricks",
+        "doris",
+        "dremio",
+        "drill",
+        "druid",
+        "duckdb",
+        "exasol",
+    ),
+    *("fabric", "hive", "materialize", "mysql", "oracle", "postgres", "presto", "redshift", "risingwave"),
+    *("snowflake", "spark", "spark2", "sqlite", "starrocks", "teradata", "trino", "tsql"),
+)
+
+MOST_SQL_CHARACTERS = 20_000
+
 NAME: Schema = {"type": "string", "minLength": 1, "maxLength": 200, "title": "a column name"}
 
 NAMES: Schema = {
@@ -67,13 +90,24 @@ CONFIG_SCHEMA: Schema = {
         "asks": ASKS,
         "covariates": {**NAMES, "description": "the columns that the model adjusts for"},
         "row_filter": {
-            **PARTS,
-            "description": "which rows the model sees: the columns its filter reads (together one condition),"
-            " or one {columns, fixed} for each condition joined by AND",
-            "x-not-yet-types": {
-                "string": "a row filter as SQL text is not supported by this version;"
-                " list the columns it reads, or its conditions as {columns, fixed}"
-            },
+            "title": "a SQL condition, a SELECT, or a list of column names and conditions",
+            "description": "which rows the model sees: a SQL condition (or the whole SELECT that it stands in),"
+            " or a list: the columns its filter reads (together one condition), or one {columns, fixed} for each"
+            " condition joined by AND",
+            "anyOf": [
+                {
+                    "type": "string",
+                    "title": "a SQL condition or a SELECT",
+                    "minLength": 1,
+                    "maxLength": MOST_SQL_CHARACTERS,
+                },
+                PARTS,
+            ],
+        },
+        "dialect": {
+            "enum": list(DIALECTS),
+            "default": STANDARD_DIALECT,
+            "description": "in whose SQL the row filter is written",
         },
         "row_filter_fixed": {
             "type": "boolean",
@@ -90,7 +124,6 @@ CONFIG_SCHEMA: Schema = {
     "required": ["treatment", "outcome", "covariates"],
     "additionalProperties": False,
     "x-not-yet": [
-        "dialect",
         "formula",
         "derived",
         "rows_exist_because",

@@ -12,6 +12,7 @@ from pathgate.criteria.paths import Trail
 from pathgate.criteria.selection import Kept
 from pathgate.graphs.masks import members
 from pathgate.graphs.names import quoted
+from pathgate.review.visible import visible
 
 _ARROWS = {"forward": "→", "backward": "←", "both": "↔"}
 
@@ -33,12 +34,26 @@ def part_text(part: object) -> str:
 
     >>> part_text(["region", "depot"]), part_text({"columns": "region", "fixed": True})
     ('"region" and "depot"', 'one value of "region"')
+    >>> part_text("depot = 'north'")
+    "`depot = 'north'`"
     """
+    if isinstance(part, str):
+        return f"`{shortened(part)}`"
     if isinstance(part, Mapping):
         columns = part["columns"]
         shown = listed([columns] if isinstance(columns, str) else columns)
         return f"one value of {shown}" if part.get("fixed") else shown
-    return part if isinstance(part, str) else listed(part)  # type: ignore[arg-type] # a list of names
+    return listed(part)  # type: ignore[arg-type] # a list of names
+
+
+def shortened(sql: str) -> str:
+    """SQL text on one line, cut short where it is long.
+
+    >>> shortened("depot  IN\\n('north')")
+    "depot IN ('north')"
+    """
+    line = visible(" ".join(sql[:400].split()))
+    return line if len(line) <= 120 else line[:117] + "…"
 
 
 def arrow_text(kept: Kept, trail: Trail, conditioned: int) -> str:
@@ -56,7 +71,8 @@ def names_in(kept: Kept, nodes: int) -> tuple[str, ...]:
 def _node(kept: Kept, node: int, conditioned: int) -> str:
     name = kept.graph.name(node)
     if not name:
-        return "{" + part_text(kept.part_of[node].written) + "}"
+        written = kept.part_of[node].written
+        return "{" + (shortened(written) if isinstance(written, str) else part_text(written)) + "}"
     # Quotes only where a name could be misread as part of the drawing.
     shown = name if name.isprintable() and not set(name) & set(' →←↔[](){}"') else quoted(name)
     if conditioned >> node & 1:

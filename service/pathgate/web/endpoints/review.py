@@ -178,6 +178,31 @@ OPERATION = Operation(
                 },
             },
         ),
+        Example(
+            "a-filter-in-sql",
+            "The condition on tickets is to be dropped; the one on the region holds it at one value and may stay.",
+            {
+                "graph": {
+                    "nodes": ["region", "late_delivery", "ticket_opened", "order_value", "refund"],
+                    "edges": [
+                        {"source": "region", "target": "late_delivery"},
+                        {"source": "region", "target": "refund"},
+                        {"source": "late_delivery", "target": "refund"},
+                        {"source": "late_delivery", "target": "ticket_opened"},
+                        {"source": "order_value", "target": "ticket_opened"},
+                        {"source": "order_value", "target": "refund"},
+                    ],
+                },
+                "config": {
+                    "name": "refunds-in-the-north",
+                    "treatment": "late_delivery",
+                    "outcome": "refund",
+                    "covariates": [],
+                    "row_filter": "ticket_opened = TRUE AND region = 'north'",
+                    "dialect": "duckdb",
+                },
+            },
+        ),
         *(
             Example(config["name"], config["meta"]["why"], {"graph": demo_graph(), "config": config})
             for config in demo_configs()

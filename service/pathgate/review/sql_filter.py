@@ -1,0 +1,176 @@
+"""What does a row filter in SQL select on? Its conditions, each with the columns it reads.
+
+Conditions are those of WHERE and HAVING and those that an inner join adds in its ON. A condition fixes a
+column only where nothing but one constant can be left of it; in doubt it does not, which is the cautious
+reading (semantics: a part that narrows never blocks). What cannot be read so is refused by name.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+from sqlglot import TokenType, exp
+from sqlglot.dialects.dialect import Dialect
+
+from pathgate.graphs.names import quoted
+from pathgate.review.sql_bounds import SqlRefused
+from pathgate.review.sql_meaning import (
+    fixed_column,
+    is_always_true,
+    is_key_of_join,
+    is_never_true,
+    null_test_of,
+)
+from pathgate.review.sql_select import Joined, read_select
+from pathgate.review.sql_text import SqlText, Stretch, parts_of, read_sql
+
+# Here a condition must be a truth value; elsewhere any number but zero counts as true.
+_STRICT_TRUTH = {
+    *("dialect", "athena", "bigquery", "databricks", "hive", "materialize", "postgres", "presto", "redshift"),
+    *("risingwave", "spark", "spark2", "trino"),
+}
+_UNREAD = (
+    (exp.Exists, "a query inside the row filter"),
+    (exp.SetOperation, "UNION, INTERSECT or EXCEPT"),
+    (exp.With, "WITH"),
+    (exp.Lambda, "a function written in place (->)"),
+    (exp.Command, "a statement that is no SELECT"),
+)
+
+
+@dataclass(frozen=True, slots=True)
+class Condition:
+    """One part of a filter.
+
+    Attributes:
+        written: its SQL text.
+        columns: what it reads.
+        fixed: does it hold its one column at one constant?
+        null_test: what it asks, where it does nothing but ask whether its one column is null.
+        is_key: does it only say which rows of two tables belong together?
+        words: what stands in it for a function without brackets (CURRENT_USER), though it might name a column.
+    """
+
+    written: str
+    columns: tuple[exp.Column, ...]
+    fixed: bool = False
+    null_test: str = ""
+    is_key: bool = False
+    words: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Conditions:
+    """What a row filter in SQL says.
+
+    Attributes:
+        dialect: the one it is written in.
+        parts: its conditions in the order of the text, none twice.
+        joined: what its SELECT joins; None for a bare condition.
+    """
+
+    dialect: Dialect
+    parts: tuple[Condition, ...]
+    joined: Joined | None = None
+
+
+def sql_conditions(text: str, dialect_name: str) -> Conditions:
+    """The parts of a row filter in SQL.
+
+    Raises:
+        SqlRefused: it is no condition, or holds what is not read.
+
+    >>> found = sql_conditions("region = 'north' AND weight BETWEEN 1 AND 5", "standard")
+    >>> [(part.written, part.fixed) for part in found.parts]
+    [("region = 'north'", True), ('weight BETWEEN 1 AND 5', False)]
+    """
+    sql = read_sql(text, dialect_name)
+    try:
+        return _conditions(sql)
+    except RecursionError:
+        message = "the SQL text is nested too deeply"
+        raise SqlRefused(message) from None
+
+
+def _conditions(sql: SqlText) -> Conditions:
+    _refuse_unread(sql.tree)
+    if not isinstance(sql.tree, exp.Select):
+        parts = _Reading(sql.dialect).conditions(sql.whole, sql.tree)
+        return Conditions(sql.dialect, _each_once(parts))
+    joined = read_select(sql)
+    listed: list[Condition] = []
+    for clause in joined.clauses:
+        is_having = clause.kind == TokenType.HAVING
+        grouped = joined.groups if is_having else ()
+        reading = _Reading(sql.dialect, joins=joined.has_joins, may_aggregate=is_having, grouped=grouped)
+        listed += reading.conditions(clause.stretch, clause.tree)
+    return Conditions(sql.dialect, _each_once(listed), joined)
+
+
+@dataclass(frozen=True, slots=True)
+class _Reading:
+    """How the conditions of one clause are to be read."""
+
+    dialect: Dialect
+    joins: bool = False
+    may_aggregate: bool = False
+    grouped: tuple[exp.Column, ...] = ()
+
+    def conditions(self, stretch: Stretch, tree: exp.Expr) -> Iterator[Condition]:
+        for part, conjunct in parts_of(stretch, tree, self.dialect):
+            read = self._condition(part, conjunct, tree)
+            if read is not None:
+                yield read
+
+    def _condition(self, part: Stretch, conjunct: exp.Expr | None, tree: exp.Expr) -> Condition | None:
+        node = tree if conjunct is None else conjunct
+        columns = list(node.find_all(exp.Column))
+        if node.find(exp.Window):
+            raise _refused("a window function has no place in a condition", part.written)
+        if node.find(exp.AggFunc):
+            if not self.may_aggregate:
+                raise _refused("an aggregate has no place in a condition on single rows", part.written)
+            columns += self.grouped
+        if not columns:
+            if is_always_true(node) is not True:
+                raise _refused("this condition reads no column, so it keeps all rows or none", part.written)
+            return None
+        functions = self.dialect.parser_class.NO_PAREN_FUNCTIONS
+        words = tuple(token.text for token in part.tokens if token.token_type in functions)
+        if conjunct is None:
+            return Condition(part.written, tuple(columns), words=words)
+        if is_never_true(node):
+            raise _refused("nothing compares with NULL, so no row is kept; write IS NULL", part.written)
+        null_test, fixed = null_test_of(node), fixed_column(node, is_strict=self._is_strict) is not None
+        is_key = self.joins and is_key_of_join(node)
+        return Condition(part.written, tuple(columns), fixed, null_test, is_key, words)
+
+    @property
+    def _is_strict(self) -> bool:
+        return type(self.dialect).__name__.lower() in _STRICT_TRUTH
+
+
+def _each_once(conditions: Iterator[Condition] | list[Condition]) -> tuple[Condition, ...]:
+    """A condition that is written twice says nothing new the second time."""
+    return tuple({condition.written: condition for condition in conditions}.values())
+
+
+def _refused(why: str, written: str) -> SqlRefused:
+    return SqlRefused(f"{why}: {quoted(written)}")
+
+
+def _refuse_unread(tree: exp.Expr) -> None:
+    for node in tree.walk():
+        is_inner = isinstance(node, exp.Query) and not isinstance(node, exp.SetOperation) and node is not tree
+        what = "a query inside the row filter" if is_inner else _unread(node)
+        if what:
+            raise SqlRefused(
+                f"{what} is not read by this version: write the condition itself", "not-supported"
+            )
+
+
+def _unread(node: exp.Expr) -> str:
+    if isinstance(node, exp.Column) and node.args.get("join_mark"):
+        return "the outer join mark (+)"
+    return next((words for kind, words in _UNREAD if isinstance(node, kind)), "")
