@@ -516,3 +516,12 @@ def test_text_of_every_kind_stays_within_strings():
             (written, {"depot"}, True),
             ("weight > 1", {"weight"}, False),
         ]
+
+
+def test_a_function_without_brackets_is_not_taken_for_the_column_of_its_name():
+    graph = read_graph({"nodes": ["late", "refund", "depot", "current_user"], "edges": []})
+    value = {"treatment": "late", "outcome": "refund", "covariates": []}
+    with pytest.raises(InvalidConfig, match="put the column's name in quotes"):
+        read_config(value | {"row_filter": "CURRENT_USER = depot"}, graph)
+    (part,) = read_config(value | {"row_filter": '"current_user" = depot'}, graph).filter_parts
+    assert graph.names_of(part.part.columns) == ("depot", "current_user")
