@@ -19,6 +19,9 @@ from pathgate.criteria.selection import Kept, Label
 from pathgate.graphs.graph import CausalGraph, Edge
 from pathgate.graphs.masks import members, unpack
 
+# Up to this many nodes, going bit by bit is quicker than setting up an array.
+_FEW = 64
+
 Arrow = Literal["forward", "backward", "both"]
 Role = Literal["chain", "fork", "collider"]
 Because = Literal["not-conditioned", "conditioned", "descendant-conditioned"]
@@ -149,6 +152,8 @@ def opened_by(graph: CausalGraph, collider: int, openers: int) -> Trail:
 
 def _flags(graph: CausalGraph, mask: int) -> bytes:
     """A mask as one byte a node: looking up a bit of a wide mask would copy the mask."""
+    if graph.size <= _FEW:
+        return bytes([mask >> node & 1 for node in range(graph.size)])
     return unpack(mask & graph.everything, graph.size).tobytes()
 
 

@@ -115,14 +115,16 @@ class _Roles:
 def _advice(claim: Claim, node: int, remedy: Remedy | None, *, is_sound: bool) -> Advice:
     if claim.ends >> node & 1:
         return "keep"
-    is_used = bool(claim.covariates >> node & 1) or any(part.columns >> node & 1 for part in claim.parts)
+    is_covariate = bool(claim.covariates >> node & 1)
+    is_used = is_covariate or any(part.columns >> node & 1 for part in claim.parts)
     if is_sound:
-        if not claim.covariates >> node & 1:
+        if not is_covariate:
             return "keep" if is_used else "leave-out"
         without = claim.covariates & ~(1 << node)
         return "optional" if claim.is_carried_by(without, claim.parts) else "keep"
     if remedy is None:
         return "keep" if is_used and not claim.effect.forbidden >> node & 1 else "leave-out"
     if remedy.covariates >> node & 1:
-        return "keep" if claim.covariates >> node & 1 else "add"
-    return "drop" if is_used else "leave-out"
+        return "keep" if is_covariate else "add"
+    is_dropped = is_covariate or any(part.columns >> node & 1 for part in remedy.drop_parts)
+    return "drop" if is_dropped else "keep" if is_used else "leave-out"
