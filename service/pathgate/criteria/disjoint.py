@@ -35,7 +35,8 @@ def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, rem
     paths.take_short_ones(near_x & ~inevitable)
     # Where what is nearest to x is no larger than the ways found, it is a smallest set already.
     if not cliques.around(xs) & ~(choosable | removed | xs):
-        nearest = cliques.touched(ys, near_x | removed) & ~removed
+        _reached, stopped = cliques.spread(ys, near_x | removed)
+        nearest = stopped & ~removed
         if nearest.bit_count() == inevitable.bit_count() + len(paths.after) // 2:
             return nearest
     while (last := paths.search()) is not None:

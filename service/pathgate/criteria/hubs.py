@@ -168,8 +168,8 @@ class Cliques:
             found |= parents[lowest.bit_length() - 1]
         return unopened, found
 
-    def touched(self, starts: int, stopping: int) -> int:
-        """The nodes of ``stopping`` that can be reached from ``starts`` without passing others of them."""
+    def spread(self, starts: int, stopping: int) -> tuple[int, int]:
+        """What can be reached from ``starts`` without passing ``stopping``, and which of those it stops at."""
         seen, opened, leaving = starts, 0, starts
         while leaving:
             lowest = leaving & -leaving
@@ -179,7 +179,8 @@ class Cliques:
             new &= ~seen
             seen |= new
             leaving |= new & ~stopping
-        return seen & stopping
+        stopped = seen & stopping & ~starts
+        return seen & ~stopped, stopped
 
     def around(self, nodes: int) -> int:
         """Everything that shares a clique with one of the nodes."""

@@ -51,32 +51,37 @@ class Separators:
         return Hubs.over(self.graph, self.xs | self.ys | self.required)
 
     @cached_property
+    def _augmented(self) -> Cliques | Hubs:
+        """The graph to be cut, in the form that suits its size."""
+        if self.graph.is_small:
+            return Cliques.over(self.graph, self.xs | self.ys | self.required)
+        return self._hubs
+
+    @cached_property
     def _choosable(self) -> int:
         """The nodes that a cut may take: allowed, relevant, and not there already."""
-        return self.allowed & self._hubs.relevant & ~(self.xs | self.ys | self.required)
+        return self.allowed & self._augmented.relevant & ~(self.xs | self.ys | self.required)
 
     @cached_property
     def exists(self) -> bool:
         """Does any set within the bounds separate?"""
-        reached, _stopped = self._hubs.spread(self.xs, self._choosable | self.required)
+        reached, _stopped = self._augmented.spread(self.xs, self._choosable | self.required)
         return not reached & self.ys
 
     def minimal(self) -> int | None:
         """A set that separates, of which no part that holds ``required`` does; None where none separates."""
         if not self.exists:
             return None
-        _, near_x = self._hubs.spread(self.xs, self._choosable | self.required)
-        _, near_both = self._hubs.spread(self.ys, near_x | self.required)
+        _, near_x = self._augmented.spread(self.xs, self._choosable | self.required)
+        _, near_both = self._augmented.spread(self.ys, near_x | self.required)
         return (near_both & self._choosable) | self.required
 
     def smallest(self) -> int | None:
         """A separating set of the fewest nodes: of those the one nearest to x. None where none separates."""
-        if self.graph.is_small:
-            cliques = Cliques.over(self.graph, self.xs | self.ys | self.required)
-            if are_apart(self.graph, self.xs, self.ys, self.required, cliques.relevant):
+        if isinstance(self._augmented, Cliques):
+            if are_apart(self.graph, self.xs, self.ys, self.required, self._augmented.relevant):
                 return self.required
-            choosable = self.allowed & cliques.relevant & ~(self.xs | self.ys | self.required)
-            found = fewest_nodes_between(cliques, self.xs, self.ys, choosable, self.required)
+            found = fewest_nodes_between(self._augmented, self.xs, self.ys, self._choosable, self.required)
             return None if found is None else found | self.required
         if not self.exists:
             return None
@@ -114,13 +119,13 @@ class Separators:
 
     def _absorbed(self, side: int) -> int:
         """The side of x with every neighbour that no cut may take."""
-        reached, _stopped = self._hubs.spread(side, self._choosable | self.required)
+        reached, _stopped = self._augmented.spread(side, self._choosable | self.required)
         return reached
 
     def _nearest(self, side: int) -> int | None:
         """The minimal separator nearest to a side of x: the part of its neighbours that y's side touches."""
         if side & self.ys:
             return None
-        _, around = self._hubs.spread(side, self._choosable | self.required)
-        _, touched = self._hubs.spread(self.ys, around | self.required)
+        _, around = self._augmented.spread(side, self._choosable | self.required)
+        _, touched = self._augmented.spread(self.ys, around | self.required)
         return touched & self._choosable

@@ -58,7 +58,10 @@ def column_roles(
         OutOfTime: the deadline came first.
     """
     # Roles tell how columns stand to the effect as a whole, whichever effect is asked for.
-    roles = _Roles(total_effect(keep_rows(claim.graph), claim.treatments, claim.outcomes))
+    if claim.asks == "total":
+        roles = _Roles(claim.effect_among(()))
+    else:
+        roles = _Roles(total_effect(keep_rows(claim.graph), claim.treatments, claim.outcomes))
     answers = []
     for node in members(columns):
         deadline.poll()
