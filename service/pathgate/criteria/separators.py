@@ -70,9 +70,9 @@ class Separators:
 
     def minimal(self) -> int | None:
         """A set that separates, of which no part that holds ``required`` does; None where none separates."""
-        if not self.exists:
+        reached, near_x = self._augmented.spread(self.xs, self._choosable | self.required)
+        if reached & self.ys:
             return None
-        _, near_x = self._augmented.spread(self.xs, self._choosable | self.required)
         _, near_both = self._augmented.spread(self.ys, near_x | self.required)
         return (near_both & self._choosable) | self.required
 

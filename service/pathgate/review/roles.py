@@ -17,6 +17,7 @@ from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import find_open_path
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import keep_rows
+from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Claim
@@ -107,10 +108,14 @@ class _Roles:
     def _as_collider(self, node: int) -> Role | None:
         graph = self._effect.back_door_graph
         # Where a valid set keeps treatment and outcome apart, whatever joins them again is this node's doing.
+        if self._apart >> node & 1 or are_separated(
+            graph, self._effect.treatments, self._effect.outcomes, self._apart | 1 << node
+        ):
+            return None
         conditions = Conditions.on(graph, self._apart | 1 << node)
         trail = find_open_path(graph, self._effect.treatments, self._effect.outcomes, conditions)
         colliders = [passed for passed, role in trail.inner if role == "collider"] if trail else []
-        if not colliders or self._apart >> node & 1:
+        if not colliders:
             return None
         return "collider" if node in colliders else "descendant-of-collider"
 
