@@ -39,6 +39,9 @@ from tests.linear_worlds import (
 from tests.strategies import random_graph, random_parts, random_question, shuffled
 from tests.values import Graph, arrows_of, graph_of, node_names, topological_names
 
+# Worlds are enumerated exactly: not for a quick look.
+pytestmark = pytest.mark.slow
+
 MANY = [pytest.param(range(400), id="400"), pytest.param(range(400, 5000), id="4600", marks=pytest.mark.slow)]
 SOME = [pytest.param(range(300), id="300"), pytest.param(range(300, 1500), id="1200", marks=pytest.mark.slow)]
 CONFOUNDED = graph_of(("f", "x"), ("f", "y"), ("x", "y"))

@@ -18,6 +18,9 @@ from pathgate.cli.main import main
 from pathgate.version import VERSION
 from tests.cli.shelf import BIASED, COMMAND, ENVIRONMENT, GRAPH, SOUND, write
 
+# Every test starts processes: not for a quick look.
+pytestmark = pytest.mark.slow
+
 ROOT = Path(__file__).resolve().parents[2]
 HEAVY = [
     "numpy",

@@ -32,6 +32,9 @@ from tests.published.cases import load_published, rows_of
 from tests.strategies import all_dags, random_graph, shuffled
 from tests.values import Graph, arrows_of, graph_of, node_names, topological_names
 
+# Classes are counted member by member: not for a quick look.
+pytestmark = pytest.mark.slow
+
 Arrows = frozenset[tuple[str, str]]
 Times = dict[str, int]
 

@@ -18,6 +18,9 @@ from tests.linear_worlds import TOLERANCE, draw_world, partial_correlation
 from tests.strategies import Question, all_dags, random_graph, random_question, renamed, shuffled
 from tests.values import Graph, node_names
 
+# Relations are listed whole: not for a quick look.
+pytestmark = pytest.mark.slow
+
 GRAPHS = [
     pytest.param(range(600), id="600"),
     pytest.param(range(600, 4_000), id="3400", marks=pytest.mark.slow),

@@ -24,6 +24,9 @@ from tests.published.cases import load_published
 from tests.strategies import all_dags, random_graph, random_parts
 from tests.values import Graph, is_adjacent, measured_names
 
+# What follows is derived by closure: not for a quick look.
+pytestmark = pytest.mark.slow
+
 NEVER = Deadline.never()
 Statement = tuple[int, int, int]
 

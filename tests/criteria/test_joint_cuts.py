@@ -14,6 +14,9 @@ from pathgate.graphs import read_graph
 from tests.brute import inclusion_minimal, subsets
 from tests.strategies import PLAIN_NAMES, random_graph
 
+# All subsets are tried on every graph: not for a quick look.
+pytestmark = pytest.mark.slow
+
 NODES = frozenset(PLAIN_NAMES[:8])
 
 

@@ -20,6 +20,9 @@ from tests.criteria.recovering import recovery_by_paths
 from tests.strategies import Question, random_graph, random_parts, random_question, shuffled
 from tests.values import Graph, bidirected_of, fresh_name, graph_of, measured_names, node_names
 
+# Every choice of measuring is tried on every graph: not for a quick look.
+pytestmark = pytest.mark.slow
+
 MANY = [
     pytest.param(range(150), id="150"),
     pytest.param(range(150, 2500), id="2350", marks=pytest.mark.slow),

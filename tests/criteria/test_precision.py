@@ -19,6 +19,9 @@ from tests.published.cases import rows_of, selected_on
 from tests.strategies import random_graph, shuffled
 from tests.values import Graph, arrows_of, graph_of, node_names
 
+# Variances are compared over many worlds: not for a quick look.
+pytestmark = pytest.mark.slow
+
 NEVER = Deadline.never()
 TOLERANCE = 1e-9
 # w → x → y, w ↔ m ↔ y

@@ -18,6 +18,9 @@ from tests.linear_worlds import TOLERANCE, Matrix, draw_world
 from tests.strategies import random_graph, renamed
 from tests.values import Graph, bidirected_of, graph_of, measured_names, node_names
 
+# All minors and treks are listed: not for a quick look.
+pytestmark = pytest.mark.slow
+
 SEEDS = [
     pytest.param(range(500), id="500"),
     pytest.param(range(500, 4000), id="3500", marks=pytest.mark.slow),

@@ -25,6 +25,9 @@ from tests.discrete_worlds import is_within_reach
 from tests.strategies import Question, random_graph, random_parts, random_question
 from tests.values import Graph, graph_of, measured_names, topological_names
 
+# Worlds are enumerated exactly: not for a quick look.
+pytestmark = pytest.mark.slow
+
 WORLDS = [
     pytest.param(range(250), id="250"),
     pytest.param(range(250, 6000), id="5750", marks=pytest.mark.slow),
