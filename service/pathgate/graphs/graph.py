@@ -285,6 +285,30 @@ class CausalGraph:
         names = self.names + ("",) * len(sets)
         return replace(self, names=names, sources=sources[order], targets=targets[order])
 
+    def with_columns(self, columns: Iterable[tuple[str, int]], aliases: Mapping[str, int]) -> CausalGraph:
+        """The same graph with further columns at the end, each with its name and its parents, and further aliases.
+
+        Parents may be columns added before. A column is recorded when the latest of its parents is.
+
+        >>> graph = CausalGraph.of(("rain", "delay")).with_columns([("score", 0b11)], {"mm": 0})
+        >>> graph.names, graph.has_arrow("delay", "score"), dict(graph.aliases)
+        (('rain', 'delay', 'score'), True, {'mm': 0})
+        """
+        named = list(columns)
+        grown = self.with_leaves(parents for _name, parents in named)
+        recorded = dict(self.recorded)
+        for node, (_name, parents) in enumerate(named, start=self.size):
+            moments = [recorded[parent] for parent in members(parents) if parent in recorded]
+            if moments:
+                recorded[node] = max(moments)
+        return replace(
+            grown,
+            names=self.names + tuple(name for name, _parents in named),
+            measured=self.measured | ((1 << len(named)) - 1) << self.size,
+            recorded=recorded,
+            aliases={**self.aliases, **aliases},
+        )
+
 
 def _masks(size: int, keys: IntArray, values: IntArray) -> list[int]:
     masks = [0] * size
