@@ -31,7 +31,7 @@ class SqlRefused(Exception):
         self.slug = slug
 
 
-def tokens_of(text: str, dialect: Dialect) -> tuple[Token, ...]:
+def tokens_of(text: str, dialect: Dialect, wanted: str = "condition") -> tuple[Token, ...]:
     """The words of a text that a parser can be trusted with, a last semicolon left out.
 
     Raises:
@@ -46,10 +46,9 @@ def tokens_of(text: str, dialect: Dialect) -> tuple[Token, ...]:
         tokens.pop()
     for token in tokens:
         if token.token_type == TokenType.SEMICOLON:
-            raise SqlRefused(f"a row filter is one condition or one SELECT, and ; ends it{_where(token)}")
+            raise SqlRefused(f"the SQL text goes on after the ; that ends it{_where(token)}")
     if not tokens:
-        message = "the SQL text holds no condition"
-        raise SqlRefused(message)
+        raise SqlRefused(f"the SQL text holds no {wanted}")
     _refuse_nesting(tokens)
     _refuse_rereading(tokens, dialect)
     return tuple(tokens)

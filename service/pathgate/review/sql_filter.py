@@ -20,23 +20,12 @@ from pathgate.review.sql_meaning import (
     is_always_true,
     is_key_of_join,
     is_never_true,
+    is_strict_about_truth,
     null_test_of,
 )
 from pathgate.review.sql_select import Joined, read_select
 from pathgate.review.sql_text import SqlText, Stretch, parts_of, read_sql
-
-# Here a condition must be a truth value; elsewhere any number but zero counts as true.
-_STRICT_TRUTH = {
-    *("dialect", "athena", "bigquery", "databricks", "hive", "materialize", "postgres", "presto", "redshift"),
-    *("risingwave", "spark", "spark2", "trino"),
-}
-_UNREAD = (
-    (exp.Exists, "a query inside the row filter"),
-    (exp.SetOperation, "UNION, INTERSECT or EXCEPT"),
-    (exp.With, "WITH"),
-    (exp.Lambda, "a function written in place (->)"),
-    (exp.Command, "a statement that is no SELECT"),
-)
+from pathgate.review.sql_unread import refuse_unread
 
 
 @dataclass(frozen=True, slots=True)
@@ -94,7 +83,7 @@ def sql_conditions(text: str, dialect_name: str) -> Conditions:
 
 
 def _conditions(sql: SqlText) -> Conditions:
-    _refuse_unread(sql.tree)
+    refuse_unread(sql.tree, inside="the row filter", instead="write the condition itself")
     if not isinstance(sql.tree, exp.Select):
         parts = _Reading(sql.dialect).conditions(sql.whole, sql.tree)
         return Conditions(sql.dialect, _each_once(parts))
@@ -142,13 +131,9 @@ class _Reading:
             return Condition(part.written, tuple(columns), words=words)
         if is_never_true(node):
             raise _refused("nothing compares with NULL, so no row is kept; write IS NULL", part.written)
-        null_test, fixed = null_test_of(node), fixed_column(node, is_strict=self._is_strict) is not None
+        fixed = fixed_column(node, is_strict=is_strict_about_truth(self.dialect)) is not None
         is_key = self.joins and is_key_of_join(node)
-        return Condition(part.written, tuple(columns), fixed, null_test, is_key, words)
-
-    @property
-    def _is_strict(self) -> bool:
-        return type(self.dialect).__name__.lower() in _STRICT_TRUTH
+        return Condition(part.written, tuple(columns), fixed, null_test_of(node), is_key, words)
 
 
 def _each_once(conditions: Iterator[Condition] | list[Condition]) -> tuple[Condition, ...]:
@@ -158,19 +143,3 @@ def _each_once(conditions: Iterator[Condition] | list[Condition]) -> tuple[Condi
 
 def _refused(why: str, written: str) -> SqlRefused:
     return SqlRefused(f"{why}: {quoted(written)}")
-
-
-def _refuse_unread(tree: exp.Expr) -> None:
-    for node in tree.walk():
-        is_inner = isinstance(node, exp.Query) and not isinstance(node, exp.SetOperation) and node is not tree
-        what = "a query inside the row filter" if is_inner else _unread(node)
-        if what:
-            raise SqlRefused(
-                f"{what} is not read by this version: write the condition itself", "not-supported"
-            )
-
-
-def _unread(node: exp.Expr) -> str:
-    if isinstance(node, exp.Column) and node.args.get("join_mark"):
-        return "the outer join mark (+)"
-    return next((words for kind, words in _UNREAD if isinstance(node, kind)), "")

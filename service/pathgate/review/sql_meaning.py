@@ -10,13 +10,24 @@ from decimal import Decimal, InvalidOperation
 from operator import eq, ge, gt, le, lt, ne
 
 from sqlglot import exp
+from sqlglot.dialects.dialect import Dialect
 
+# Here a condition must be a truth value; elsewhere any number but zero counts as true.
+_STRICT_TRUTH = {
+    *("dialect", "athena", "bigquery", "databricks", "hive", "materialize", "postgres", "presto", "redshift"),
+    *("risingwave", "spark", "spark2", "trino"),
+}
 _CONSTANTS = (
     *(exp.Literal, exp.Boolean, exp.National, exp.RawString, exp.HexString, exp.BitString, exp.Placeholder),
     *(exp.Parameter, exp.Neg, exp.Cast, exp.DataType, exp.DataTypeParam, exp.Paren, exp.Var, exp.Date),
 )
 _COMPARISONS = (exp.EQ, exp.NEQ, exp.LT, exp.LTE, exp.GT, exp.GTE)
 _DECIDED = {exp.EQ: eq, exp.NEQ: ne, exp.LT: lt, exp.LTE: le, exp.GT: gt, exp.GTE: ge}
+
+
+def is_strict_about_truth(dialect: Dialect) -> bool:
+    """Must a condition be a truth value in this dialect?"""
+    return type(dialect).__name__.lower() in _STRICT_TRUTH
 
 
 def is_key_of_join(node: exp.Expr) -> bool:
@@ -119,17 +130,18 @@ def is_always_true(node: exp.Expr) -> bool | None:
     if isinstance(bare, exp.Not):
         inner = is_always_true(bare.this)
         return None if inner is None else not inner
-    if (number := _number(bare)) is not None:
+    if (number := number_of(bare)) is not None:
         return number != 0
     if isinstance(bare, exp.EQ) and bare.this == bare.expression and isinstance(bare.this, exp.Literal):
         return True
     if isinstance(bare, _COMPARISONS):
-        left, right = _number(bare.this), _number(bare.expression)
+        left, right = number_of(bare.this), number_of(bare.expression)
         return None if left is None or right is None else bool(_DECIDED[type(bare)](left, right))
     return None
 
 
-def _number(node: exp.Expr) -> Decimal | None:
+def number_of(node: exp.Expr) -> Decimal | None:
+    """The number that a literal says, with its sign; None where it says none."""
     bare = node.unnest()
     sign = 1
     if isinstance(bare, exp.Neg):

@@ -1,30 +1,23 @@
-"""Which columns of a graph does a row filter in SQL read, and what does it assume that it does not say?
+"""Which columns of a graph does a SQL text in a config read, and what does it assume that it does not say?
 
-A name means the node that bears it exactly, else the one node that it fits by the dialect's folding of
-letters; a qualifier is dropped unless a node bears the qualified name. Linear in the filter; the names of the
-graph are folded once, where a name does not fit exactly.
+A row filter gives its parts and what is taken for granted about them; an expression gives its inputs and how
+much of them it keeps. What is declared as outside the graph reads nothing of it and is told apart. Linear.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
-from functools import cached_property
-
-from sqlglot import exp
-from sqlglot.dialects.dialect import Dialect, NormalizationStrategy
 
 from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
-from pathgate.graphs.names import hint_within, quoted
+from pathgate.graphs.names import quoted
 from pathgate.review.sql_bounds import SqlRefused
+from pathgate.review.sql_columns import ColumnFinder, Reads
+from pathgate.review.sql_expression import Keeps, read_expression
 from pathgate.review.sql_filter import Condition, Conditions, sql_conditions
-
-# Where only the names of tables are told apart by the case of their letters, names of columns are not.
-_TABLES_ALONE = {"mysql", "doris", "starrocks", "singlestore"}
-_SENSITIVE_WHEN_QUOTED = (NormalizationStrategy.LOWERCASE, NormalizationStrategy.UPPERCASE)
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,6 +30,7 @@ class Assumed:
         tables: the tables it is about.
         written: the part it is about, where it is about one.
         place: the row filter's.
+        names: the names it is about that the config declares as outside the graph.
     """
 
     kind: str
@@ -44,6 +38,7 @@ class Assumed:
     place: Place
     tables: tuple[str, ...] = ()
     written: str | None = None
+    names: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,161 +56,129 @@ class SqlFilter:
     emptied: int = 0
 
 
-def read_sql_filter(
-    text: str, dialect: str, graph: CausalGraph, faults: list[Fault], place: Place
+def read_sql_filter(  # noqa: PLR0913 - what may be said of names beside the graph, each by its keyword
+    text: str,
+    dialect: str,
+    graph: CausalGraph,
+    faults: list[Fault],
+    place: Place,
+    *,
+    outside: frozenset[str] = frozenset(),
+    coarse: frozenset[str] = frozenset(),
+    missing: Mapping[int, int] | None = None,
 ) -> SqlFilter:
-    """The parts of a row filter in SQL; what is wrong with it is added to ``faults``."""
+    """The parts of a row filter in SQL; what is wrong with it is added to ``faults``.
+
+    Args:
+        text: the condition, or the SELECT that it stands in.
+        dialect: in whose SQL it is written.
+        graph: where its columns are.
+        faults: what is wrong is added here.
+        place: where it stands.
+        outside: names that may be in no graph.
+        coarse: other names of nodes that stand for less than the node: a condition on one fixes nothing.
+        missing: the nodes whose causes of being null are known; nothing is assumed about those.
+    """
     try:
         found = sql_conditions(text, dialect)
     except SqlRefused as refused:
         faults.append(Fault(refused.slug, place, refused.detail))
         return SqlFilter()
-    return _Resolving(graph, found, faults, place).filter()
+    finder = ColumnFinder(graph, found.dialect, faults, place, found.joined, outside, coarse)
+    reading = _Reading(found, finder, mask_of(missing or ()))
+    for condition in found.parts:
+        reading.take(condition)
+    return reading.filter()
 
 
-@dataclass(frozen=True)
-class _Resolving:
-    graph: CausalGraph
+def read_sql_expression(  # noqa: PLR0913 - as above
+    text: str,
+    dialect: str,
+    graph: CausalGraph,
+    faults: list[Fault],
+    place: Place,
+    *,
+    outside: frozenset[str] = frozenset(),
+    coarse: frozenset[str] = frozenset(),
+) -> tuple[int, Keeps]:
+    """The columns that an expression in SQL is computed from, and how much of them it keeps.
+
+    What is wrong with it is added to ``faults``. The mask is empty without a fault where the expression reads
+    nothing but names that are declared as outside the graph. Where ``coarse`` holds the name that it reads, it
+    keeps no more of the column than that does.
+    """
+    try:
+        found = read_expression(text, dialect)
+    except SqlRefused as refused:
+        faults.append(Fault(refused.slug, place, refused.detail))
+        return 0, "computed"
+    finder = ColumnFinder(graph, found.dialect, faults, place, outside=outside, coarse=coarse)
+    reads = finder.read(found.columns, found.words)
+    if reads.columns.bit_count() + len(reads.outside) > 1:
+        return reads.columns, "computed"
+    # Two spellings of one column are one column that occurs twice.
+    return reads.columns, "coarse" if found.keeps == "computed" or reads.is_coarse else found.keeps
+
+
+@dataclass
+class _Reading:
+    """A row filter, read condition by condition."""
+
     found: Conditions
-    faults: list[Fault]
-    place: Place
-    _told: set[str] = field(default_factory=set)
+    finder: ColumnFinder
+    missing: int
+    parts: list[Part] = field(default_factory=list)
+    assumed: list[Assumed] = field(default_factory=list)
+    emptied: int = 0
+    compared: int = 0
+
+    def take(self, condition: Condition) -> None:
+        """Adds what one condition selects on and what it leaves unsaid."""
+        reads = self._read(condition)
+        unmeasured = reads.columns & ~self.finder.graph.measured
+        if reads.outside:
+            self._assume("outside", 0, condition.written, reads.outside)
+        if condition.null_test == "missing" and reads.columns & self.missing:
+            self._refuse_dropped(reads.columns)
+        elif condition.null_test and not unmeasured:
+            if reads.columns & ~self.missing:
+                self._assume("null-test", reads.columns, condition.written)
+            self.emptied |= reads.columns if condition.null_test == "missing" else 0
+        elif reads.columns:
+            fixed = condition.fixed and not reads.outside and not reads.is_coarse
+            self.parts.append(Part(reads.columns, fixed, condition.written))
+            self.compared |= reads.columns & ~unmeasured & ~self.missing
 
     def filter(self) -> SqlFilter:
-        parts: list[Part] = []
-        assumed: list[Assumed] = []
-        emptied = compared = 0
-        for condition in self.found.parts:
-            columns = self._read(condition)
-            if condition.null_test and not columns & ~self.graph.measured:
-                assumed.append(Assumed("null-test", columns, self.place, written=condition.written))
-                emptied |= columns if condition.null_test == "missing" else 0
-            elif columns:
-                parts.append(Part(columns, condition.fixed, condition.written))
-                compared |= columns & self.graph.measured
-        if compared:
-            assumed.append(Assumed("comparison", compared, self.place))
-        return SqlFilter(tuple(parts), (*assumed, *self._of_select()), emptied)
+        """What has been read, with what is assumed about all of it."""
+        if self.compared:
+            self._assume("comparison", self.compared)
+        return SqlFilter(tuple(self.parts), (*self.assumed, *self._of_select()), self.emptied)
 
     def _of_select(self) -> Iterator[Assumed]:
-        joined = self.found.joined
+        joined, place = self.found.joined, self.finder.place
         if joined is not None and joined.selecting:
-            yield Assumed("join", 0, self.place, joined.selecting)
+            yield Assumed("join", 0, place, joined.selecting)
         if joined is not None and joined.groups:
-            yield Assumed("group", mask_of(self._nodes(joined.groups)), self.place)
+            groups = self.finder.read(joined.groups)
+            yield Assumed("group", groups.columns, place, names=groups.outside)
 
-    def _read(self, condition: Condition) -> int:
+    def _read(self, condition: Condition) -> Reads:
         if condition.is_key:
-            nodes = [self._find(column) for column in condition.columns]
+            found = [self.finder.find(column) for column in condition.columns]
+            nodes = {one.node if one is not None else None for one in found}
             # The same column on both sides, or keys that the graph does not know: rows that belong together.
-            if None in nodes or len(set(nodes)) == 1:
-                return 0
-        columns = mask_of(self._nodes(condition.columns))
-        for word in condition.words:
-            self._refuse_word(word, columns)
-        return columns
+            if None in nodes or len(nodes) == 1:
+                return Reads()
+        return self.finder.read(condition.columns, condition.words)
 
-    def _nodes(self, columns: tuple[exp.Column, ...]) -> Iterator[int]:
-        for column in columns:
-            node = self._find(column)
-            if node is None:
-                self._tell(column)
-            else:
-                yield node
+    def _assume(
+        self, kind: str, columns: int, written: str | None = None, names: tuple[str, ...] = ()
+    ) -> None:
+        self.assumed.append(Assumed(kind, columns, self.finder.place, written=written, names=names))
 
-    def _find(self, column: exp.Column) -> int | None:
-        """The one node that a name fits."""
-        if self._is_hidden(column):
-            return None
-        for spelling in self._spellings(column):
-            name = ".".join(part.name for part in spelling)
-            exact = self.graph.index.get(name, self.graph.aliases.get(name))
-            if exact is not None:
-                return exact
-            fitting = self._fitting(spelling)
-            if len(fitting) == 1:
-                return fitting[0]
-        return None
-
-    def _is_hidden(self, column: exp.Column) -> bool:
-        joined = self.found.joined
-        if joined is None:
-            return False
-        return not column.table and column.name.casefold() in joined.aliases
-
-    def _spellings(self, column: exp.Column) -> Iterator[list[exp.Identifier]]:
-        """The name with all its qualifiers, with fewer and fewer of them, and with none."""
-        parts = [part for part in column.parts if isinstance(part, exp.Identifier)]
-        table = self._table_of(column)
-        for start in range(len(parts)):
-            if start == len(parts) - 1 and table:
-                steps = table.split(".")
-                for first in range(len(steps)):
-                    yield [*map(exp.to_identifier, steps[first:]), parts[-1]]
-            yield parts[start:]
-
-    def _table_of(self, column: exp.Column) -> str:
-        joined = self.found.joined
-        return joined.qualifiers.get(column.table.casefold(), "") if joined is not None else ""
-
-    def _fitting(self, spelling: list[exp.Identifier]) -> tuple[int, ...]:
-        return self._folded.get(
-            ".".join(self._key(part.name, quoted_name=bool(part.quoted)) for part in spelling), ()
-        )
-
-    @cached_property
-    def _folded(self) -> Mapping[str, tuple[int, ...]]:
-        known: dict[str, tuple[int, ...]] = {}
-        names = [*zip(self.graph.names, range(self.graph.size), strict=True), *self.graph.aliases.items()]
-        for name, node in names:
-            key = self._key(name, quoted_name=False)
-            if node not in known.get(key, ()):
-                known[key] = (*known.get(key, ()), node)
-        return known
-
-    def _key(self, name: str, *, quoted_name: bool) -> str:
-        strategy = self.found.dialect.normalization_strategy
-        if quoted_name and strategy in _SENSITIVE_WHEN_QUOTED:
-            return name
-        if strategy == NormalizationStrategy.UPPERCASE:
-            return name.upper()
-        is_sensitive = strategy == NormalizationStrategy.CASE_SENSITIVE
-        return (
-            name if is_sensitive and _dialect_name(self.found.dialect) not in _TABLES_ALONE else name.lower()
-        )
-
-    def _tell(self, column: exp.Column) -> None:
-        """Adds the fault of a name that means no node, once for each name."""
-        name = ".".join(part.name for part in column.parts)
-        if name in self._told:
-            return
-        self._told.add(name)
-        several = {node for spelling in self._spellings(column) for node in self._fitting(spelling)}
-        if self._is_hidden(column):
-            detail = (
-                f"{quoted(name)} is something the SELECT computes: write in the condition what it is made of"
-            )
-        elif len(several) > 1:
-            fitting = " and ".join(quoted(self.graph.name(node)) for node in sorted(several))
-            detail = f"{quoted(name)} fits {fitting}: write the name exactly"
-        else:
-            hint = hint_within(self.faults, column.name, self.graph.names, self.graph.aliases)
-            detail = f"no node is named {quoted(name)}{hint}{self._about_quotes(column)}"
-        self.faults.append(Fault("unknown-node", self.place, detail, (name,)))
-
-    def _about_quotes(self, column: exp.Column) -> str:
-        last = column.this
-        is_quoted = isinstance(last, exp.Identifier) and bool(last.args.get("quoted"))
-        return "; quotes of this kind hold a name here, and 'single ones' a text" if is_quoted else ""
-
-    def _refuse_word(self, word: str, columns: int) -> None:
-        node = self.graph.index.get(word, self.graph.aliases.get(word))
-        if node is None:
-            (node, *_) = self._fitting([exp.to_identifier(word)]) or (None,)
-        if node is not None and not columns >> node & 1:
-            detail = f"{quoted(word)} is a function here and not the column: put the column's name in quotes"
-            self.faults.append(Fault("invalid-request", self.place, detail, (self.graph.name(node),)))
-
-
-def _dialect_name(dialect: Dialect) -> str:
-    return type(dialect).__name__.lower()
+    def _refuse_dropped(self, columns: int) -> None:
+        """Of a column whose nulls are said to be dropped, only nulls are to be kept."""
+        (name,) = self.finder.graph.names_of(columns)
+        detail = f"only rows where {quoted(name)} is null are kept, and missing_because says that these are dropped"
+        self.finder.faults.append(Fault("invalid-request", self.finder.place, detail, (name,)))

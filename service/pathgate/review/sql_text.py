@@ -62,8 +62,8 @@ class SqlText:
     tree: exp.Expr
 
 
-def read_sql(text: str, dialect_name: str) -> SqlText:
-    """What a SQL condition or a SELECT says.
+def read_sql(text: str, dialect_name: str, *, wanted: str = "condition") -> SqlText:
+    """What a SQL condition (in complaints: ``wanted``) or a SELECT says.
 
     Raises:
         SqlRefused: it is neither, or it is nested too deeply.
@@ -74,12 +74,12 @@ def read_sql(text: str, dialect_name: str) -> SqlText:
     # The library logs pieces of what it reads; what callers send belongs in no log.
     logging.getLogger("sqlglot").setLevel(logging.CRITICAL)
     dialect = Dialect.get_or_raise("" if dialect_name == STANDARD_DIALECT else dialect_name)
-    tokens = tokens_of(text, dialect)
+    tokens = tokens_of(text, dialect, wanted)
     stretch = Stretch(text, tokens)
     # A query in brackets is read as one, to be refused as one.
     first = next((token for token in tokens if token.token_type != TokenType.L_PAREN), tokens[0])
-    is_select = first.token_type in _WHOLE
-    return SqlText(dialect, stretch, _tree(stretch, dialect, is_select=is_select))
+    wanted = "SELECT" if first.token_type in _WHOLE else wanted
+    return SqlText(dialect, stretch, _tree(stretch, dialect, wanted))
 
 
 def parts_of(stretch: Stretch, tree: exp.Expr, dialect: Dialect) -> list[tuple[Stretch, exp.Expr | None]]:
@@ -114,7 +114,7 @@ def clauses_of(sql: SqlText) -> dict[TokenType, list[Stretch]]:
 def says(stretch: Stretch, tree: exp.Expr, dialect: Dialect) -> bool:
     """Is ``tree`` what this stretch says by itself?"""
     try:
-        return _tree(stretch, dialect, is_select=False) == tree
+        return _tree(stretch, dialect, "condition") == tree
     except SqlRefused:
         return False
 
@@ -127,26 +127,25 @@ def _starts_join(tokens: Sequence[Token], place: int, kind: TokenType | None) ->
     return tokens[place].token_type == TokenType.ON or not is_function
 
 
-def _tree(stretch: Stretch, dialect: Dialect, *, is_select: bool) -> exp.Expr:
+def _tree(stretch: Stretch, dialect: Dialect, wanted: str) -> exp.Expr:
     parser = dialect.parser()
     tokens = list(stretch.tokens)
     try:
-        if is_select:
+        if wanted == "SELECT":
             found = parser.parse(tokens, stretch.text)
         else:
             found = parser.parse_into(exp.Condition, tokens, stretch.text)
     except RecursionError:
         raise too_nested() from None
     except SqlglotError as error:
-        raise SqlRefused(_complaint(error, stretch, is_select=is_select)) from None
+        raise SqlRefused(_complaint(error, stretch, wanted)) from None
     if len(found) != 1 or found[0] is None:
-        message = "the SQL text holds no condition"
-        raise SqlRefused(message)
+        raise SqlRefused(f"the SQL text holds no {wanted}")
     return found[0]
 
 
-def _complaint(error: SqlglotError, stretch: Stretch, *, is_select: bool) -> str:
-    what = "a SELECT" if is_select else "a condition"
+def _complaint(error: SqlglotError, stretch: Stretch, wanted: str) -> str:
+    what = f"an {wanted}" if wanted == "expression" else f"a {wanted}"
     details = error.errors[0] if isinstance(error, ParseError) and error.errors else {}
     word, line, column = details.get("highlight"), details.get("line"), details.get("col")
     if not word or line is None or column is None:
