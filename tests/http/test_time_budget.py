@@ -57,7 +57,7 @@ def test_the_clock_is_looked_at_for_every_treatment_with_a_warning():
     graph = CausalGraph.of(*pairwise(names))
     config = read_config({"treatment": names[1::2], "outcome": names[::2], "covariates": []}, graph)
     clock = Clock()
-    found = list(warning_findings(Claim.of(graph, config), config, Deadline(1, clock)))
+    found = list(warning_findings(Claim.of(config), config, Deadline(1, clock)))
     assert len(found) > 50
     assert clock.looks > len(found)
 

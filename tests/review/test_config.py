@@ -171,14 +171,14 @@ def test_other_names_of_a_column_mean_that_column():
         GRAPH,
     )
     assert [named.node for named in (*config.treatments, *config.covariates)] == [0, 3]
-    assert [part.part.columns for part in config.filter_parts] == [1 << 0, 1 << 3]
-    assert [part.part.written for part in config.filter_parts] == [["deliveries.late"], {"columns": "site"}]
+    assert [part.part.columns for part in config.rows.filter_parts] == [1 << 0, 1 << 3]
+    assert [part.part.written for part in config.rows.filter_parts] == [["deliveries.late"], {"columns": "site"}]
 
 
 def test_bare_names_are_one_part_and_objects_are_parts_of_their_own():
     row_filter = ["weather", {"columns": "depot", "fixed": True}, "late"]
     config = read_config(GOOD | {"row_filter": row_filter}, GRAPH)
-    parts = [(GRAPH.names_of(one.part.columns), one.part.fixed, one.place) for one in config.filter_parts]
+    parts = [(GRAPH.names_of(one.part.columns), one.part.fixed, one.place) for one in config.rows.filter_parts]
     assert parts == [
         (("late", "weather"), False, ("row_filter",)),
         (("depot",), True, ("row_filter", 1)),

@@ -26,7 +26,7 @@ CONFIGS = [
 def roles_in(question: Question) -> dict[str, str]:
     """The role of every node of the graph."""
     graph = read_graph(question.graph)
-    claim = Claim.of(graph, read_config(question.config(), graph))
+    claim = Claim.of(read_config(question.config(), graph))
     found = column_roles(claim, graph.everything, None, Deadline.never(), is_sound=False)
     assert [each.column for each in found] == list(graph.names)
     return {each.column: each.role for each in found}

@@ -49,7 +49,7 @@ def config_of(row_filter: str, dialect: str = STANDARD_DIALECT) -> Any:
 
 def parts_of(row_filter: str, dialect: str = STANDARD_DIALECT) -> Said:
     """Each part as written, the columns it reads, whether it fixes."""
-    parts = [one.part for one in config_of(row_filter, dialect).filter_parts]
+    parts = [one.part for one in config_of(row_filter, dialect).rows.filter_parts]
     return [(str(part.written), set(READ.names_of(part.columns)), part.fixed) for part in parts]
 
 
@@ -360,7 +360,7 @@ def test_joins_and_groups_are_noted():
     assert set(notes) == {name for name, rule in RULES.items() if rule.severity == "note"}
     assert notes["rows-are-groups"] == ["depot"]
     assert notes["join-selects-rows"] == []
-    assert [a.tables for a in config_of(SELECT).assumed if a.kind == "join"] == [("tickets",)]
+    assert [a.tables for a in config_of(SELECT).rows.assumed if a.kind == "join"] == [("tickets",)]
 
 
 @pytest.mark.parametrize(
@@ -378,8 +378,8 @@ def test_joins_and_groups_are_noted():
 )
 def test_only_joins_that_drop_rows_are_noted(joins: str, tables: tuple[str, ...] | None):
     config = config_of(" ".join(["SELECT late FROM", joins]))
-    assert config.filter_parts == ()
-    assert next((assumed.tables for assumed in config.assumed if assumed.kind == "join"), None) == tables
+    assert config.rows.filter_parts == ()
+    assert next((assumed.tables for assumed in config.rows.assumed if assumed.kind == "join"), None) == tables
 
 
 def test_keys_that_are_different_columns_of_the_graph_select():
@@ -503,7 +503,7 @@ def test_any_text_is_read_or_refused_in_words(words: list[str], dialect: str):
     except InvalidConfig as refused:
         is_in_order = all(fault.detail and fault.place == ("row_filter",) for fault in refused.faults)
     else:
-        is_in_order = all(str(one.part.written) in text and one.part.columns for one in config.filter_parts)
+        is_in_order = all(str(one.part.written) in text and one.part.columns for one in config.rows.filter_parts)
     assert is_in_order
 
 
@@ -523,5 +523,5 @@ def test_a_function_without_brackets_is_not_taken_for_the_column_of_its_name():
     value = {"treatment": "late", "outcome": "refund", "covariates": []}
     with pytest.raises(InvalidConfig, match="put the column's name in quotes"):
         read_config(value | {"row_filter": "CURRENT_USER = depot"}, graph)
-    (part,) = read_config(value | {"row_filter": '"current_user" = depot'}, graph).filter_parts
+    (part,) = read_config(value | {"row_filter": '"current_user" = depot'}, graph).rows.filter_parts
     assert graph.names_of(part.part.columns) == ("depot", "current_user")

@@ -20,7 +20,7 @@ _RULES = {
 
 def assumption_findings(claim: Claim, config: Config) -> Iterator[Finding]:
     """A note for each thing assumed about the rows kept."""
-    for assumed in config.assumed:
+    for assumed in config.rows.assumed:
         columns = claim.graph.names_of(assumed.columns)
         yield Finding(
             _RULES[assumed.kind], columns, _message(assumed, columns), assumed.place, assumed.written

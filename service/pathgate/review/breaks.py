@@ -12,10 +12,12 @@ from pathgate.criteria.paths import Trail
 from pathgate.criteria.selection import Kept, Part
 from pathgate.graphs.errors import Place
 from pathgate.graphs.masks import mask_of
+from pathgate.review.adjusting import adjustments
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.findings import Finding
-from pathgate.review.wording import arrow_text, listed, names_in, part_text
+from pathgate.review.parts import FilterPart
+from pathgate.review.wording import arrow_text, capital, listed, names_in, part_text, silent_text
 
 
 def breaking_findings(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
@@ -33,7 +35,7 @@ def breaking_findings(claim: Claim, config: Config, deadline: Deadline) -> Itera
         yield from _Blame(claim, config, effect.kept, conditioned).forbidden(forbidden)
     # What is forbidden has to go in any case, so the rest is judged as if it were gone already.
     harmless = [part for node, part in effect.kept.part_of.items() if not effect.forbidden >> node & 1]
-    remaining = claim.effect_among(harmless)
+    remaining = claim.effect_on_rows(harmless)
     covariates = claim.usable_covariates & ~remaining.forbidden
     let_go = conditioned & effect.forbidden & claim.graph.measured
     blame = _Blame(claim, config, remaining.kept, covariates | remaining.kept.conditioned, let_go)
@@ -46,7 +48,7 @@ class _Cause:
     """What in the config conditions on a node.
 
     Attributes:
-        kind: a covariate or a part of the row filter.
+        kind: a covariate, a part of the row filter, or rows that go missing without it.
         doing: what the config does with it, as the subject of a sentence.
         columns: the columns to blame.
         distance: arrows from the node in question down to the column that is adjusted for or filtered by;
@@ -63,9 +65,9 @@ class _Cause:
 
     @property
     def harm(self) -> str:
-        if self.kind == "filter":
-            return "lets the effect decide who is compared"
-        return "takes away part of the effect"
+        if self.kind == "covariate":
+            return "takes away part of the effect"
+        return "lets the effect decide who is compared"
 
     def rule(self, about: str) -> str:
         return f"{self.kind}-{'below' if self.distance > 0 else 'on'}-{about}"
@@ -101,7 +103,7 @@ class _Blame:
             yield Finding(
                 rule=cause.rule("causal-path"),
                 columns=cause.columns,
-                message=_capital(message),
+                message=capital(message),
                 place=cause.place,
                 part=cause.part,
                 causal_path=tuple(map(label, found.causal_path.nodes)),
@@ -116,13 +118,13 @@ class _Blame:
             for cause in self._causes(descent.nodes[-1], descent, found.trail.nodes):
                 which = listed(cause.columns)
                 if cause.distance < 0:
-                    why = f"it reads {which} together"
+                    why = f"{'it reads' if cause.kind == 'filter' else 'that depends on'} {which} together"
                 elif cause.distance == 0:
                     why = f"{which} is a common consequence on it"
                 else:
                     why = f"{which} is a consequence of {listed([graph.name(collider)])}, a common consequence on it"
                 what = f"{self._claim.effect_name}{self._once(found.trail)}"
-                message = f"{_capital(cause.doing)} opens the path {drawn}, which is not {what}: {why}."
+                message = f"{capital(cause.doing)} opens the path {drawn}, which is not {what}: {why}."
                 rule = cause.rule("collider")
                 yield Finding(rule, cause.columns, message, cause.place, cause.part, found.path)
 
@@ -162,19 +164,25 @@ class _Blame:
 
     def _causes(self, node: int, descent: Trail, along: tuple[int, ...]) -> Iterator[_Cause]:
         """Who conditions on ``node``, the last one of ``descent``; ``along`` tells what a part joins."""
-        names = self._kept.graph
-        for named in self._config.covariates:
-            if named.node == node and self._claim.usable_covariates >> node & 1:
-                columns = (names.name(node),)
-                doing = f"adjusting for {listed(columns)}"
-                yield _Cause("covariate", doing, columns, len(descent.nodes) - 1, named.place)
-        for filter_part in self._config.filter_parts:
-            part = filter_part.part
-            if self._stands_for(node, part):
-                distance = len(descent.nodes) - (1 if part.fixed else 2)
-                read = self._columns_read(node, part, descent, along)
-                doing = f"keeping rows by {part_text(part.written)}"
-                yield _Cause("filter", doing, read, distance, filter_part.place, part.written)
+        distance = len(descent.nodes) - 1
+        for adjusting in adjustments(self._claim, self._config, node):
+            yield _Cause("covariate", adjusting.doing, adjusting.columns, distance, adjusting.place)
+        rows = self._config.rows
+        for kind, filter_parts in (("filter", rows.filter_parts), ("lost-rows", rows.silent_parts)):
+            for filter_part in filter_parts:
+                if self._stands_for(node, filter_part.part):
+                    yield self._cause_in_rows(kind, filter_part, node, descent, along)
+
+    def _cause_in_rows(
+        self, kind: str, filter_part: FilterPart, node: int, descent: Trail, along: tuple[int, ...]
+    ) -> _Cause:
+        part = filter_part.part
+        distance = len(descent.nodes) - (1 if part.fixed else 2)
+        doing = (
+            f"keeping rows by {part_text(part.written)}" if kind == "filter" else silent_text(part.written)
+        )
+        read = self._columns_read(node, part, descent, along)
+        return _Cause(kind, doing, read, distance, filter_part.place, part.written)
 
     def _stands_for(self, node: int, part: Part) -> bool:
         if part.fixed:
@@ -190,7 +198,3 @@ class _Blame:
         # The part itself is where two arrowheads meet: its neighbours on the path are what it joins.
         place = along.index(node)
         return self._kept.graph.names_of(mask_of((along[place - 1], along[place + 1])))
-
-
-def _capital(sentence: str) -> str:
-    return sentence[:1].upper() + sentence[1:]

@@ -3,40 +3,26 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from typing import Any, Literal, TypeGuard
 
-from pathgate.criteria.selection import Part
-from pathgate.graphs.errors import Fault, Place
+from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import mask_of
-from pathgate.graphs.names import hint_within, quoted
+from pathgate.graphs.masks import mask_of, members
+from pathgate.graphs.names import quoted
+from pathgate.review.derived import Columns, understand_columns
 from pathgate.review.errors import InvalidConfig
-from pathgate.review.schema import CONFIG_SCHEMA, STANDARD_DIALECT
+from pathgate.review.names import Named, NameReader
+from pathgate.review.rows_kept import ALL_ROWS, RowsKept, understand_rows
+from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.review.shape import Shape, are_cut_off
-from pathgate.review.sql_names import Assumed, SqlFilter, read_sql_filter
 
 NO_META = object()
 """Stands where a config has no ``meta``: null is something a config may say."""
 
 Asks = Literal["total", "direct"]
-
-
-@dataclass(frozen=True, slots=True)
-class Named:
-    """A column and where the config names it."""
-
-    node: int
-    place: Place
-
-
-@dataclass(frozen=True, slots=True)
-class FilterPart:
-    """One condition of the row filter and where the config puts it."""
-
-    part: Part
-    place: Place
+Claimed = Literal["kept", "whole"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,25 +31,46 @@ class Config:
 
     Attributes:
         name: what answers call it; empty where it has no name.
-        treatments, outcomes, covariates: columns, each named once.
-        filter_parts: the conditions on the rows kept.
+        columns: what its names can mean: the team's graph, grown by the columns that it computes.
+        treatments, outcomes: columns, each named once; a computed treatment stands for what it is made of.
+        covariates, fixed_effects, weighted_by, matched_on: what the model adjusts for, and how.
+        treated: the treatments as the config names them.
+        rows: which rows the model sees.
         row_filter_fixed: may no part of the filter be dropped?
         asks: the total effect, or the direct one.
+        population: whose effect is claimed.
+        known: mask of the columns whose distribution over everybody is known.
         meta: what the caller put there, which may be None; ``NO_META`` where nothing.
         may_read_unmeasured: may conditions on the rows read unmeasured nodes? Not in a team's config.
-        assumed: what its row filter leaves unsaid.
+        repeated: the columns that the model adjusts for twice, once by a recode.
+        passed_over: the names that the config declares as outside the graph, where it uses them.
+        written: the config as it was written, for its digest; None where it never was.
     """
 
     name: str
+    columns: Columns
     treatments: tuple[Named, ...]
     outcomes: tuple[Named, ...]
     covariates: tuple[Named, ...]
-    filter_parts: tuple[FilterPart, ...] = ()
+    fixed_effects: tuple[Named, ...] = ()
+    weighted_by: tuple[Named, ...] = ()
+    matched_on: tuple[Named, ...] = ()
+    treated: tuple[Named, ...] = ()
+    rows: RowsKept = ALL_ROWS
     row_filter_fixed: bool = False
     asks: Asks = "total"
+    population: Claimed = "kept"
+    known: int = 0
     meta: object = NO_META
     may_read_unmeasured: bool = False
-    assumed: tuple[Assumed, ...] = ()
+    repeated: tuple[Named, ...] = ()
+    passed_over: tuple[tuple[str, tuple[str | int, ...]], ...] = ()
+    written: Mapping[str, Any] | None = None
+
+    @property
+    def adjusted_for(self) -> tuple[Named, ...]:
+        """All columns that the model adjusts for, in whichever way."""
+        return (*self.covariates, *self.weighted_by, *self.matched_on, *self.fixed_effects)
 
 
 def read_config(value: object, graph: CausalGraph) -> Config:
@@ -97,46 +104,86 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     ``faults`` comes with what is wrong with the value's shape. Members that it names are not looked into, and
     where anything is wrong there is no config; so all faults, of shape and of meaning, come in one go.
     """
+    if not _is_object(value):
+        return None
     faulty = {fault.place[0] for fault in faults if fault.place}
-    said = (
-        {member: held for member, held in value.items() if member not in faulty} if _is_object(value) else {}
-    )
-    names = NameReader(graph, faults)
-    treatments, outcomes = understand_ends(said, names)
-    covariates = names.read(said.get("covariates", []), ("covariates",))
-    parts, assumed = _understand_rows(said, names, (*treatments, *outcomes, *covariates))
+    said = {member: held for member, held in value.items() if member not in faulty}
+    columns = understand_columns(said, graph, faults)
+    names = NameReader(columns.graph, faults, recodes=columns.recodes, outside=columns.outside)
+    ends = _Ends(columns, said, NameReader(columns.graph, faults, recodes=columns.recodes))
+    adjusted = {member: names.read(said.get(member, []), (member,)) for member in _ADJUSTING}
+    repeated = tuple(names.repeated)
+    treatments, outcomes = ends.read()
+    modelled = (*treatments, *outcomes, *(named for read in adjusted.values() for named in read))
+    rows = understand_rows(said, names, modelled)
+    known = _known(said, names)
+    _refuse_meaningless(said, faults)
     if faults:
         return None
     return Config(
         name=said.get("name", ""),
+        columns=columns,
         treatments=treatments,
         outcomes=outcomes,
-        covariates=covariates,
-        filter_parts=parts,
+        covariates=adjusted["covariates"],
+        fixed_effects=adjusted["fixed_effects"],
+        weighted_by=adjusted["weighted_by"],
+        matched_on=adjusted["matched_on"],
+        treated=ends.treated,
+        rows=rows,
         row_filter_fixed=said.get("row_filter_fixed", False),
         asks=said.get("asks", "total"),
+        population=said.get("population", "kept"),
+        known=known,
         meta=said.get("meta", NO_META),
-        assumed=assumed,
+        repeated=repeated,
+        passed_over=tuple(names.passed_over),
+        written=value,
     )
 
 
-def _understand_rows(
-    value: Mapping[str, Any], names: NameReader, modelled: Sequence[Named]
-) -> tuple[tuple[FilterPart, ...], tuple[Assumed, ...]]:
-    """The parts of the row filter, and what is assumed about it; the model's columns must be left something."""
-    said, place = value.get("row_filter", []), ("row_filter",)
-    if not isinstance(said, str):
-        return read_parts(said, names, place), ()
-    if any(fault.place == ("dialect",) for fault in names.faults):
-        return (), ()
-    dialect = value.get("dialect", STANDARD_DIALECT)
-    found: SqlFilter = read_sql_filter(said, dialect, names.graph, names.faults, place)
-    for named in modelled:
-        if found.emptied >> named.node & 1:
+_ADJUSTING = ("covariates", "fixed_effects", "weighted_by", "matched_on")
+
+
+def _refuse_meaningless(said: Mapping[str, Any], faults: list[Fault]) -> None:
+    if said.get("population") == "whole" and said.get("asks") == "direct":
+        detail = "a direct effect is judged among the rows kept only"
+        faults.append(Fault("invalid-request", ("population",), detail))
+
+
+def _known(said: Mapping[str, Any], names: NameReader) -> int:
+    member = "measured_everywhere"
+    found = names.read(said.get(member, []), (member,))
+    for named in found:
+        if not names.graph.measured >> named.node & 1:
             name = names.graph.name(named.node)
-            detail = f"only rows where {quoted(name)} is null are kept, and the model needs its values"
-            names.faults.append(Fault("invalid-request", place, detail, (name,)))
-    return tuple(FilterPart(part, place) for part in found.parts), found.assumed
+            detail = f"{quoted(name)} is marked as unmeasured in the graph: nobody holds it everywhere"
+            names.faults.append(Fault("invalid-request", named.place, detail, (name,)))
+    return mask_of(named.node for named in found)
+
+
+@dataclass(slots=True)
+class _Ends:
+    """Treatments and outcomes of a config, which must be in the graph; a computed treatment stands for its inputs."""
+
+    columns: Columns
+    said: Mapping[str, Any]
+    names: NameReader
+    treated: tuple[Named, ...] = ()
+
+    def read(self) -> tuple[tuple[Named, ...], tuple[Named, ...]]:
+        treatments, outcomes = understand_ends(self.said, self.names)
+        self.treated = treatments
+        bases: dict[int, Named] = {}
+        for named in treatments:
+            for base in members(self.columns.bases(named.node)):
+                bases.setdefault(base, replace(named, node=base))
+        own = {named.node for named in treatments}
+        refuse_shared(self.names, [named for base, named in bases.items() if base not in own], outcomes)
+        if self.said.get("asks") == "direct" and len(bases) > len(treatments) == 1:
+            detail = "a direct effect is that of one column, and this treatment is computed from several"
+            self.names.faults.append(Fault("invalid-request", ("treatment",), detail))
+        return tuple(bases.values()), outcomes
 
 
 def understand_ends(
@@ -145,12 +192,7 @@ def understand_ends(
     """The treatments and the outcomes that the members of those names mean; they must not share a column."""
     treatments = names.read(value.get("treatment", []), ("treatment",))
     outcomes = names.read(value.get("outcome", []), ("outcome",))
-    treated = {treatment.node for treatment in treatments}
-    for outcome in outcomes:
-        if outcome.node in treated:
-            name = names.graph.name(outcome.node)
-            detail = f"{quoted(name)} cannot be both treatment and outcome"
-            names.faults.append(Fault("invalid-request", outcome.place, detail, (name,)))
+    refuse_shared(names, treatments, outcomes)
     if value.get("asks") == "direct":
         for several in (treatments, outcomes):
             if len(several) > 1:
@@ -159,88 +201,15 @@ def understand_ends(
     return treatments, outcomes
 
 
+def refuse_shared(names: NameReader, treatments: Sequence[Named], outcomes: Sequence[Named]) -> None:
+    """A fault for each column that is both treatment and outcome."""
+    treated = {treatment.node for treatment in treatments}
+    for outcome in outcomes:
+        if outcome.node in treated:
+            name = names.graph.name(outcome.node)
+            detail = f"{quoted(name)} cannot be both treatment and outcome"
+            names.faults.append(Fault("invalid-request", outcome.place, detail, (name,)))
+
+
 def _is_object(value: object) -> TypeGuard[Mapping[str, Any]]:
     return isinstance(value, Mapping)
-
-
-@dataclass(frozen=True, slots=True)
-class NameReader:
-    """Finds the columns that names mean, by id or by another name of the column.
-
-    Attributes:
-        graph: where the columns are.
-        faults: what is wrong is added here.
-        by_alias: do other names of a column count? They do in configs.
-        refuse_repeats: is a column named twice a fault? It is in configs.
-    """
-
-    graph: CausalGraph
-    faults: list[Fault]
-    by_alias: bool = True
-    refuse_repeats: bool = True
-
-    def read(self, value: str | Sequence[str], place: Place) -> tuple[Named, ...]:
-        """The columns that a name or a list of names means; unknown and repeated names are faults."""
-        if isinstance(value, str):
-            return self.read_each([(value, place)])
-        return self.read_each([(name, (*place, k)) for k, name in enumerate(value)])
-
-    def read_each(self, listed: Sequence[tuple[str, Place]]) -> tuple[Named, ...]:
-        """The same for names that are not next to each other in the input."""
-        found: dict[int, Named] = {}
-        for name, at in listed:
-            node = self.find(name)
-            if node is None:
-                aliases = self.graph.aliases if self.by_alias else ()
-                hint = hint_within(self.faults, name, self.graph.names, aliases)
-                detail = f"no node is named {quoted(name)}{hint}"
-                self.faults.append(Fault("unknown-node", at, detail, (name,)))
-            elif node not in found:
-                found[node] = Named(node, at)
-            elif self.refuse_repeats:
-                detail = f"the column {quoted(self.graph.name(node))} is named twice"
-                self.faults.append(Fault("invalid-request", at, detail, (self.graph.name(node),)))
-        return tuple(found.values())
-
-    def mask(self, value: str | Sequence[str], place: Place) -> int:
-        """The same as a mask, for sets that are only computed with."""
-        names = (value,) if isinstance(value, str) else value
-        index = self.graph.index
-        mask = 0
-        for name in names:
-            if name not in index:
-                return mask_of(named.node for named in self.read(value, place))
-            mask |= 1 << index[name]
-        return mask
-
-    def find(self, name: str) -> int | None:
-        """The node that bears this name."""
-        node = self.graph.index.get(name)
-        return self.graph.aliases.get(name) if node is None and self.by_alias else node
-
-
-def read_parts(value: str | Sequence[Any], names: NameReader, place: Place) -> tuple[FilterPart, ...]:
-    """The conditions on the rows that a value of the right shape describes, bare names making up one."""
-    items = [value] if isinstance(value, str) else list(value)
-    bare = [(k, item) for k, item in enumerate(items) if isinstance(item, str)]
-    parts: list[FilterPart] = []
-    for k, item in enumerate(items):
-        if isinstance(item, str):
-            if k == bare[0][0]:
-                found = names.read_each([(name, (*place, at)) for at, name in bare])
-                columns = mask_of(one.node for one in found)
-                parts.append(
-                    FilterPart(Part(columns, fixed=False, written=[name for _, name in bare]), place)
-                )
-        else:
-            parts.append(_object_part(item, names, (*place, k)))
-    return tuple(parts)
-
-
-def _object_part(item: Mapping[str, Any], names: NameReader, place: Place) -> FilterPart:
-    found = names.read(item["columns"], (*place, "columns"))
-    fixed = item.get("fixed", False)
-    if fixed and not isinstance(item["columns"], str) and len(item["columns"]) != 1:
-        detail = "a condition that is fixed holds exactly one column at one value"
-        names.faults.append(Fault("invalid-request", (*place, "fixed"), detail))
-    return FilterPart(Part(mask_of(one.node for one in found), fixed=fixed, written=dict(item)), place)

@@ -6,8 +6,9 @@ from collections.abc import Iterator
 
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Claim
-from pathgate.review.config import Config, Named
+from pathgate.review.config import Config
 from pathgate.review.findings import Finding
+from pathgate.review.names import Named
 from pathgate.review.wording import listed, part_text
 
 
@@ -17,25 +18,57 @@ def degenerate_findings(claim: Claim, config: Config) -> Iterator[Finding]:
         for named in ends:
             if _is_unmeasured(claim, named.node):
                 yield _unmeasured(claim, named, role)
-    for named in config.covariates:
-        yield from _covariate(claim, named)
+    for named in config.adjusted_for:
+        yield from _covariate(claim, config, named)
+    yield from _without_variation(claim, config)
     yield from _filter(claim, config)
 
 
-def _covariate(claim: Claim, named: Named) -> Iterator[Finding]:
+def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
+    """Fixed effects that hold treatment or outcome fixed, and covariates that only the treatment makes vary."""
+    graph = claim.graph
+    for named in config.fixed_effects:
+        for node in members(claim.absorbed(1 << named.node) & claim.ends):
+            role = "treatment" if claim.treatments >> node & 1 else "outcome"
+            columns = graph.names_of(1 << named.node | 1 << node)
+            message = (
+                f"The {role} {listed([graph.name(node)])} has one value within each value of"
+                f" {listed([graph.name(named.node)])}: once its fixed effects are absorbed, nothing is left to compare."
+            )
+            yield Finding("no-variation-left", columns, message, named.place)
+    stuck = claim.leaves_no_variation(claim.usable)
+    for named in config.adjusted_for:
+        if stuck >> named.node & 1:
+            made_of = graph.names_of(claim.inputs[named.node])
+            message = (
+                f"{listed([graph.name(named.node)])} is computed from {listed(made_of)}: with what else the model"
+                f" adjusts for, only {listed(graph.names_of(claim.treatments), 'or')} can make it differ, so within"
+                " one value of it the treatment has no variation of its own."
+            )
+            yield Finding("no-variation-left", (graph.name(named.node),), message, named.place)
+
+
+def _both(config: Config, named: Named, name: str, role: str) -> str:
+    """How it reads that the model adjusts for its own treatment or outcome."""
+    treated = {each.written for each in config.treated if config.columns.inputs.get(each.node, 0)}
+    is_input = named.node not in {each.node for each in config.treated}
+    if role == "treatment" and treated and is_input:
+        made = listed(sorted(treated))
+        return f"The treatment {made} is computed from {listed([name])}, which the model also adjusts for."
+    return f"The {role} {listed([name])} is also adjusted for: within one value of it nothing varies."
+
+
+def _covariate(claim: Claim, config: Config, named: Named) -> Iterator[Finding]:
     name = claim.graph.name(named.node)
     for ends, role in ((claim.treatments, "treatment"), (claim.outcomes, "outcome")):
         if ends >> named.node & 1:
-            message = (
-                f"The {role} {listed([name])} is also a covariate: within one value of it nothing varies."
-            )
-            yield Finding(f"{role}-among-covariates", (name,), message, named.place)
+            yield Finding(f"{role}-among-covariates", (name,), _both(config, named, name, role), named.place)
     if _is_unmeasured(claim, named.node) and not claim.ends >> named.node & 1:
         yield _unmeasured(claim, named, "covariate")
 
 
 def _filter(claim: Claim, config: Config) -> Iterator[Finding]:
-    for filter_part in config.filter_parts:
+    for filter_part in config.rows.filter_parts:
         part, place = filter_part.part, filter_part.place
         unmeasured = claim.graph.names_of(part.columns & ~claim.readable)
         if unmeasured:

@@ -23,7 +23,7 @@ def review_document(answer: Review) -> Json:
     """The answer of /v1/review."""
     claim = answer.claim
     document: Json = {
-        "name": answer.name,
+        "name": answer.config.name,
         "verdict": answer.verdict,
         "summary": answer.summary,
         "findings": [finding_document(finding) for finding in answer.findings],
@@ -35,8 +35,8 @@ def review_document(answer: Review) -> Json:
     }
     if answer.verdict == "unanswerable":
         document["measure_next"] = measure_document(claim.graph, answer.measure_next)
-    if answer.meta is not NO_META:
-        document["meta"] = answer.meta
+    if answer.config.meta is not NO_META:
+        document["meta"] = answer.config.meta
     return document
 
 
@@ -63,11 +63,11 @@ def remedy_document(claim: Claim, remedy: Remedy) -> Json:
     """One remedy; its lists of columns in the graph's order."""
     names = claim.graph.names_of
     return {
-        "covariates": list(names(remedy.covariates)),
+        "covariates": list(names(remedy.covariates & ~claim.beside | remedy.add)),
         "add": list(names(remedy.add)),
         "drop": list(names(remedy.drop)),
         "drop_filter_parts": [part.written for part in remedy.drop_parts],
-        "population": "kept",
+        "population": claim.population,
         "message": remedy_text(claim, remedy),
     }
 

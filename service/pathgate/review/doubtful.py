@@ -112,4 +112,4 @@ def _is_sound_with(claim: Claim, edges: Sequence[Edge], chosen: int) -> bool:
 def is_sound_on(claim: Claim, graph: CausalGraph) -> bool:
     """Would the claim be sound on another graph of the same nodes?"""
     # Effects are remembered for one graph.
-    return replace(claim, graph=graph, _effects={}).is_carried_by(claim.covariates, claim.parts)
+    return replace(claim, graph=graph, _effects={}).is_carried_by(claim.own_choice)

@@ -102,7 +102,7 @@ class _Search:
         self.is_complete = True
         self._graph = claim.graph
         self._deadline = deadline
-        self._hinges = Hinges(claim.effect, claim.covariates, claim.asks == "direct")
+        self._hinges = Hinges(claim.effect, claim.usable_covariates, claim.asks == "direct")
         self._exposing = Exposing(claim.graph, deadline, hubs=claim.ends)
         self._room = MOST_NAMES
 

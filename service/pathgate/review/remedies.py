@@ -1,26 +1,26 @@
 """What to change so that a biased config carries its effect: fewest changes first.
 
-A change adds or drops one covariate, or drops one part of the row filter. What can never stay goes first.
-Then every choice of one further change is tried, of two and so on, as long as all of that many fit in
-``MOST_TRIALS`` (fewer on large graphs, where a trial takes longer): what is found so is smallest. Past that,
-remedies are built from minimal valid sets, less every change that turns out not to be needed. Every remedy
+A change adds or drops one covariate, drops one column's fixed effects, or drops one part of the row filter. What can
+never stay goes first. Then every choice of one further change is tried, of two and so on, as long as all of that
+many fit in ``MOST_TRIALS`` (fewer on large graphs, where a trial takes longer): what is found so is smallest. Past
+that, remedies are built from minimal valid sets, less every change that turns out not to be needed. Every remedy
 returned has been judged as the config itself is: applied, it reviews as sound.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import combinations, islice
 from math import comb
 
-from pathgate.criteria.adjustment import Effect, is_valid, valid_set
+from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.selection import Part
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import mask_of, members
-from pathgate.review.claims import Claim
+from pathgate.review.claims import Choice, Claim
 
 MOST_TRIALS = 1000
 # Nodes and edges that all trials of one search together may look at.
@@ -30,20 +30,27 @@ MOST_REMEDIES = 3
 
 @dataclass(frozen=True, slots=True)
 class Remedy:
-    """A sound choice of covariates and filter parts near the config's own.
+    """A sound choice of what to adjust for and filter by near the config's own.
 
     Attributes:
-        covariates: mask of all covariates to have.
-        add, drop: masks of the changes to the config's covariates.
+        covariates: mask of all covariates to have, by weights and matching included.
+        fixed_effects: mask of the columns whose fixed effects stay.
+        add, drop: masks of the changes to what the config adjusts for, in whichever way.
         drop_parts: the parts of the row filter to drop.
         keeps_rows: does a filter remain?
     """
 
     covariates: int
+    fixed_effects: int
     add: int
     drop: int
     drop_parts: tuple[Part, ...]
     keeps_rows: bool
+
+    @property
+    def adjusted_for(self) -> int:
+        """All columns to adjust for, in whichever way."""
+        return self.covariates | self.fixed_effects
 
     @property
     def changes(self) -> int:
@@ -59,25 +66,36 @@ def find_remedies(claim: Claim, deadline: Deadline) -> tuple[Remedy, ...]:
     """
     if not claim.can_be_carried:
         return ()
-    parts = _parts_that_may_stay(claim)
-    start = _Choice(claim.usable_covariates & ~claim.effect_among(parts).forbidden, parts)
+    start = _start(claim)
     found = list(_nearest(claim, start, deadline)) or list(_built(claim, start, deadline))
-    remedies = {(choice.covariates, choice.kept_places(claim)): _remedy(claim, choice) for choice in found}
+    remedies = {_key(claim, choice): _remedy(claim, choice) for choice in found}
     ordered = sorted(remedies.values(), key=lambda remedy: (remedy.changes, _cost(claim, remedy)))
     return tuple(ordered[:MOST_REMEDIES])
 
 
-@dataclass(frozen=True, slots=True)
-class _Choice:
-    covariates: int
-    parts: tuple[Part, ...]
+def _start(claim: Claim) -> Choice:
+    """The config less what can never stay: unusable and forbidden columns, parts that have to go."""
+    parts = _parts_that_may_stay(claim)
+    barred = claim.effect_among(parts).forbidden | claim.ends
+    fixed = mask_of(
+        node
+        for node in members(claim.usable.fixed_effects & ~barred)
+        if not claim.absorbed(1 << node) & barred
+    )
+    return Choice(claim.usable.covariates & ~barred, fixed, parts)
 
-    def keeps(self, part: Part) -> bool:
-        return any(part is kept for kept in self.parts)
 
-    def kept_places(self, claim: Claim) -> tuple[int, ...]:
-        kept = set(map(id, self.parts))
-        return tuple(place for place, part in enumerate(claim.parts) if id(part) in kept)
+def _key(claim: Claim, choice: Choice) -> tuple[int, int, tuple[int, ...]]:
+    return choice.covariates, choice.fixed_effects, _kept_places(claim, choice)
+
+
+def _keeps(choice: Choice, part: Part) -> bool:
+    return any(part is kept for kept in choice.parts)
+
+
+def _kept_places(claim: Claim, choice: Choice) -> tuple[int, ...]:
+    kept = set(map(id, choice.parts))
+    return tuple(place for place, part in enumerate(claim.parts) if id(part) in kept)
 
 
 def _parts_that_may_stay(claim: Claim) -> tuple[Part, ...]:
@@ -93,19 +111,20 @@ def _trials(graph: CausalGraph) -> int:
     return min(MOST_TRIALS, MOST_WORK // (graph.size + edges + 1))
 
 
-def _nearest(claim: Claim, start: _Choice, deadline: Deadline) -> Iterator[_Choice]:
+def _nearest(claim: Claim, start: Choice, deadline: Deadline) -> Iterator[Choice]:
     """All sound choices with the fewest further changes, as far as these are few."""
     candidates = tuple(members(_worth_changing(claim.effect_among(start.parts), start)))
-    droppable = () if claim.row_filter_fixed else start.parts
+    parts = () if claim.row_filter_fixed else start.parts
+    droppable: tuple[int | Part, ...] = (*members(start.fixed_effects), *parts)
     left = _trials(claim.graph)
     for changes in range(len(candidates) + len(droppable) + 1):
         left -= comb(len(candidates) + len(droppable), changes)
         if left < 0:
             return
         sound = []
-        for choice, effect in _changed(claim, start, candidates, changes):
+        for choice in _changed(start, candidates, droppable, changes):
             deadline.poll()
-            if is_valid(effect, choice.covariates):
+            if claim.is_carried_by(choice):
                 sound.append(choice)
         if sound:
             yield from sound
@@ -113,62 +132,66 @@ def _nearest(claim: Claim, start: _Choice, deadline: Deadline) -> Iterator[_Choi
 
 
 def _changed(
-    claim: Claim, start: _Choice, candidates: tuple[int, ...], changes: int
-) -> Iterator[tuple[_Choice, Effect]]:
-    """Every choice that many changes away, each with the effect on the rows it keeps."""
-    droppable = () if claim.row_filter_fixed else start.parts
-    for parts_dropped in range(min(changes, len(droppable)) + 1):
-        for dropped in combinations(droppable, parts_dropped):
-            parts = tuple(part for part in start.parts if all(part is not gone for gone in dropped))
-            effect = claim.effect_among(parts)
-            for toggled in combinations(candidates, changes - parts_dropped):
-                yield _Choice(start.covariates ^ mask_of(toggled), parts), effect
+    start: Choice, candidates: tuple[int, ...], droppable: tuple[int | Part, ...], changes: int
+) -> Iterator[Choice]:
+    """Every choice that many changes away; ``droppable`` are columns of fixed effects and parts of the filter."""
+    for dropped_count in range(min(changes, len(droppable)) + 1):
+        for dropped in combinations(droppable, dropped_count):
+            gone = mask_of(each for each in dropped if isinstance(each, int))
+            parts = tuple(part for part in start.parts if all(part is not each for each in dropped))
+            fixed = start.fixed_effects & ~gone
+            for toggled in combinations(candidates, changes - dropped_count):
+                yield Choice(start.covariates ^ mask_of(toggled), fixed, parts)
 
 
-def _worth_changing(effect: Effect, start: _Choice) -> int:
+def _worth_changing(effect: Effect, start: Choice) -> int:
     """Covariates to drop, and columns to add: only an ancestor of what is in question can block a path."""
     ends = effect.treatments | effect.outcomes
     relevant = ancestors(effect.back_door_graph, ends | start.covariates | effect.kept.conditioned)
-    return (relevant & effect.usable & ~effect.kept.conditioned) | start.covariates
+    addable = relevant & effect.usable & ~effect.kept.conditioned & ~start.fixed_effects
+    return addable | start.covariates
 
 
-def _built(claim: Claim, start: _Choice, deadline: Deadline) -> Iterator[_Choice]:
+def _built(claim: Claim, start: Choice, deadline: Deadline) -> Iterator[Choice]:
     """Sound choices made from minimal valid sets: on the filter that may stay, and without a filter."""
     without_filter = [] if claim.row_filter_fixed or not start.parts else [()]
     for parts in (start.parts, *without_filter):
-        effect = claim.effect_among(parts)
         for required in (start.covariates, 0):
             deadline.poll()
-            covariates = valid_set(effect, required=required)
-            if covariates is not None:
-                yield _trimmed(claim, start, _Choice(covariates, parts), deadline)
+            choice = next(claim.choices(parts, required), None)
+            if choice is not None:
+                yield _trimmed(claim, start, choice, deadline)
 
 
-def _trimmed(claim: Claim, start: _Choice, choice: _Choice, deadline: Deadline) -> _Choice:
+def _trimmed(claim: Claim, start: Choice, choice: Choice, deadline: Deadline) -> Choice:
     """The choice less its changes that can be taken back, one after the other."""
     for node in islice(members(start.covariates ^ choice.covariates), _trials(claim.graph)):
         deadline.poll()
-        nearer = _Choice(choice.covariates ^ 1 << node, choice.parts)
-        if is_valid(claim.effect_among(nearer.parts), nearer.covariates):
+        nearer = replace(choice, covariates=choice.covariates ^ 1 << node)
+        if claim.is_carried_by(nearer):
             choice = nearer
-    for dropped in islice((part for part in start.parts if not choice.keeps(part)), _trials(claim.graph)):
+    for dropped in islice((part for part in start.parts if not _keeps(choice, part)), _trials(claim.graph)):
         deadline.poll()
-        parts = tuple(part for part in start.parts if part is dropped or choice.keeps(part))
-        if is_valid(claim.effect_among(parts), choice.covariates):
-            choice = _Choice(choice.covariates, parts)
+        parts = tuple(part for part in start.parts if part is dropped or _keeps(choice, part))
+        nearer = replace(choice, parts=parts)
+        if claim.is_carried_by(nearer):
+            choice = nearer
     return choice
 
 
-def _remedy(claim: Claim, choice: _Choice) -> Remedy:
-    kept = choice.kept_places(claim)
+def _remedy(claim: Claim, choice: Choice) -> Remedy:
+    kept = _kept_places(claim, choice)
+    adjusted = choice.covariates | choice.fixed_effects
     return Remedy(
         covariates=choice.covariates,
-        add=choice.covariates & ~claim.covariates,
-        drop=claim.covariates & ~choice.covariates,
+        fixed_effects=choice.fixed_effects,
+        # A column may cease to be a fixed effect and be adjusted for as it is: both dropped and added.
+        add=adjusted & ~claim.adjusted_for | choice.covariates & ~claim.covariates,
+        drop=claim.covariates & ~choice.covariates | claim.fixed_effects & ~choice.fixed_effects,
         drop_parts=tuple(part for place, part in enumerate(claim.parts) if place not in kept),
         keeps_rows=bool(kept),
     )
 
 
 def _cost(claim: Claim, remedy: Remedy) -> float:
-    return sum(claim.graph.cost(node) for node in members(remedy.covariates))
+    return sum(claim.graph.cost(node) for node in members(remedy.adjusted_for))

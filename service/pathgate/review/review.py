@@ -11,18 +11,21 @@ from dataclasses import dataclass
 from typing import Literal
 
 from pathgate.criteria.deadline import Deadline
-from pathgate.criteria.measuring import MeasureNext, measure_next
+from pathgate.criteria.measuring import MeasureNext
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
 from pathgate.review.assumptions import assumption_findings
 from pathgate.review.breaks import breaking_findings
 from pathgate.review.claims import Claim
-from pathgate.review.config import NO_META, Config
+from pathgate.review.computed import computed_findings
+from pathgate.review.config import Config
 from pathgate.review.degenerate import degenerate_findings
+from pathgate.review.everybody import population_findings
 from pathgate.review.findings import Finding
 from pathgate.review.remedies import Remedy, find_remedies
 from pathgate.review.roles import ColumnRole, column_roles
 from pathgate.review.summary import summarise
+from pathgate.review.timing import timing_findings
 from pathgate.review.warnings import warning_findings
 
 Verdict = Literal["sound", "biased", "unanswerable"]
@@ -35,8 +38,9 @@ class Review:
     """The verdict on one config, and all that led to it.
 
     Attributes:
+        graph: the team's graph.
+        config: the config that was read against it.
         claim: what was judged.
-        name, meta: the config's own.
         findings: errors first, then warnings, each group in the order of the config.
         columns: role and advice for the columns of the config, its remedies and its open paths.
         remedies: fewest changes first; empty unless the verdict is ``biased``.
@@ -45,15 +49,15 @@ class Review:
         summary: the whole in one sentence.
     """
 
+    graph: CausalGraph
+    config: Config
     claim: Claim
-    name: str
     verdict: Verdict
     findings: tuple[Finding, ...]
     columns: tuple[ColumnRole, ...]
     remedies: tuple[Remedy, ...]
     summary: str
     measure_next: MeasureNext | None = None
-    meta: object = NO_META
 
 
 def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None) -> Review:
@@ -70,11 +74,14 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
     ('biased', 'missing-covariate', ('rain',))
     """
     deadline = deadline or Deadline.never()
-    claim = Claim.of(graph, config)
+    claim = Claim.of(config)
     findings = [
         *degenerate_findings(claim, config),
         *breaking_findings(claim, config, deadline),
+        *population_findings(claim, config),
         *warning_findings(claim, config, deadline),
+        *timing_findings(claim, config),
+        *computed_findings(claim, config),
         *assumption_findings(claim, config),
     ]
     findings.sort(key=lambda finding: _GRAVITY[finding.severity])
@@ -83,15 +90,15 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
     columns = _columns_in_question(claim, findings, remedies)
     first = remedies[0] if remedies else None
     return Review(
+        graph=graph,
+        config=config,
         claim=claim,
-        name=config.name,
         verdict=verdict,
         findings=tuple(findings),
         columns=column_roles(claim, columns, first, deadline, is_sound=verdict == "sound"),
         remedies=remedies,
         summary=summarise(claim, verdict, findings, first),
         measure_next=_measure_next(claim, deadline) if verdict == "unanswerable" else None,
-        meta=config.meta,
     )
 
 
@@ -102,16 +109,17 @@ def _verdict(claim: Claim, findings: list[Finding]) -> Verdict:
 
 
 def _measure_next(claim: Claim, deadline: Deadline) -> MeasureNext | None:
-    parts = claim.parts if claim.row_filter_fixed else ()
+    parts = claim.undroppable
     if claim.ends & ~claim.graph.measured or not all(map(claim.can_filter_by, parts)):
         return None
-    return measure_next(claim.effect_among(parts), deadline)
+    population = claim.population_of(claim.effect_among(parts))
+    return population.measure_next(deadline, required=0, allowed=-1)
 
 
 def _columns_in_question(claim: Claim, findings: list[Finding], remedies: tuple[Remedy, ...]) -> int:
     graph = claim.graph
-    nodes = claim.ends | claim.covariates
-    for part in claim.parts:
+    nodes = claim.ends | claim.adjusted_for
+    for part in (*claim.parts, *claim.silent):
         nodes |= part.columns
     for remedy in remedies:
         nodes |= remedy.covariates

@@ -20,7 +20,7 @@ from pathgate.criteria.selection import keep_rows
 from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
-from pathgate.review.claims import Claim
+from pathgate.review.claims import Choice, Claim
 from pathgate.review.remedies import Remedy
 
 Role = Literal[
@@ -123,16 +123,16 @@ class _Roles:
 def _advice(claim: Claim, node: int, remedy: Remedy | None, *, is_sound: bool) -> Advice:
     if claim.ends >> node & 1:
         return "keep"
-    is_covariate = bool(claim.covariates >> node & 1)
-    is_used = is_covariate or any(part.columns >> node & 1 for part in claim.parts)
+    is_covariate = bool(claim.adjusted_for >> node & 1)
+    is_used = is_covariate or any(part.columns >> node & 1 for part in (*claim.parts, *claim.silent))
     if is_sound:
         if not is_covariate:
             return "keep" if is_used else "leave-out"
-        without = claim.covariates & ~(1 << node)
-        return "optional" if claim.is_carried_by(without, claim.parts) else "keep"
+        without = Choice(claim.covariates & ~(1 << node), claim.fixed_effects & ~(1 << node), claim.parts)
+        return "optional" if claim.is_carried_by(without) else "keep"
     if remedy is None:
         return "keep" if is_used and not claim.effect.forbidden >> node & 1 else "leave-out"
-    if remedy.covariates >> node & 1:
+    if remedy.adjusted_for >> node & 1:
         return "keep" if is_covariate else "add"
     is_dropped = is_covariate or any(part.columns >> node & 1 for part in remedy.drop_parts)
     return "drop" if is_dropped else "keep" if is_used else "leave-out"

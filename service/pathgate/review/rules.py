@@ -82,6 +82,36 @@ RULES: dict[str, Rule] = {
             "error",
             "The rows are kept by a descendant of a common consequence, and so the causes above it are joined.",
         ),
+        Rule(
+            "lost-rows-on-causal-path",
+            "error",
+            "Rows go missing by the outcome or by a mediator, so who is compared depends on the effect.",
+        ),
+        Rule(
+            "lost-rows-below-causal-path",
+            "error",
+            "Rows go missing by a consequence of the outcome or of a mediator.",
+        ),
+        Rule(
+            "lost-rows-on-collider",
+            "error",
+            "Rows go missing by a common consequence, and so its causes are joined among those that are left.",
+        ),
+        Rule(
+            "lost-rows-below-collider",
+            "error",
+            "Rows go missing by a descendant of a common consequence, and so the causes above it are joined.",
+        ),
+        Rule(
+            "not-recovered",
+            "error",
+            "The effect in everybody is claimed, and adjusting does not recover it from the rows kept.",
+        ),
+        Rule(
+            "no-variation-left",
+            "error",
+            "What the model holds fixed leaves treatment or outcome no variation of its own.",
+        ),
         Rule("treatment-among-covariates", "error", "The model adjusts for its own treatment."),
         Rule("outcome-among-covariates", "error", "The model adjusts for its own outcome."),
         Rule(
@@ -95,6 +125,37 @@ RULES: dict[str, Rule] = {
         Rule("unmeasured-treatment", "error", "The treatment is something the platform does not hold."),
         Rule("unmeasured-outcome", "error", "The outcome is something the platform does not hold."),
         Rule("filter-depends-on-treatment", "warning", "Who is kept depends on the treatment."),
+        Rule("lost-rows-depend-on-treatment", "warning", "Which rows go missing depends on the treatment."),
+        Rule(
+            "weighting-column-filtered",
+            "warning",
+            "The row filter reads a column that the effect in everybody has to be weighted by.",
+        ),
+        Rule(
+            "covariate-recorded-after-treatment",
+            "warning",
+            "The model adjusts for something that is recorded after the treatment.",
+        ),
+        Rule(
+            "covariate-recorded-after-outcome",
+            "warning",
+            "The model adjusts for something that is recorded after the outcome.",
+        ),
+        Rule(
+            "treatment-of-several-columns",
+            "warning",
+            "The treatment is computed from several columns, so setting it is not one well-defined action.",
+        ),
+        Rule(
+            "coarse-covariate",
+            "warning",
+            "The model adjusts for a bucket or threshold of a column, and so only for a part of it.",
+        ),
+        Rule(
+            "redundant-covariate",
+            "warning",
+            "The model adjusts for something that its other covariates determine.",
+        ),
         Rule("no-causal-path", "warning", "No directed path leads from the treatment to the outcome."),
         Rule(
             "no-arrow",
@@ -112,6 +173,16 @@ RULES: dict[str, Rule] = {
             "join-selects-rows",
             "note",
             "A join keeps only rows with a partner: assumed unrelated to everything in the graph.",
+        ),
+        Rule(
+            "kept-rows-only",
+            "note",
+            "The number speaks of the rows kept: the effect in everybody is not recovered from them by adjusting.",
+        ),
+        Rule(
+            "outside-graph",
+            "note",
+            "The config uses a column that is declared as outside the graph: nothing is known of it.",
         ),
         Rule("rows-are-groups", "note", "The rows are groups: the graph is taken to speak of them."),
     )

@@ -79,6 +79,49 @@ ASKS: Schema = {
     " treatment and one outcome)",
 }
 
+DERIVED: Schema = {
+    "type": "object",
+    "title": "an object of {from}, {recodes} and {sql}, one for each computed column",
+    "description": "the columns that the config computes from others, by name",
+    "maxProperties": 1000,
+    "additionalProperties": {
+        "title": "{from: columns}, {recodes: a column} or {sql: an expression}",
+        "anyOf": [
+            {
+                "type": "object",
+                "title": "{from: columns}",
+                "description": "computed from these columns alone, in whichever way",
+                "properties": {"from": SOME_NAMES},
+                "required": ["from"],
+                "additionalProperties": False,
+            },
+            {
+                "type": "object",
+                "title": "{recodes: a column}",
+                "description": "the same column in other units, on another scale or in buckets",
+                "properties": {
+                    "recodes": NAME,
+                    "coarse": {
+                        "type": "boolean",
+                        "default": False,
+                        "description": "true where different values become one (a bucket, a threshold)",
+                    },
+                },
+                "required": ["recodes"],
+                "additionalProperties": False,
+            },
+        ],
+    },
+}
+
+MISSING: Schema = {
+    "type": "object",
+    "title": "an object: for each column the columns that make it go missing",
+    "description": "for each column that may be null, what decides whether it is (nothing in the graph: an empty"
+    " list); rows are dropped where it is null",
+    "additionalProperties": NAMES,
+}
+
 CONFIG_SCHEMA: Schema = {
     "type": "object",
     "description": "What one model claims: which effect it reports, adjusted for what, on which rows.",
@@ -89,6 +132,14 @@ CONFIG_SCHEMA: Schema = {
         "outcome": {**SOME_NAMES, "description": "the column or columns on which the effect is claimed"},
         "asks": ASKS,
         "covariates": {**NAMES, "description": "the columns that the model adjusts for"},
+        "fixed_effects": {
+            **NAMES,
+            "description": "the columns whose fixed effects the model absorbs, and with each whatever the graph"
+            " marks as constant within it, measured or not",
+        },
+        "weighted_by": {**NAMES, "description": "the columns that its weights are made of: adjusted for"},
+        "matched_on": {**NAMES, "description": "the columns that it matches rows on: adjusted for"},
+        "derived": DERIVED,
         "row_filter": {
             "title": "a SQL condition, a SELECT, or a list of column names and conditions",
             "description": "which rows the model sees: a SQL condition (or the whole SELECT that it stands in),"
@@ -107,32 +158,35 @@ CONFIG_SCHEMA: Schema = {
         "dialect": {
             "enum": list(DIALECTS),
             "default": STANDARD_DIALECT,
-            "description": "in whose SQL the row filter is written",
+            "description": "in whose SQL the row filter and derived columns are written",
         },
         "row_filter_fixed": {
             "type": "boolean",
             "default": False,
             "description": "true where no condition of the row filter may be dropped",
         },
+        "rows_exist_because": {
+            **NAMES,
+            "description": "what decides, beside the row filter, whether a row is there at all (an inner join, a"
+            " rule of retention): nodes of the graph, measured or not",
+        },
+        "missing_because": MISSING,
         "population": {
-            "enum": ["kept"],
+            "enum": ["kept", "whole"],
             "default": "kept",
-            "description": "whose effect is claimed: of the rows kept",
+            "description": "whose effect is claimed: of the rows kept, or of everybody",
+        },
+        "measured_everywhere": {
+            **NAMES,
+            "description": "the columns whose distribution over everybody is known, for the effect in everybody",
+        },
+        "outside_graph": {
+            **NAMES,
+            "description": "names of columns that the graph does not have and the config may use",
         },
         "meta": {"description": "anything; returned as it is"},
     },
     "required": ["treatment", "outcome", "covariates"],
     "additionalProperties": False,
-    "x-not-yet": [
-        "formula",
-        "derived",
-        "rows_exist_because",
-        "missing_because",
-        "measured_everywhere",
-        "fixed_effects",
-        "weighted_by",
-        "matched_on",
-        "outside_graph",
-        "accept",
-    ],
+    "x-not-yet": ["formula", "accept"],
 }

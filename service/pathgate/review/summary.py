@@ -32,7 +32,7 @@ def summarise(
     ends = f"{listed(graph.names_of(claim.treatments))} on {listed(graph.names_of(claim.outcomes))}"
     effect = f"{claim.effect_name} of {ends}"
     if verdict == "sound":
-        adjusted = graph.names_of(claim.covariates)
+        adjusted = graph.names_of(claim.adjusted_for)
         how = f"adjusted for {listed(adjusted)}" if adjusted else "without covariates"
         return f"Sound: {effect}, {how}, is what the model reports, if the graph is right."
     culprits = _culprits(findings)

@@ -9,7 +9,7 @@ from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.findings import Finding
-from pathgate.review.wording import listed, part_text
+from pathgate.review.wording import capital, listed, part_text, silent_text
 
 
 def warning_findings(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
@@ -20,7 +20,7 @@ def warning_findings(claim: Claim, config: Config, deadline: Deadline) -> Iterat
     """
     yield from _directions(claim, config, deadline)
     yield from _treatments(claim, config, deadline)
-    yield from _filter(claim, config)
+    yield from _rows(claim, config)
 
 
 def _directions(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Finding]:
@@ -68,16 +68,21 @@ def _treatments(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Fi
             yield Finding("treatment-precedes-treatment", columns, message, treatment.place)
 
 
-def _filter(claim: Claim, config: Config) -> Iterator[Finding]:
+def _rows(claim: Claim, config: Config) -> Iterator[Finding]:
     graph = claim.graph
     below = descendants(graph, claim.treatments)
-    for filter_part in config.filter_parts:
+    for filter_part in (*config.rows.filter_parts, *config.rows.silent_parts):
         part = filter_part.part
         # A filter on treatments alone narrows their range and says nothing else about who is kept.
         if part.columns & below and part.columns & ~claim.treatments:
             columns = graph.names_of(part.columns & below)
+            is_silent = any(filter_part is silent for silent in config.rows.silent_parts)
+            who = f"Who is kept by {part_text(part.written)} depends on the treatment"
+            if is_silent:
+                who = f"{capital(silent_text(part.written))} makes who is kept depend on the treatment"
             message = (
-                f"Who is kept by {part_text(part.written)} depends on the treatment (through {listed(columns)}):"
-                " the number speaks of the rows that were in fact kept, and of nobody else."
+                f"{who} (through {listed(columns)}): the number speaks of the rows that were in fact kept, and of"
+                " nobody else."
             )
-            yield Finding("filter-depends-on-treatment", columns, message, filter_part.place, part.written)
+            rule = "lost-rows-depend-on-treatment" if is_silent else "filter-depends-on-treatment"
+            yield Finding(rule, columns, message, filter_part.place, part.written)

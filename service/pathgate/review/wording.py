@@ -40,10 +40,34 @@ def part_text(part: object) -> str:
     if isinstance(part, str):
         return f"`{shortened(part)}`"
     if isinstance(part, Mapping):
+        if "columns" not in part:
+            return silent_text(part)
         columns = part["columns"]
         shown = listed([columns] if isinstance(columns, str) else columns)
         return f"one value of {shown}" if part.get("fixed") else shown
     return listed(part)  # type: ignore[arg-type] # a list of names
+
+
+def silent_text(written: object) -> str:
+    """What makes rows go missing beside the row filter, as the subject of a sentence.
+
+    >>> silent_text({"rows_exist_because": "courier_app"}), silent_text({"missing_because": {"weight": ["depot"]}})
+    ('that rows exist because of "courier_app"', 'that rows without "weight" go missing because of "depot"')
+    """
+    said = written if isinstance(written, Mapping) else {}
+    if "rows_exist_because" in said:
+        return f"that rows exist because of {_listed_one_or_more(said['rows_exist_because'])}"
+    ((column, causes),) = said["missing_because"].items()
+    return f"that rows without {quoted(column)} go missing because of {_listed_one_or_more(causes)}"
+
+
+def _listed_one_or_more(names: str | Sequence[str]) -> str:
+    return listed([names] if isinstance(names, str) else names)
+
+
+def capital(sentence: str) -> str:
+    """The sentence with a capital letter first."""
+    return sentence[:1].upper() + sentence[1:]
 
 
 def shortened(sql: str) -> str:

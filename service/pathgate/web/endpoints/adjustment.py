@@ -13,10 +13,14 @@ from pathgate.graphs.masks import members
 from pathgate.graphs.names import quoted
 from pathgate.review.breaks import breaking_findings
 from pathgate.review.claims import Claim
-from pathgate.review.config import Config, NameReader, read_parts, understand_ends
+from pathgate.review.config import Config, understand_ends
 from pathgate.review.degenerate import degenerate_findings
+from pathgate.review.derived import Columns
 from pathgate.review.document import finding_document, measure_document
 from pathgate.review.findings import Finding
+from pathgate.review.names import NameReader
+from pathgate.review.parts import read_parts
+from pathgate.review.rows_kept import RowsKept
 from pathgate.review.schema import ASKS, NAMES, SOME_NAMES
 from pathgate.review.warnings import warning_findings
 from pathgate.web.endpoints.adjustment_words import (
@@ -51,7 +55,7 @@ def answer(call: Call) -> Json:
     _refuse_meaningless(call, graph, config, required, excluded)
     _refuse_combinations(call, config)
     call.refuse_faults()
-    claim = Claim.of(graph, config)
+    claim = Claim.of(config)
     effect = claim.effect_among(claim.parts)
     is_whole = call.body.get("population", "kept") == "whole"
     population: Population = InEverybody(effect, known) if is_whole else AmongKept(effect)
@@ -72,10 +76,11 @@ def _question(call: Call, names: NameReader) -> Config:
     treatments, outcomes = understand_ends(call.body, names)
     return Config(
         name="",
+        columns=Columns(names.graph),
         treatments=treatments,
         outcomes=outcomes,
         covariates=names.read(call.body.get("check", []), ("check",)),
-        filter_parts=read_parts(call.body.get("selected_on", []), names, ("selected_on",)),
+        rows=RowsKept(read_parts(call.body.get("selected_on", []), names, ("selected_on",))),
         asks=call.body.get("asks", "total"),
         may_read_unmeasured=True,
     )

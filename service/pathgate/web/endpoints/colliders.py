@@ -7,7 +7,7 @@ from collections.abc import Iterator
 from pathgate.criteria.colliders import Collider, Induced, colliders, induced
 from pathgate.criteria.errors import OutOfTime
 from pathgate.criteria.selection import keep_rows
-from pathgate.review.config import read_parts
+from pathgate.review.parts import read_parts
 from pathgate.web.endpoints.reading import graph_of, mask_in, names_of
 from pathgate.web.endpoints.shared_schemas import (
     CURSOR,

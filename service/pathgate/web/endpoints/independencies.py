@@ -21,7 +21,7 @@ from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.demo import demo_graph
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.masks import members
-from pathgate.review.config import read_parts
+from pathgate.review.parts import read_parts
 from pathgate.review.wording import arrow_text
 from pathgate.web.endpoints.reading import graph_of, names_of
 from pathgate.web.endpoints.shared_schemas import CURSOR, GRAPH, LIMIT, NAME_LIST, NEXT_PAGE, SELECTED_ON

@@ -7,7 +7,7 @@ from typing import Any
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.reading import Examined, examine_graph
-from pathgate.review.config import NameReader
+from pathgate.review.names import NameReader
 from pathgate.web.operations import Call
 from pathgate.web.problems import Refused
 

@@ -10,8 +10,8 @@ from pathgate.criteria.separation import DEFAULT_PATHS, Blocker, Separation, exp
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.names import quoted
-from pathgate.review.config import NameReader
 from pathgate.review.document import path_document
+from pathgate.review.names import NameReader
 from pathgate.review.schema import SOME_NAMES
 from pathgate.web.endpoints.reading import graph_of, names_of
 from pathgate.web.endpoints.shared_schemas import GIVEN, GRAPH, NAME_LIST, PATH_COMPONENTS

@@ -1,0 +1,21 @@
+"""Which computed columns are determined by others?"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+
+def determined_by(known: int, inputs: Mapping[int, int]) -> int:
+    """What is known once some columns are: these, and whatever is computed from them alone.
+
+    Args:
+        known: mask of the columns to start from.
+        inputs: for each computed column the mask of what it is computed from, inputs before what uses them.
+
+    >>> bin(determined_by(0b011, {2: 0b011, 3: 0b100, 5: 0b10001}))
+    '0b1111'
+    """
+    for node, made_of in inputs.items():
+        if not made_of & ~known:
+            known |= 1 << node
+    return known
