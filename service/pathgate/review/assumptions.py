@@ -21,6 +21,8 @@ _RULES = {
 def assumption_findings(claim: Claim, config: Config) -> Iterator[Finding]:
     """A note for each thing assumed about the rows kept."""
     for assumed in config.rows.assumed:
+        if assumed.kind == "outside":
+            continue  # told of with all other names outside the graph
         columns = claim.graph.names_of(assumed.columns)
         yield Finding(
             _RULES[assumed.kind], columns, _message(assumed, columns), assumed.place, assumed.written

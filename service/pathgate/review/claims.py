@@ -191,12 +191,15 @@ class Claim:
         if not self.inputs:
             return 0
         pinned = mask_of(node for part in choice.parts if part.fixed for node in members(part.columns))
-        held = self.held_fixed(choice) | pinned
+        return self.only_varied_by(self.treatments, self.held_fixed(choice) | pinned)
+
+    def only_varied_by(self, columns: int, held: int) -> int:
+        """The computed columns held fixed that only these columns can make vary, once the others are held."""
         found = 0
         for node in self.inputs:
             if held >> node & 1:
                 others = held & ~(1 << node)
-                determined = determined_by(others | self.treatments, self.inputs) >> node & 1
+                determined = determined_by(others | columns, self.inputs) >> node & 1
                 if determined and not determined_by(others, self.inputs) >> node & 1:
                     found |= 1 << node
         return found

@@ -13,10 +13,12 @@ from pathgate.graphs.masks import mask_of, members
 from pathgate.graphs.names import quoted
 from pathgate.review.derived import Columns, understand_columns
 from pathgate.review.errors import InvalidConfig
+from pathgate.review.model_formula import ModelFormula, agreed_covariates, agreed_outcomes, understand_formula
 from pathgate.review.names import Named, NameReader
 from pathgate.review.rows_kept import ALL_ROWS, RowsKept, understand_rows
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.review.shape import Shape, are_cut_off
+from pathgate.review.terms import ModelTerm
 
 NO_META = object()
 """Stands where a config has no ``meta``: null is something a config may say."""
@@ -35,6 +37,7 @@ class Config:
         treatments, outcomes: columns, each named once; a computed treatment stands for what it is made of.
         covariates, fixed_effects, weighted_by, matched_on: what the model adjusts for, and how.
         treated: the treatments as the config names them.
+        terms: what the model has coefficients for.
         rows: which rows the model sees.
         row_filter_fixed: may no part of the filter be dropped?
         asks: the total effect, or the direct one.
@@ -56,6 +59,7 @@ class Config:
     weighted_by: tuple[Named, ...] = ()
     matched_on: tuple[Named, ...] = ()
     treated: tuple[Named, ...] = ()
+    terms: tuple[ModelTerm, ...] = ()
     rows: RowsKept = ALL_ROWS
     row_filter_fixed: bool = False
     asks: Asks = "total"
@@ -109,15 +113,20 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     faulty = {fault.place[0] for fault in faults if fault.place}
     said = {member: held for member, held in value.items() if member not in faulty}
     columns = understand_columns(said, graph, faults)
+    formula = understand_formula(said, columns, faults) if "formula" in said else None
+    columns = formula.columns if formula else columns
     names = NameReader(columns.graph, faults, recodes=columns.recodes, outside=columns.outside)
-    ends = _Ends(columns, said, NameReader(columns.graph, faults, recodes=columns.recodes))
+    names.passed_over.extend(formula.passed_over if formula else ())
+    ends = _Ends(columns, said, NameReader(columns.graph, faults, recodes=columns.recodes), formula)
     adjusted = {member: names.read(said.get(member, []), (member,)) for member in _ADJUSTING}
     repeated = tuple(names.repeated)
+    if formula:
+        adjusted["covariates"] = agreed_covariates(formula, adjusted["covariates"], said, faults)
     treatments, outcomes = ends.read()
     modelled = (*treatments, *outcomes, *(named for read in adjusted.values() for named in read))
     rows = understand_rows(said, names, modelled)
     known = _known(said, names)
-    _refuse_meaningless(said, faults)
+    _refuse_meaningless(value, said, faults)
     if faults:
         return None
     return Config(
@@ -130,6 +139,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         weighted_by=adjusted["weighted_by"],
         matched_on=adjusted["matched_on"],
         treated=ends.treated,
+        terms=formula.terms if formula else _plain_terms(ends.treated, adjusted["covariates"]),
         rows=rows,
         row_filter_fixed=said.get("row_filter_fixed", False),
         asks=said.get("asks", "total"),
@@ -142,10 +152,19 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     )
 
 
+def _plain_terms(treated: Sequence[Named], covariates: Sequence[Named]) -> tuple[ModelTerm, ...]:
+    return tuple(ModelTerm(named.written, named.place, named.node) for named in (*treated, *covariates))
+
+
 _ADJUSTING = ("covariates", "fixed_effects", "weighted_by", "matched_on")
 
 
-def _refuse_meaningless(said: Mapping[str, Any], faults: list[Fault]) -> None:
+def _refuse_meaningless(value: Mapping[str, Any], said: Mapping[str, Any], faults: list[Fault]) -> None:
+    # A schema that let a formula stand in for them would say nothing clear of what is missing.
+    missing = [
+        member for member in ("outcome", "covariates") if member not in value and "formula" not in value
+    ]
+    faults += [Fault("invalid-request", (), f"the member {quoted(member)} is missing") for member in missing]
     if said.get("population") == "whole" and said.get("asks") == "direct":
         detail = "a direct effect is judged among the rows kept only"
         faults.append(Fault("invalid-request", ("population",), detail))
@@ -169,10 +188,15 @@ class _Ends:
     columns: Columns
     said: Mapping[str, Any]
     names: NameReader
+    formula: ModelFormula | None = None
     treated: tuple[Named, ...] = ()
 
     def read(self) -> tuple[tuple[Named, ...], tuple[Named, ...]]:
-        treatments, outcomes = understand_ends(self.said, self.names)
+        treatments = self.names.read(self.said.get("treatment", []), ("treatment",))
+        outcomes = self.names.read(self.said.get("outcome", []), ("outcome",))
+        if self.formula:
+            outcomes = agreed_outcomes(self.formula, outcomes, self.said, self.names.faults)
+        refuse_ends(self.said, self.names, treatments, outcomes)
         self.treated = treatments
         bases: dict[int, Named] = {}
         for named in treatments:
@@ -192,13 +216,20 @@ def understand_ends(
     """The treatments and the outcomes that the members of those names mean; they must not share a column."""
     treatments = names.read(value.get("treatment", []), ("treatment",))
     outcomes = names.read(value.get("outcome", []), ("outcome",))
+    refuse_ends(value, names, treatments, outcomes)
+    return treatments, outcomes
+
+
+def refuse_ends(
+    value: Mapping[str, Any], names: NameReader, treatments: Sequence[Named], outcomes: Sequence[Named]
+) -> None:
+    """A fault for what treatments and outcomes cannot be together."""
     refuse_shared(names, treatments, outcomes)
     if value.get("asks") == "direct":
         for several in (treatments, outcomes):
             if len(several) > 1:
                 detail = "a direct effect is that of one column on one other"
                 names.faults.append(Fault("invalid-request", several[1].place, detail))
-    return treatments, outcomes
 
 
 def refuse_shared(names: NameReader, treatments: Sequence[Named], outcomes: Sequence[Named]) -> None:

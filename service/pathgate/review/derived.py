@@ -19,6 +19,7 @@ from pathgate.graphs.masks import mask_of, members
 from pathgate.graphs.names import quoted
 from pathgate.review.names import NameReader
 from pathgate.review.schema import STANDARD_DIALECT
+from pathgate.review.sql_names import names_in_expression, read_sql_expression
 
 MOST_NAME_CHARACTERS = 200
 
@@ -133,6 +134,8 @@ class _Deriving:
 
     def _mentioned(self, said: Mapping[str, Any]) -> Iterator[tuple[str, str]]:
         """Member and name of each column that a declaration names."""
+        if "sql" in said:
+            yield from (("sql", name) for name in names_in_expression(said["sql"], self._dialect))
         if "recodes" in said:
             yield "recodes", said["recodes"]
         inputs = said.get("from", ())
@@ -142,7 +145,9 @@ class _Deriving:
     def _add(self, name: str, said: Mapping[str, Any]) -> None:
         place: Place = ("derived", name)
         names = NameReader(self._columns.graph, self._faults, recodes=self._columns.recodes)
-        if "recodes" in said:
+        if "sql" in said:
+            self._add_expression(name, said["sql"])
+        elif "recodes" in said:
             for named in names.read(said["recodes"], (*place, "recodes")):
                 is_coarse = said.get("coarse", False) or self._columns.recodes.get(said["recodes"], False)
                 self._columns = self._columns.grown([], {name: (named.node, is_coarse)})
@@ -150,3 +155,15 @@ class _Deriving:
             inputs = mask_of(named.node for named in names.read(said["from"], (*place, "from")))
             if inputs:
                 self._columns = self._columns.grown([(name, inputs)], {})
+
+    def _add_expression(self, name: str, text: str) -> None:
+        columns = self._columns
+        coarse = frozenset(each for each, is_coarse in columns.recodes.items() if is_coarse)
+        place: Place = ("derived", name, "sql")
+        inputs, keeps = read_sql_expression(
+            text, self._dialect, columns.graph, self._faults, place, outside=columns.outside, coarse=coarse
+        )
+        if keeps == "computed" and inputs:
+            self._columns = columns.grown([(name, inputs)], {})
+        elif inputs:
+            self._columns = columns.grown([], {name: (inputs.bit_length() - 1, keeps == "coarse")})

@@ -30,6 +30,9 @@ def review_document(answer: Review) -> Json:
         "columns": [
             {"column": each.column, "role": each.role, "advice": each.advice} for each in answer.columns
         ],
+        "coefficients": [
+            {"term": each.term, "reads_as": each.reads_as, "why": each.why} for each in answer.coefficients
+        ],
         "remedies": [remedy_document(claim, remedy) for remedy in answer.remedies],
         "cautions": [SOUND_MEANS, ABOUT_THE_GRAPH] if answer.verdict == "sound" else [ABOUT_THE_GRAPH],
     }
@@ -48,6 +51,7 @@ def finding_document(finding: Finding) -> Json:
         "columns": list(finding.columns),
         "message": finding.message,
         "pointer": pointer(("config", *finding.place)),
+        "help": f"/docs/rules/{finding.rule}",
     }
     if finding.part is not None:
         document["part"] = finding.part

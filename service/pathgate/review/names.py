@@ -6,7 +6,7 @@ means nothing is a fault with the nearest known name, unless the config declares
 
 from __future__ import annotations
 
-from collections.abc import Collection, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 from pathgate.graphs.errors import Fault, Place
@@ -39,8 +39,8 @@ class NameReader:
         faults: what is wrong is added here.
         by_alias: do other names of a column count? They do in configs.
         refuse_repeats: is a column named twice a fault? It is in configs.
-        recodes: names of values computed from one column each, which stand for it: a column may be named
-            beside them.
+        recodes: names of values computed from one column each, which stand for it (true where they keep only a
+            part of it): a column may be named beside them.
         outside: names that may be in no graph.
         passed_over: the names among these that were met, with their places.
         repeated: the columns that were named again by a recode, or after one.
@@ -50,7 +50,7 @@ class NameReader:
     faults: list[Fault]
     by_alias: bool = True
     refuse_repeats: bool = True
-    recodes: Collection[str] = ()
+    recodes: Mapping[str, bool] = field(default_factory=dict)
     outside: frozenset[str] = frozenset()
     passed_over: list[tuple[str, Place]] = field(default_factory=list)
     repeated: list[Named] = field(default_factory=list)

@@ -42,4 +42,7 @@ def _object_part(item: Mapping[str, Any], names: NameReader, place: Place) -> Fi
     if fixed and not isinstance(item["columns"], str) and len(item["columns"]) != 1:
         detail = "a condition that is fixed holds exactly one column at one value"
         names.faults.append(Fault("invalid-request", (*place, "fixed"), detail))
-    return FilterPart(Part(mask_of(one.node for one in found), fixed=fixed, written=dict(item)), place)
+    # Within one bucket of a column it still varies.
+    is_whole = not any(names.recodes.get(one.written) for one in found)
+    columns = mask_of(one.node for one in found)
+    return FilterPart(Part(columns, fixed=fixed and is_whole, written=dict(item)), place)

@@ -17,8 +17,10 @@ from pathgate.graphs.masks import mask_of
 from pathgate.review.assumptions import assumption_findings
 from pathgate.review.breaks import breaking_findings
 from pathgate.review.claims import Claim
+from pathgate.review.coefficients import Coefficient, coefficients
 from pathgate.review.computed import computed_findings
 from pathgate.review.config import Config
+from pathgate.review.crossing import term_findings
 from pathgate.review.degenerate import degenerate_findings
 from pathgate.review.everybody import population_findings
 from pathgate.review.findings import Finding
@@ -43,6 +45,7 @@ class Review:
         claim: what was judged.
         findings: errors first, then warnings, each group in the order of the config.
         columns: role and advice for the columns of the config, its remedies and its open paths.
+        coefficients: what each of the model's may be read as.
         remedies: fewest changes first; empty unless the verdict is ``biased``.
         measure_next: where the verdict is ``unanswerable``, the cheapest that would have to be measured for some
             choice to do; None where nothing helps.
@@ -55,13 +58,16 @@ class Review:
     verdict: Verdict
     findings: tuple[Finding, ...]
     columns: tuple[ColumnRole, ...]
+    coefficients: tuple[Coefficient, ...]
     remedies: tuple[Remedy, ...]
     summary: str
     measure_next: MeasureNext | None = None
 
 
-def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None) -> Review:
-    """Judge a config against a graph.
+def review(
+    graph: CausalGraph, config: Config, deadline: Deadline | None = None, *, all_columns: bool = False
+) -> Review:
+    """Judge a config against a graph; with ``all_columns`` every column of the graph is given its role.
 
     Raises:
         OutOfTime: the deadline came first.
@@ -81,13 +87,15 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
         *population_findings(claim, config),
         *warning_findings(claim, config, deadline),
         *timing_findings(claim, config),
+        *term_findings(claim, config),
         *computed_findings(claim, config),
         *assumption_findings(claim, config),
     ]
     findings.sort(key=lambda finding: _GRAVITY[finding.severity])
     verdict = _verdict(claim, findings)
     remedies = find_remedies(claim, deadline) if verdict == "biased" else ()
-    columns = _columns_in_question(claim, findings, remedies)
+    columns = claim.graph.measured if all_columns else 0
+    columns |= _columns_in_question(claim, findings, remedies)
     first = remedies[0] if remedies else None
     return Review(
         graph=graph,
@@ -96,6 +104,7 @@ def review(graph: CausalGraph, config: Config, deadline: Deadline | None = None)
         verdict=verdict,
         findings=tuple(findings),
         columns=column_roles(claim, columns, first, deadline, is_sound=verdict == "sound"),
+        coefficients=tuple(coefficients(claim, config, deadline)),
         remedies=remedies,
         summary=summarise(claim, verdict, findings, first),
         measure_next=_measure_next(claim, deadline) if verdict == "unanswerable" else None,

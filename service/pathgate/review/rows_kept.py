@@ -36,14 +36,24 @@ ALL_ROWS = RowsKept()
 
 def understand_rows(said: Mapping[str, Any], names: NameReader, modelled: Sequence[Named]) -> RowsKept:
     """The rows that a config's model sees; the columns of the model must be left something to compare."""
-    silent, _missing = _silent(said, names)
+    silent, missing = _silent(said, names)
     row_filter, place = said.get("row_filter", []), ("row_filter",)
     if not isinstance(row_filter, str):
         return RowsKept(read_parts(row_filter, names, place), silent)
     if any(fault.place == ("dialect",) for fault in names.faults):
         return RowsKept((), silent)
     dialect = said.get("dialect", STANDARD_DIALECT)
-    found: SqlFilter = read_sql_filter(row_filter, dialect, names.graph, names.faults, place)
+    found: SqlFilter = read_sql_filter(
+        row_filter,
+        dialect,
+        names.graph,
+        names.faults,
+        place,
+        outside=names.outside,
+        coarse=frozenset(name for name, is_coarse in names.recodes.items() if is_coarse),
+        missing=missing,
+    )
+    names.passed_over.extend((name, place) for each in found.assumed for name in each.names)
     for named in modelled:
         if found.emptied >> named.node & 1:
             name = names.graph.name(named.node)

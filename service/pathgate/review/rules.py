@@ -152,6 +152,11 @@ RULES: dict[str, Rule] = {
             "The model adjusts for a bucket or threshold of a column, and so only for a part of it.",
         ),
         Rule(
+            "treatment-in-product",
+            "warning",
+            "A term multiplies the treatment with another column, so its own coefficient is not the effect.",
+        ),
+        Rule(
             "redundant-covariate",
             "warning",
             "The model adjusts for something that its other covariates determine.",

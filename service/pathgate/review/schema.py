@@ -110,6 +110,21 @@ DERIVED: Schema = {
                 "required": ["recodes"],
                 "additionalProperties": False,
             },
+            {
+                "type": "object",
+                "title": "{sql: an expression}",
+                "description": "computed as this SQL expression says; one that is one-to-one in one column recodes it",
+                "properties": {
+                    "sql": {
+                        "title": "a SQL expression",
+                        "type": "string",
+                        "minLength": 1,
+                        "maxLength": MOST_SQL_CHARACTERS,
+                    }
+                },
+                "required": ["sql"],
+                "additionalProperties": False,
+            },
         ],
     },
 }
@@ -124,7 +139,8 @@ MISSING: Schema = {
 
 CONFIG_SCHEMA: Schema = {
     "type": "object",
-    "description": "What one model claims: which effect it reports, adjusted for what, on which rows.",
+    "description": "What one model claims: which effect it reports, adjusted for what, on which rows. Without a"
+    " formula, outcome and covariates are needed too.",
     "properties": {
         "$schema": {"type": "string", "description": "for editors; not read"},
         "name": {"type": "string", "maxLength": 200, "description": "what the config is called in answers"},
@@ -132,6 +148,14 @@ CONFIG_SCHEMA: Schema = {
         "outcome": {**SOME_NAMES, "description": "the column or columns on which the effect is claimed"},
         "asks": ASKS,
         "covariates": {**NAMES, "description": "the columns that the model adjusts for"},
+        "formula": {
+            "type": "string",
+            "title": "a model formula",
+            "description": "the model in Wilkinson notation, outcome ~ terms; outcome and covariates may then be left"
+            " out, and must agree with it where they are given",
+            "minLength": 1,
+            "maxLength": 10_000,
+        },
         "fixed_effects": {
             **NAMES,
             "description": "the columns whose fixed effects the model absorbs, and with each whatever the graph"
@@ -186,7 +210,7 @@ CONFIG_SCHEMA: Schema = {
         },
         "meta": {"description": "anything; returned as it is"},
     },
-    "required": ["treatment", "outcome", "covariates"],
+    "required": ["treatment"],
     "additionalProperties": False,
-    "x-not-yet": ["formula", "accept"],
+    "x-not-yet": ["accept"],
 }

@@ -120,6 +120,14 @@ def read_sql_expression(  # noqa: PLR0913 - as above
     return reads.columns, "coarse" if found.keeps == "computed" or reads.is_coarse else found.keeps
 
 
+def names_in_expression(text: str, dialect: str) -> tuple[str, ...]:
+    """The last steps of the names that an expression reads; none where it cannot be read."""
+    try:
+        return tuple(dict.fromkeys(column.name for column in read_expression(text, dialect).columns))
+    except SqlRefused:
+        return ()
+
+
 @dataclass
 class _Reading:
     """A row filter, read condition by condition."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Literal
 
+from pathgate.criteria.whole import weighting
 from pathgate.review.claims import Claim
 from pathgate.review.findings import Finding
 from pathgate.review.remedies import Remedy
@@ -34,11 +35,22 @@ def summarise(
     if verdict == "sound":
         adjusted = graph.names_of(claim.adjusted_for)
         how = f"adjusted for {listed(adjusted)}" if adjusted else "without covariates"
+        how += _weighted(claim)
         return f"Sound: {effect}, {how}, is what the model reports, if the graph is right."
     culprits = _culprits(findings)
     if verdict == "unanswerable":
         return f"Unanswerable: no choice of measured covariates gives {effect} ({culprits})."
     return f"Biased: the model does not report {effect} ({culprits}); {remedy_text(claim, remedy)}."
+
+
+def _weighted(claim: Claim) -> str:
+    """By what the estimate must be weighted for it to speak of everybody."""
+    if claim.population != "whole":
+        return ""
+    by = weighting(claim.effect, claim.usable_covariates, claim.known)
+    return (
+        f" and weighted by how {listed(claim.graph.names_of(by))} is distributed in everybody" if by else ""
+    )
 
 
 def remedy_text(claim: Claim, remedy: Remedy | None) -> str:

@@ -6,6 +6,7 @@ from dataclasses import replace
 from typing import Any, get_args
 
 from pathgate.demo import demo_configs, demo_graph
+from pathgate.review.coefficients import ReadsAs
 from pathgate.review.config import understand_config
 from pathgate.review.hinge_document import whole_document
 from pathgate.review.review import review
@@ -32,7 +33,8 @@ def answer(call: Call) -> Json:
     if config is None:
         message = "a config without faults can be understood"
         raise AssertionError(message)
-    judged = review(graph, config, call.deadline)
+    all_columns = call.whole.get("columns", "in-question") == "all"
+    judged = review(graph, config, call.deadline, all_columns=all_columns)
     return whole_document(judged, call.deadline, hinges=call.whole.get("hinges", True))
 
 
@@ -49,21 +51,45 @@ FINDING: dict[str, Any] = {
             "description": "plain sentences; [x] is conditioned on, (x) is unmeasured",
         },
         "pointer": {"type": "string", "description": "where in the request"},
-        "part": {"description": "the condition of the row filter it is about, as written"},
+        "help": {"type": "string", "description": "the page that explains the rule"},
+        "part": {"description": "the condition on the rows it is about, as written"},
         "open_path": {"$ref": "#/components/schemas/Path"},
         "causal_path": {**_LABELS, "description": "the causal path that forbids the column"},
         "descent": {**_LABELS, "description": "from that path down to what is conditioned on"},
     },
-    "required": ["rule", "severity", "columns", "message", "pointer"],
+    "required": ["rule", "severity", "columns", "message", "pointer", "help"],
+    "additionalProperties": False,
+}
+
+COEFFICIENT: dict[str, Any] = {
+    "type": "object",
+    "description": "what one coefficient of the model may be read as; the treatment's verdict does not carry over to"
+    " the covariates",
+    "properties": {
+        "term": {"type": "string", "description": "the term, as the config writes it"},
+        "reads_as": {
+            "enum": list(get_args(ReadsAs)),
+            "description": "the total effect of the column on the outcome, its direct effect in a linear model, or"
+            " neither",
+        },
+        "why": {"type": "string"},
+    },
+    "required": ["term", "reads_as", "why"],
     "additionalProperties": False,
 }
 
 REMEDY: dict[str, Any] = {
     "type": "object",
     "properties": {
-        "covariates": {**NAME_LIST, "description": "all covariates to have"},
+        "covariates": {
+            **NAME_LIST,
+            "description": "all covariates to have, beside what stays of weights, matching and fixed effects",
+        },
         "add": NAME_LIST,
-        "drop": NAME_LIST,
+        "drop": {
+            **NAME_LIST,
+            "description": "to take out of covariates, weights, matching and fixed effects",
+        },
         "drop_filter_parts": {"type": "array", "description": "conditions to drop, as written"},
         "population": {"enum": ["kept", "whole"], "description": "whose effect it then is"},
         "message": {"type": "string"},
@@ -98,6 +124,11 @@ REVIEW: dict[str, Any] = {
                 "additionalProperties": False,
             },
         },
+        "coefficients": {
+            "type": "array",
+            "description": "one for each term of the model, the treatment's included",
+            "items": {"$ref": "#/components/schemas/Coefficient"},
+        },
         "remedies": {
             "type": "array",
             "description": "fewest changes first; each one, applied, reviews as sound",
@@ -113,7 +144,7 @@ REVIEW: dict[str, Any] = {
         "cautions": {"type": "array", "items": {"type": "string"}},
         "meta": {"description": "the config's own meta"},
     },
-    "required": ["name", "verdict", "summary", "findings", "columns", "remedies", "cautions"],
+    "required": ["name", "verdict", "summary", "findings", "columns", "coefficients", "remedies", "cautions"],
     "additionalProperties": False,
 }
 
@@ -121,6 +152,7 @@ REVIEW_COMPONENTS = {
     **PATH_COMPONENTS,
     "Config": CONFIG_SCHEMA,
     "Finding": FINDING,
+    "Coefficient": COEFFICIENT,
     "Remedy": REMEDY,
     "Review": REVIEW,
     **HINGE_COMPONENTS,
@@ -146,10 +178,16 @@ OPERATION = Operation(
                 "default": True,
                 "description": "whether to say what a sound verdict hinges on",
             },
+            "columns": {
+                "enum": ["in-question", "all"],
+                "default": "in-question",
+                "description": "whose roles to give: of the columns of the config, its remedies and its open paths,"
+                " or of every column of the graph",
+            },
         },
         "required": ["graph", "config"],
         "additionalProperties": False,
-        "x-not-yet": ["columns", "include", "as_gate"],
+        "x-not-yet": ["include", "as_gate"],
     },
     response_schema={"$ref": "#/components/schemas/Review"},
     components=REVIEW_COMPONENTS,

@@ -1,0 +1,28 @@
+"""Does a formula let the treatment's effect differ by another column?"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from pathgate.graphs.masks import mask_of
+from pathgate.review.claims import Claim
+from pathgate.review.config import Config
+from pathgate.review.findings import Finding
+from pathgate.review.wording import listed
+
+
+def term_findings(claim: Claim, config: Config) -> Iterator[Finding]:
+    """A warning for each term that multiplies a treatment: its coefficient is then no longer the effect."""
+    graph = claim.graph
+    treatments = mask_of(named.node for named in config.treated)
+    for term in config.terms:
+        treated = term.crossed & treatments
+        if term.node is None and treated and term.crossed & ~treated:
+            columns = graph.names_of(term.crossed)
+            message = (
+                f"The term {listed([term.written])} lets the effect of {listed(graph.names_of(treated))} differ by"
+                f" {listed(graph.names_of(term.crossed & ~treated))}: the coefficient of the treatment alone is its"
+                " effect where these are zero or at their first level. Report the effect averaged over the rows"
+                " instead."
+            )
+            yield Finding("treatment-in-product", columns, message, term.place)
