@@ -22,11 +22,25 @@ from pathgate.graphs.masks import members
 
 
 @dataclass(frozen=True, slots=True)
-class _Reach:
-    """Where open walks from a set of nodes can go on: by an arrow out of a node, by an edge that points at it."""
+class Reach:
+    """Where open walks from a set of nodes can go on: by an arrow out of a node, by an edge that points at it.
+
+    Attributes:
+        out, into: masks of these nodes.
+        by_head: the nodes that the walks enter by an arrowhead.
+    """
 
     out: int
     into: int
+    by_head: int
+
+    @classmethod
+    def of(cls, graph: CausalGraph, starts: int, conditions: Conditions) -> Reach:
+        """The walks that these conditions let through."""
+        by_tail, by_head = entered(graph, starts, conditions)
+        free = ~conditions.blocking
+        # Entered by an arrowhead and left against one: a collider, open where it leads to the set.
+        return cls((by_tail | by_head) & free, by_tail & free | by_head & conditions.opening, by_head)
 
 
 @dataclass(frozen=True)
@@ -42,7 +56,7 @@ class Hinges:
     effect: Effect
     covariates: int
     is_direct: bool = False
-    _without: dict[int, _Reach] = field(default_factory=dict, repr=False)
+    _without: dict[int, Reach] = field(default_factory=dict, repr=False)
 
     def arrows_from(self, source: int, among: int) -> int:
         """The targets in ``among`` to which an arrow from ``source``, added alone, would make the set invalid.
@@ -57,10 +71,11 @@ class Hinges:
         if at & self.effect.treatments:
             # The new arrow is itself the first one of a proper causal path, and harms where it leads to what
             # is conditioned on.
-            return harmful & ~self._causal_ends | self._causal_ends & self._opening
-        if self.is_direct or not at & self._downstream or not among & self._upstream:
+            return harmful & ~self.causal_ends | self.causal_ends & self._opening
+        detours = self.detours_from(source)
+        if not among & detours:
             return harmful
-        return harmful & ~self._upstream | self._upstream & self._harmful_detours(source, among)
+        return harmful & ~detours | detours & self._harmful_detours(source, among)
 
     def bidirected_with(self, node: int) -> int:
         """The nodes whose joining to ``node`` by a bidirected edge would make the set invalid."""
@@ -83,7 +98,7 @@ class Hinges:
         if (out & at and outcomes.into & to) or (outcomes.out & at and treatments.into & to):
             return True
         if to & self._opening:
-            changes_causes = (self._downstream | self.effect.treatments) & at and to & self._causal_ends
+            changes_causes = (self._downstream | self.effect.treatments) & at and to & self.causal_ends
             return bool(out & outcomes.out & at or self._below_causal & at or changes_causes)
         return bool(at & self._below_conditioned and to & self._upstream)
 
@@ -115,15 +130,26 @@ class Hinges:
         outcomes = self._from_outcomes
         if not (self._upstream & outcomes.into & among or outcomes.out & at):
             return self._opening
-        # What leads from the treatments to the source becomes causal, and is no longer followed.
-        to_source = ancestors(self._graph, at, avoiding=self.effect.treatments) & self._first_steps
-        treatments = self._from_treatments_without(to_source)
+        treatments = self._from_treatments_without(self.steps_towards(source))
         harmful = self._opening
         if treatments.out & at:
             harmful |= outcomes.into
         if outcomes.out & at:
             harmful |= treatments.into
         return harmful
+
+    def detours_from(self, source: int) -> int:
+        """The targets of an arrow from ``source`` that would be part of a new causal path, but not its first step."""
+        return self._upstream if self._downstream >> source & 1 and not self.is_direct else 0
+
+    def steps_towards(self, source: int) -> int:
+        """Where arrows from treatments lead that would become first steps of causal paths by such an arrow."""
+        return ancestors(self._graph, 1 << source, avoiding=self.effect.treatments) & self._first_steps
+
+    @cached_property
+    def causal_ends(self) -> int:
+        """Where an arrow from a treatment begins a causal path."""
+        return self.effect.outcomes if self.is_direct else self._upstream
 
     @property
     def _graph(self) -> CausalGraph:
@@ -139,10 +165,10 @@ class Hinges:
         return ancestors(self._graph, self._conditioned)
 
     @cached_property
-    def _from_treatments(self) -> _Reach:
+    def _from_treatments(self) -> Reach:
         return self._reach(self.effect.back_door_graph, self.effect.treatments)
 
-    def _from_treatments_without(self, first_steps: int) -> _Reach:
+    def _from_treatments_without(self, first_steps: int) -> Reach:
         """The same without the arrows from treatments to these nodes."""
         if not first_steps:
             return self._from_treatments
@@ -162,14 +188,11 @@ class Hinges:
         return steps & ~self.effect.treatments
 
     @cached_property
-    def _from_outcomes(self) -> _Reach:
+    def _from_outcomes(self) -> Reach:
         return self._reach(self.effect.back_door_graph, self.effect.outcomes)
 
-    def _reach(self, graph: CausalGraph, starts: int) -> _Reach:
-        by_tail, by_head = entered(graph, starts, Conditions(self._conditioned, self._opening))
-        free = ~self._conditioned
-        # Entered by an arrowhead and left against one: a collider, open where it leads to the set.
-        return _Reach((by_tail | by_head) & free, by_tail & free | by_head & self._opening)
+    def _reach(self, graph: CausalGraph, starts: int) -> Reach:
+        return Reach.of(graph, starts, Conditions(self._conditioned, self._opening))
 
     @cached_property
     def _below_causal(self) -> int:
@@ -185,11 +208,6 @@ class Hinges:
     def _upstream(self) -> int:
         """What reaches the outcomes by directed paths without meeting a treatment, the outcomes included."""
         return ancestors(self._graph, self.effect.outcomes, avoiding=self.effect.treatments)
-
-    @cached_property
-    def _causal_ends(self) -> int:
-        """Where an arrow from a treatment begins a causal path."""
-        return self.effect.outcomes if self.is_direct else self._upstream
 
     @cached_property
     def _below_conditioned(self) -> int:
