@@ -1,9 +1,9 @@
 """Which promised independency would an edge between two columns break, so that data could show the edge?
 
-That of the two themselves, where both are measured and some set of columns separates them: an edge breaks it
-whatever is given. It is told as the graph's basis states it. Whether a pair can be separated is seen at once where
-not even a path with every collider open joins the two; the rest is asked pair by pair, or for very many partners
-of a node at once (``separable``).
+That of the two themselves, where both are measured, vary among the rows kept, and are separated there by some set
+of columns: an edge breaks it whatever is given. It is told as the basis states it for the rows kept. Whether a pair
+can be separated is seen at once where not even a path with every collider open joins the two; the rest is asked
+pair by pair, or for very many partners of a node at once (``separable``).
 """
 
 from __future__ import annotations
@@ -14,8 +14,8 @@ from functools import cached_property
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.independencies import Independency, basis
 from pathgate.criteria.reachability import Conditions, connected
-from pathgate.criteria.selection import keep_rows
-from pathgate.criteria.separable import Pairs
+from pathgate.criteria.selection import Kept, keep_rows
+from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
@@ -33,11 +33,20 @@ class Exposing:
         graph: the graph that promises them.
         deadline: when to stop.
         hubs: nodes that many pairs have in common; these are asked about from there.
+        kept: the same graph as it is seen through the rows kept, where rows are left out.
+
+    >>> from pathgate.criteria.selection import Part
+    >>> graph = CausalGraph.of(("rain", "ticket"), ("promotion", "ticket"))
+    >>> kept = keep_rows(graph, [Part(graph.mask("ticket"), fixed=False, written="ticket")])
+    >>> exposing = Exposing(graph, Deadline.never()), Exposing(graph, Deadline.never(), kept=kept)
+    >>> [each.statements(0, graph.mask("promotion"))[2] for each in exposing]
+    [Independency(x=0, y=4, given=0), None]
     """
 
     graph: CausalGraph
     deadline: Deadline
     hubs: int = 0
+    kept: Kept | None = None
     _joined: dict[int, int] = field(default_factory=dict, repr=False)
     _above: dict[int, int] = field(default_factory=dict, repr=False)
     _separable: dict[int, tuple[int, int]] = field(default_factory=dict, repr=False)
@@ -63,16 +72,14 @@ class Exposing:
 
     def _statement(self, node: int, other: int) -> Independency:
         first, second = (node, other) if node < other else (other, node)
-        if self._is_fully_measured:
-            return basis(self._pairs, first, second)
-        return Independency(first, 1 << second, self._widest(first, second))
+        return basis(self._pairs, first, second)
 
     def _separable_from(self, node: int, others: int) -> int:
         """Which of these can be separated from ``node`` by columns? What is found is remembered."""
-        graph = self.graph
-        if not graph.measured >> node & 1:
+        columns = self._pairs.columns
+        if not columns >> node & 1:
             return 0
-        asked = others & graph.measured
+        asked = others & columns
         known, separable = self._separable.get(node, (0, 0))
         if asked & ~known:
             separable |= self._found_separable(node, asked & ~known)
@@ -82,40 +89,53 @@ class Exposing:
     def _found_separable(self, node: int, asked: int) -> int:
         graph = self.graph
         asked &= ~(graph.child_masks[node] | graph.parent_masks[node] | graph.spouse_masks[node])
+        doubted = self._doubted(node, asked)
         if self._is_fully_measured:
-            return asked
-        doubted = asked & ~self.hubs
-        doubted &= self._joined_to(node) if doubted else 0
-        for hub in members(asked & self.hubs):
-            if self._joined_to(hub) >> node & 1:
-                doubted |= 1 << hub
+            # Nothing unmeasured lies on a path, so that every doubt is right.
+            return asked & ~doubted
         separable = asked & ~doubted
         later = doubted >> node << node
         if later.bit_count() > FEW:
             separable |= self._pairs.separable(node, self.deadline) & later
             doubted &= ~later
+        kept = self._pairs.kept
         for other in members(doubted):
             self.deadline.poll()
-            if are_separated(graph, 1 << node, 1 << other, self._widest(node, other)):
+            given = self._pairs.widest(node, other) | kept.conditioned
+            if are_separated(kept.graph, 1 << node, 1 << other, given):
                 separable |= 1 << other
         return separable
 
+    def _doubted(self, node: int, asked: int) -> int:
+        """The nodes asked about that may be inseparable from this one."""
+        if self._is_fully_measured and not self._pairs.kept.conditioned:
+            return 0
+        others = asked & ~self.hubs
+        doubted = others and others & self._joined_to(node)
+        for hub in members(asked & self.hubs):
+            if self._joined_to(hub) >> node & 1:
+                doubted |= 1 << hub
+        return doubted
+
     def _joined_to(self, node: int) -> int:
-        """What a path joins to the node on which only colliders are measured; without one nothing is inseparable."""
+        """What a path joins to the node on which only colliders are columns; without one nothing is inseparable."""
         if node not in self._joined:
-            hopeful = Conditions(self.graph.measured & ~(1 << node), self.graph.everything)
-            self._joined[node] = connected(self.graph, 1 << node, hopeful)
+            kept = self._pairs.kept
+            hopeful = Conditions(kept.graph.measured & ~(1 << node), self._opening)
+            self._joined[node] = connected(kept.graph, 1 << node, hopeful)
         return self._joined[node]
 
-    def _widest(self, first: int, second: int) -> int:
-        """The columns above a pair: they separate it where anything does."""
-        above = self.above(first) | self.above(second)
-        return above & self.graph.measured & ~(1 << first | 1 << second)
+    @cached_property
+    def _opening(self) -> int:
+        """Where a collider may be open for a pair: above it, or above what is conditioned on."""
+        kept = self._pairs.kept
+        # Without anything unmeasured a collider above an end closes a cycle.
+        return ancestors(kept.graph, kept.conditioned) if self._is_fully_measured else kept.graph.everything
 
     @cached_property
     def _pairs(self) -> Pairs:
-        return Pairs(keep_rows(self.graph))
+        return Pairs(self.kept or keep_rows(self.graph))
 
     @cached_property
     def _is_fully_measured(self) -> bool:
-        return self.graph.measured == self.graph.everything and not len(self.graph.lower_ends)
+        return is_fully_measured(self.graph)
