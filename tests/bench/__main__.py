@@ -15,6 +15,7 @@ from tests.bench.harness import Figure, table
 from tests.bench.in_process import many_statements, single_verdicts, whole_large_request
 from tests.bench.over_http import memory_after_a_large_request, small_review
 from tests.bench.promising import smallest_for_all_pairs
+from tests.bench.reviewing import one_review
 
 BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "large-request": whole_large_request,
@@ -25,6 +26,7 @@ BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "first-set": first_set_of_very_many,
     "check-a-set": checking_a_set,
     "all-pairs": smallest_for_all_pairs,
+    "one-review": one_review,
     "memory": memory_after_a_large_request,
 }
 
