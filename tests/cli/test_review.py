@@ -62,7 +62,10 @@ def test_json_is_one_document_with_the_reviews_of_the_package(tmp_path):
         expected = review_document(review_one(judged, read_config(config, judged)))
         assert item == {"index": index, "count": 8, "name": config["name"], "review": expected}
     assert result.stdout.endswith("}\n")
-    assert result.stderr == "8 configs found, 8 reviewed: 1 sound, 6 biased, 1 unanswerable; 0 not judged.\n"
+    assert result.stderr == (
+        "8 configs found, 8 reviewed: 1 sound, 6 biased, 1 unanswerable; 0 not judged."
+        " Errors: 7 new, 0 known, 0 accepted.\n"
+    )
 
 
 def test_json_has_what_verdicts_hinge_on_where_that_is_asked_for(tmp_path):
@@ -209,7 +212,7 @@ def test_yaml_and_json_are_judged_alike(tmp_path):
     by_json = pathgate(
         write(tmp_path, "g.json", graph), write(tmp_path, "c.json", config), "--format", "json"
     )
-    assert by_yaml.stdout == by_json.stdout
+    assert documents(by_yaml) == documents(by_json)
     assert documents(by_yaml)[0]["review"]["verdict"] == "unanswerable"
     assert documents(by_yaml)[0]["review"]["meta"] == "2026-01-01"
 
@@ -234,14 +237,18 @@ def test_a_graph_that_cannot_be_used_is_said_in_one_line_and_nothing_is_judged(t
     graph = write(tmp_path, "graph.json", content)
     config = write(tmp_path, "c.json", SOUND)
     result = pathgate(graph, config)
-    assert (result.exit_code, result.stdout) == (2, "")
+    counts = (
+        "1 config found, 0 reviewed: 0 sound, 0 biased, 0 unanswerable; 1 not judged (1 skipped)."
+        " Errors: 0 new, 0 known, 0 accepted.\n"
+    )
+    assert (result.exit_code, result.stdout) == (2, counts)
     assert result.stderr.startswith("pathgate: nothing was judged: ")
     assert words in result.stderr
     assert len(result.stderr.splitlines()) == 1
     as_json = pathgate(graph, config, "--format", "json")
-    assert (as_json.exit_code, as_json.stderr) == (2, result.stderr)
+    assert (as_json.exit_code, as_json.stderr) == (2, result.stderr + counts)
     document = json.loads(as_json.stdout)
-    assert document["reviews"] == []
+    assert [item["problem"]["title"] for item in document["reviews"]] == ["Skipped"]
     assert document["problem"]["status"] in (400, 422)
 
 
@@ -262,7 +269,8 @@ def test_a_folder_or_nothing_as_graph_is_said_in_one_line(tmp_path):
     config = write(tmp_path, "c.json", SOUND)
     for graph in (str(tmp_path), str(tmp_path / "nowhere.json")):
         result = pathgate(graph, config)
-        assert (result.exit_code, result.stdout) == (2, "")
+        assert result.exit_code == 2
+        assert result.stdout.startswith("1 config found, 0 reviewed")
         assert len(result.stderr.splitlines()) == 1
 
 

@@ -1,165 +1,160 @@
 """What comes of reviewing every config of some files against one graph?
 
-One item for each config, with its review or with the problem that kept it from being judged; a file that cannot
-be read is an item too, and never the end of the others. The exit status follows: 0 all sound, 1 some config
-falls short, 2 something could not be judged, which outranks 1.
+Configs are found, judged one after the other, and their findings weighed. A file that cannot be read is an item
+too, and never the end of the others; where the graph or the baseline is of no use, every config is skipped.
 """
 
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterable, Iterator, Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any
 
-from pathgate.cli.files import Unreadable, config_files, read_file, shown
-from pathgate.criteria.deadline import Deadline
-from pathgate.graphs.errors import Fault, PathgateError
-from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.node_list import json_type
-from pathgate.graphs.reading import examine_graph
-from pathgate.review.config import read_config
-from pathgate.review.errors import InvalidConfig
-from pathgate.review.hinge_document import whole_document
-from pathgate.review.review import review
-from pathgate.web.problems import Problem, problem_of, refusal
+from pathgate.cli.baseline import Baseline, read_baseline
+from pathgate.cli.choices import FailOn
+from pathgate.cli.files import Unreadable, read_file
+from pathgate.cli.finding import (
+    Found,
+    Json,
+    faults_of,
+    find_configs,
+    plain_problem,
+    unreadable_problem,
+)
+from pathgate.cli.judging import Judge, LocalJudge, Unjudgeable, read_graph
+from pathgate.cli.run import Fault, Item, Place, Run
+from pathgate.cli.weighing import Scales, gone_entries, to_be_known
 from pathgate.web.settings import Settings
 
-Json = dict[str, Any]
-
-ALL_SOUND, FALLS_SHORT, NOT_JUDGED = 0, 1, 2
+Tick = Callable[[int, int], None]
+"""Told how many configs are done and how many there are."""
 
 
 @dataclass(frozen=True, slots=True)
-class Item:
-    """One config, and exactly one of its review and its problem.
+class Question:
+    """What is to be reviewed, and how.
 
     Attributes:
-        name: what the config calls itself, else where it stands.
-        review: the document of /v1/review.
-        problem: the document of the problem, without ``instance``: there was no request.
+        graph, configs: the files.
+        dialect: the SQL of configs that name none.
+        fail_on: from which severity on a finding counts.
+        baseline: the file of what is known; None where nothing is.
+        prune: are entries of it that no longer occur to be taken out?
+        write_baseline: the file to note down as known what this run finds; the baseline itself is not asked then.
+        hinges: is it to be found out what sound verdicts hinge on?
+        shows_hinges: are machines to be told it too?
     """
 
-    name: str
-    review: Json | None = None
-    problem: Json | None = None
-
-    @property
-    def outcome(self) -> str:
-        """The verdict, or ``not judged``."""
-        return "not judged" if self.review is None else str(self.review["verdict"])
-
-
-@dataclass(frozen=True, slots=True)
-class Outcome:
-    """All items in order, or the problem of the graph, without which nothing can be judged."""
-
-    items: tuple[Item, ...] = ()
-    problem: Json | None = None
-
-    @property
-    def exit_status(self) -> int:
-        """What the command ends with."""
-        counts = self.counts
-        if self.problem or not self.items or counts["not judged"]:
-            return NOT_JUDGED
-        return ALL_SOUND if counts["sound"] == len(self.items) else FALLS_SHORT
-
-    @property
-    def counts(self) -> Counter[str]:
-        """How many items ended in each verdict, and ``not judged``."""
-        return Counter(item.outcome for item in self.items)
-
-    def document(self) -> Json:
-        """The JSON document: an item for each config, in order."""
-        count = len(self.items)
-        reviews = [
-            {"index": index, "count": count, "name": item.name}
-            | ({"problem": item.problem} if item.review is None else {"review": item.review})
-            for index, item in enumerate(self.items)
-        ]
-        return {"reviews": reviews, "problem": self.problem} if self.problem else {"reviews": reviews}
+    graph: Path
+    configs: tuple[Path, ...]
+    dialect: str | None = None
+    fail_on: FailOn = "error"
+    baseline: Path | None = None
+    prune: bool = False
+    write_baseline: Path | None = None
+    hinges: bool = False
+    shows_hinges: bool = False
 
 
-def review_files(
-    graph: Path, configs: Iterable[Path], settings: Settings, *, hinges: bool = False
-) -> Outcome:
-    """Review every config that the files hold; ``hinges``: say what sound verdicts hinge on?"""
+def review_files(asked: Question, settings: Settings, tick: Tick = lambda _done, _of: None) -> Run:
+    """Review every config that the files hold.
+
+    Raises:
+        OSError: the baseline that is to be written or pruned cannot be.
+    """
+    founds = list(find_configs(asked.configs, asked.graph, settings))
     try:
-        value = _without_schema(read_file(graph, settings))
+        judge = _judge(asked, settings)
+        baseline = _baseline(asked, settings)
+    except _Stopped as stopped:
+        return _all_skipped(asked, founds, stopped)
+    answers = []
+    for done, found in enumerate(founds):
+        tick(done, len(founds))
+        answers.append(_answer(found, judge))
+    if asked.write_baseline is not None:
+        return _noting_down(asked, founds, answers, Baseline(asked.write_baseline, Counter()))
+    return _weighed(asked, founds, answers, baseline)
+
+
+class _Stopped(Exception):
+    """Nothing can be judged."""
+
+    def __init__(self, problem: Json, where: Found) -> None:
+        super().__init__(problem["detail"])
+        self.problem = problem
+        self.faults = faults_of(problem, where)
+
+
+def _judge(asked: Question, settings: Settings) -> Judge:
+    try:
+        source = read_file(asked.graph, settings)
     except Unreadable as error:
-        return Outcome(problem=_unreadable(graph, error))
-    examined = examine_graph(value)
-    if examined.faults:
-        problem = refusal([fault.below(("graph",)) for fault in examined.faults])
-        return Outcome(problem=_document(problem, settings))
-    files = config_files(configs, graph)
-    return Outcome(
-        tuple(item for file in files for item in _items(file, examined.graph, settings, hinges=hinges))
+        raise _Stopped(unreadable_problem(asked.graph, error), Found(asked.graph, unreadable=error)) from None
+    try:
+        graph = read_graph(source, settings)
+    except Unjudgeable as error:
+        raise _Stopped(error.problem, Found(asked.graph, source.value, source)) from None
+    return LocalJudge(graph, settings, hinges=asked.hinges, dialect=asked.dialect)
+
+
+def _baseline(asked: Question, settings: Settings) -> Baseline | None:
+    if asked.baseline is None or asked.write_baseline is not None:
+        return None
+    try:
+        return read_baseline(asked.baseline, settings)
+    except Unreadable as error:
+        problem = unreadable_problem(asked.baseline, error, "The baseline could not be used")
+        raise _Stopped(problem, Found(asked.baseline, unreadable=error)) from None
+
+
+def _answer(found: Found, judge: Judge) -> Json:
+    if found.unreadable is not None:
+        return {"problem": unreadable_problem(found.file, found.unreadable)}
+    return judge(found.config)
+
+
+def _weighed(
+    asked: Question, founds: Sequence[Found], answers: Sequence[Json], baseline: Baseline | None
+) -> Run:
+    scales = Scales(asked.fail_on, baseline)
+    items = tuple(scales.item(found, answer) for found, answer in zip(founds, answers, strict=True))
+    known_by = baseline.path if baseline else None
+    run = Run(items, fail_on=asked.fail_on, baseline=known_by, shows_hinges=asked.shows_hinges)
+    if baseline is None:
+        return run
+    gone = gone_entries(baseline, scales.left, founds, items)
+    if not asked.prune:
+        return replace(run, gone=tuple(gone))
+    if gone:
+        Baseline(baseline.path, baseline.known - gone).write()
+    return replace(
+        run, notes=(f"{len(gone):,} entries that no longer occur were taken out of the baseline.",)
     )
 
 
-def _items(file: Path, graph: CausalGraph, settings: Settings, *, hinges: bool) -> Iterator[Item]:
-    try:
-        value = read_file(file, settings)
-    except Unreadable as error:
-        yield Item(shown(file), problem=_unreadable(file, error))
-        return
-    if value == []:
-        yield Item(shown(file), problem=_unreadable(file, Unreadable("an empty list holds no config")))
-    elif isinstance(value, list):
-        for place, config in enumerate(value):
-            yield _item(config, f"{shown(file)}#/{place}", graph, settings, hinges=hinges)
-    else:
-        yield _item(value, shown(file), graph, settings, hinges=hinges)
+def _noting_down(asked: Question, founds: Sequence[Found], answers: Sequence[Json], empty: Baseline) -> Run:
+    """Write the baseline, and weigh by it; where something could not be judged it would say too little."""
+    run = _weighed(asked, founds, answers, None)
+    not_judged = run.counts.not_judged
+    if not_judged or not run.items:
+        note = f"The baseline was not written, since {not_judged:,} could not be judged."
+        return replace(run, notes=(note,))
+    full = Baseline(empty.path, to_be_known(empty, founds, run.items, asked.fail_on))
+    full.write()
+    note = f"The baseline was written: {full.known.total():,} findings are known from now on."
+    return replace(_weighed(asked, founds, answers, full), notes=(note,))
 
 
-def _item(value: Any, where: str, graph: CausalGraph, settings: Settings, *, hinges: bool) -> Item:
-    said = value.get("name") if isinstance(value, Mapping) else None
-    name = said if said and isinstance(said, str) else where
-    try:
-        if not isinstance(value, Mapping):
-            detail = f"a config is an object, not {json_type(value)}"
-            raise InvalidConfig([Fault("invalid-request", (), detail)])  # noqa: TRY301 - as read_config would
-        config = read_config(value, graph)
-        deadline = Deadline(settings.time_budget_seconds)
-        document = whole_document(review(graph, config, deadline), deadline, hinges=hinges)
-    except InvalidConfig as error:
-        problem = refusal([fault.below(("config",)) for fault in error.faults])
-        return Item(name, problem=_document(problem, settings))
-    except PathgateError as error:
-        known = problem_of(error)
-        if known is None:
-            raise
-        return Item(name, problem=_document(known, settings))
-    return Item(name, review=document)
-
-
-def _without_schema(value: Any) -> Any:
-    """The graph without the member that tells an editor its schema, which only files have."""
-    return (
-        {key: said for key, said in value.items() if key != "$schema"} if isinstance(value, dict) else value
-    )
-
-
-def _document(problem: Problem, settings: Settings) -> Json:
-    members = problem.members("", settings.max_errors)
-    del members["instance"]
-    return members
-
-
-def _unreadable(file: Path, error: Unreadable) -> Json:
-    detail = f"{shown(file)}: {error.detail}"
-    if error.place is not None:
-        line, column = error.place
-        problem = Problem.of("not-json", detail, line=line, column=column)
-        return _document(problem, Settings())
-    # No such problem over HTTP, where nothing is read from files: a type without a page of its own.
-    return {
-        "type": "about:blank",
-        "title": "The file could not be read",
-        "status": 400,
-        "detail": detail,
-        "retryable": False,
-    }
+def _all_skipped(asked: Question, founds: Sequence[Found], stopped: _Stopped) -> Run:
+    problem = plain_problem("Skipped", f"skipped, since nothing could be judged: {stopped.problem['detail']}")
+    items = []
+    for found in founds:
+        if found.unreadable is not None:
+            items.append(Scales(asked.fail_on).item(found, _answer(found, dict)))
+        else:
+            place = found.place()
+            fault = Fault(problem["detail"], Place(place.file, place.region))
+            items.append(Item(found.name, place, problem=problem, faults=(fault,), is_skipped=True))
+    return Run(tuple(items), stopped.problem, stopped.faults, asked.fail_on, asked.baseline)

@@ -12,14 +12,13 @@ from typing import Any
 
 import click
 
-from pathgate.cli.reviewing import Item, Outcome
+from pathgate.cli.run import Item, Run, Weighed
+from pathgate.cli.wording import counts_text, fault_lines, gone_text, waiver_text
 from pathgate.review.visible import visible
 
 Json = dict[str, Any]
 Wrap = Callable[[str, str], str]
 
-# Faults of one config that are listed; more are counted.
-_MOST_FAULTS = 10
 # Sentences that a sound verdict hinges on that are listed; more are counted.
 _MOST_HINGES = 8
 
@@ -29,14 +28,20 @@ _MEANINGS = {
     "unanswerable": "The number that this model reports is not the effect it is read as, and no choice of the"
     " columns that the platform holds makes it so.",
 }
-_COLOURS = {"sound": "green", "biased": "red", "unanswerable": "magenta", "not judged": "yellow"}
+_COLOURS = {
+    "sound": "green",
+    "biased": "red",
+    "unanswerable": "magenta",
+    "not judged": "yellow",
+    "skipped": "yellow",
+}
 _HOW_TO_READ_PATHS = (
     "In paths: → leads from cause to effect, ↔ joins two columns that share a cause nobody measures, [x] is held"
     " fixed by the model or the filter, (x) is not measured, {x} is a condition on the rows."
 )
 
 
-def outcome_text(outcome: Outcome, *, width: int | None = None, colour: bool = False) -> str:
+def run_text(run: Run, *, width: int | None = None, colour: bool = False) -> str:
     """Every item, what they have in common once, and how they ended.
 
     Args:
@@ -44,33 +49,9 @@ def outcome_text(outcome: Outcome, *, width: int | None = None, colour: bool = F
         colour: mark verdicts by colour beside the words.
     """
     wrap = _wrapper(width)
-    blocks = ["\n".join(_item_lines(item, wrap, colour=colour)) for item in outcome.items]
-    blocks += [wrap("", note) for note in _common_notes(outcome)]
-    return "\n\n".join([*blocks, counts_text(outcome)]) + "\n"
-
-
-def counts_text(outcome: Outcome) -> str:
-    """How many configs were found, and how they ended, in one line.
-
-    >>> counts_text(Outcome((Item("a", problem={}), Item("b", review={"verdict": "sound"}))))
-    '2 configs found, 1 reviewed: 1 sound, 0 biased, 0 unanswerable; 1 not judged.'
-    """
-    counts = outcome.counts
-    found, not_judged = len(outcome.items), counts["not judged"]
-    verdicts = ", ".join(f"{counts[verdict]} {verdict}" for verdict in _MEANINGS)
-    configs = "1 config" if found == 1 else f"{found} configs"
-    return f"{configs} found, {found - not_judged} reviewed: {verdicts}; {not_judged} not judged."
-
-
-def problem_lines(problem: Json) -> list[str]:
-    """What keeps something from being judged: a line, and below it each fault where it is not the only one."""
-    errors = [f"{visible(each['pointer'])}: {visible(each['detail'])}" for each in problem.get("errors", ())]
-    if len(errors) < 2:
-        return errors or [visible(problem["detail"])]
-    found = len(errors) + problem.get("errors_omitted", 0)
-    listed = errors[:_MOST_FAULTS]
-    more = [f"and {found - len(listed):,} more"] if found > len(listed) else []
-    return [f"{found:,} faults:", *(f"- {line}" for line in [*listed, *more])]
+    blocks = [] if run.problem else ["\n".join(_item_lines(item, wrap, colour=colour)) for item in run.items]
+    blocks += [wrap("", note) for note in _common_notes(run)]
+    return "\n\n".join([*blocks, counts_text(run)]) + "\n"
 
 
 def _item_lines(item: Item, wrap: Wrap, *, colour: bool) -> Iterator[str]:
@@ -79,15 +60,25 @@ def _item_lines(item: Item, wrap: Wrap, *, colour: bool) -> Iterator[str]:
         verdict = click.style(verdict, fg=_COLOURS[item.outcome], bold=True)
     yield f"{verdict}  {visible(item.name)}"
     if item.review is None:
-        yield from (wrap("  ", line) for line in problem_lines(item.problem or {}))
+        yield from (wrap("  ", line) for line in fault_lines(item.faults))
         return
     yield wrap("  ", _MEANINGS[item.outcome])
-    for finding in item.review["findings"]:
-        yield wrap("  ", f"{finding['severity']} {finding['rule']}: {visible(finding['message'])}")
+    for finding in item.findings:
+        yield from (wrap("  ", line) for line in _finding_lines(finding))
+    if item.outcome != "sound" and not item.falls_short:
+        yield wrap("  ", "It does not fail: every error is accepted or known.")
     yield from (wrap("  ", line) for line in _remedy_lines(item.review["remedies"]))
     yield from (wrap("  ", line) for line in _measuring_lines(item.review.get("measure_next")))
     yield from (wrap("  ", line) for line in _doubtful_lines(item.review.get("doubtful")))
     yield from (wrap("  ", line) for line in _hinge_lines(item.review.get("hinges_on")))
+
+
+def _finding_lines(finding: Weighed) -> Iterator[str]:
+    word = "known " if finding.standing == "known" else "accepted " if finding.waiver else ""
+    at = visible(str(finding.place))
+    yield f"{word}{finding.severity} {finding.rule} at {at}: {visible(finding.message)}"
+    if finding.waiver:
+        yield f"- {visible(waiver_text(finding.waiver))}"
 
 
 def _measuring_lines(found: Json | None) -> Iterator[str]:
@@ -124,14 +115,16 @@ def _remedy_lines(remedies: list[Json]) -> Iterator[str]:
         yield from (f"- {step}" for step in steps)
 
 
-def _common_notes(outcome: Outcome) -> Iterator[str]:
-    reviews = [item.review for item in outcome.items if item.review is not None]
+def _common_notes(run: Run) -> Iterator[str]:
+    reviews = [item.review for item in run.items if item.review is not None]
     findings = [finding for review in reviews for finding in review["findings"]]
     if any("open_path" in finding or "causal_path" in finding for finding in findings):
         yield _HOW_TO_READ_PATHS
     cautions = dict.fromkeys(caution for review in reviews for caution in review["cautions"])
     if cautions:
         yield " ".join(cautions)
+    yield from (visible(gone_text(entry)) for entry in run.gone)
+    yield from run.notes
 
 
 def _wrapper(width: int | None) -> Wrap:

@@ -26,6 +26,8 @@ from ruamel.yaml.events import (
 from ruamel.yaml.reader import ReaderError
 
 from pathgate.cli.core_schema import LIST_TAGS, OBJECT_TAGS, TEXT_TAGS, core_value
+from pathgate.cli.spots import Map
+from pathgate.cli.yaml_spots import YamlSpotting
 from pathgate.graphs.names import quoted
 
 # Values that aliases may stand for in one file, all told.
@@ -53,12 +55,23 @@ def read_yaml(text: str, max_depth: int) -> Any:
     >>> read_yaml("outcome: refund\\nmeta: {since: 2026-01-01, live: no}", max_depth=3)
     {'outcome': 'refund', 'meta': {'since': '2026-01-01', 'live': 'no'}}
     """
-    building = _Building(max_depth)
+    value, _where = read_yaml_and_places(text, max_depth)
+    return value
+
+
+def read_yaml_and_places(text: str, max_depth: int) -> tuple[Any, Map]:
+    """The value that ``text`` holds, and where in it each value stands.
+
+    Raises:
+        NotYaml: as for ``read_yaml``.
+    """
+    building, spotting = _Building(max_depth), YamlSpotting(text)
     for event in _events(text):
         building.take(event)
+        spotting.take(event)
     if not building.has_value:
         raise NotYaml("the file holds no value", 1, 1)
-    return building.value
+    return building.value, spotting.map()
 
 
 def _events(text: str) -> Iterator[Event]:
