@@ -1,8 +1,8 @@
 """The fewest nodes that part two sets of a small augmented graph, by paths that share no choosable node.
 
-Menger's theorem (1927) with augmenting paths (Ford & Fulkerson 1956) over bit masks. A search goes from clique
-to clique (``hubs``) and opens each once; a choosable node lets one path through, every other node any number.
-O(answer · nodes) mask operations.
+Menger's theorem (1927) with augmenting paths (Ford & Fulkerson 1956) over bit masks. A choosable node lets one
+path through; connected nodes that no cut may take are passed in one step. What lies beside the far end is known
+before a search sets out, so most paths are found after few steps. O(answer · nodes) mask operations.
 """
 
 from __future__ import annotations
@@ -10,7 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from pathgate.criteria.hubs import Cliques
-from pathgate.graphs.masks import mask_of, members
+from pathgate.graphs.masks import members
 
 # Stand for x and y where a path begins and ends.
 _X, _Y = -1, -2
@@ -28,22 +28,63 @@ def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, rem
     Returns:
         The set, or None where choosable nodes cannot part the two.
     """
+    ground = _Ground(cliques, cliques.relevant & ~(choosable | removed | xs | ys))
+    near_x, near_y = ground.beside(xs), ground.beside(ys)
+    if near_x & ys:
+        return None
+    near_x &= choosable & ~removed
+    near_y &= choosable & ~removed
     # A node next to both is a way through by itself: every such set holds it.
-    near_x, near_y = (cliques.around(side) & choosable & ~removed for side in (xs, ys))
     inevitable = near_x & near_y
-    paths = _Paths(cliques, xs, ys, choosable & ~inevitable, removed | inevitable, near_y & ~inevitable)
-    paths.take_short_ones(near_x & ~inevitable)
-    # Where what is nearest to x is no larger than the ways found, it is a smallest set already.
-    if not cliques.around(xs) & ~(choosable | removed | xs):
-        _reached, stopped = cliques.spread(ys, near_x | removed)
-        nearest = stopped & ~removed
-        if nearest.bit_count() == inevitable.bit_count() + len(paths.after) // 2:
-            return nearest
-    while (last := paths.search()) is not None:
-        if last == _X:
-            return None
+    near_x ^= inevitable
+    near_y ^= inevitable
+    if not near_x or not near_y:
+        return inevitable
+    paths = _Paths(ground, near_x, near_y, xs | ys | removed | inevitable)
+    paths.take_short_ones()
+    # As many paths as nodes nearest to x: these are the smallest set, and no other is as near.
+    while paths.count < near_x.bit_count():
+        last = paths.search()
+        if last is None:
+            return inevitable | (paths.entered & ~paths.left & choosable)
         paths.reroute(last)
-    return inevitable | (paths.entered & ~paths.left & choosable)
+    return inevitable | near_x
+
+
+@dataclass(slots=True)
+class _Ground:
+    """The augmented graph with its fixed nodes, which neither end a path nor are taken by a cut.
+
+    Attributes:
+        cliques: the augmented graph.
+        fixed: these nodes; paths pass a connected piece of them in one step.
+        pieces: for the fixed nodes met so far (as masks) their piece with everything beside it.
+    """
+
+    cliques: Cliques
+    fixed: int
+    pieces: dict[int, int] = field(default_factory=dict)
+
+    def beside(self, nodes: int) -> int:
+        """What one step leads to from some nodes, these included."""
+        near = 0
+        while nodes:
+            lowest = nodes & -nodes
+            nodes ^= lowest
+            near |= self.cliques.next_to(lowest.bit_length() - 1, 0)[0]
+        return near | self.past(near & self.fixed) if near & self.fixed else near
+
+    def past(self, fixed: int) -> int:
+        """The pieces of some fixed nodes with everything beside them."""
+        found = 0
+        while fixed:
+            lowest = fixed & -fixed
+            if lowest not in self.pieces:
+                reached, stopped = self.cliques.spread(lowest, ~self.fixed)
+                self.pieces.update(dict.fromkeys((1 << node for node in members(reached)), reached | stopped))
+            found |= self.pieces[lowest]
+            fixed &= ~found
+        return found
 
 
 @dataclass(slots=True)
@@ -51,103 +92,155 @@ class _Paths:
     """Paths from x to y no two of which share a choosable node, and what the last search for one more reached.
 
     Attributes:
-        next_to_y: the choosable nodes that share a clique with y.
+        ground: what they lead through.
+        next_to_x, next_to_y: where they can begin and end.
+        closed: nodes that no path may enter.
+        count: how many there are.
         before, after: for each node on a path the choosable node before and after it there.
         passed: the nodes on paths.
         entered, left: the nodes whose entry and whose exit the last search reached.
-        entry_from: for each choosable node entered, the one whose exit led there.
-        exit_from: for each node left, the node entered that led there: itself, or the next on a path taken back.
+        steps: each node whose exit it followed, with the nodes that it entered from there.
+        exit_from: for each node on a path that was left, the next on it, the way to which was taken back.
     """
 
-    cliques: Cliques
-    xs: int
-    ys: int
-    choosable: int
-    removed: int
+    ground: _Ground
+    next_to_x: int
     next_to_y: int
+    closed: int
+    count: int = 0
     before: dict[int, int] = field(default_factory=dict)
     after: dict[int, int] = field(default_factory=dict)
     passed: int = 0
     entered: int = 0
     left: int = 0
-    entry_from: dict[int, int] = field(default_factory=dict)
+    steps: list[tuple[int, int]] = field(default_factory=list)
     exit_from: dict[int, int] = field(default_factory=dict)
 
-    def take_short_ones(self, next_to_x: int) -> None:
-        """Begin with paths of two nodes, which need no search; later ones reroute them where they are in the way."""
-        for first in members(next_to_x):
-            _cliques, near = self.cliques.next_to(first, 0)
-            ends = near & self.next_to_y & ~self.passed
-            if ends and not self.passed >> first & 1:
-                last = (ends & -ends).bit_length() - 1
-                self.before.update({first: _X, last: first})
-                self.after.update({first: last, last: _Y})
-                self.passed |= 1 << first | 1 << last
+    def take_short_ones(self) -> None:
+        """Begin with paths of two and three nodes, which need no search; later ones reroute what is in the way."""
+        beside, open_ends = self.ground.beside, self.next_to_y
+        waiting = list[tuple[int, int]]()
+        for first in members(self.next_to_x):
+            near = beside(1 << first)
+            if near & open_ends:
+                last = near & open_ends & -(near & open_ends)
+                open_ends ^= last
+                self._take(first, last.bit_length() - 1)
+            else:
+                waiting.append((first, near))
+        if not open_ends:
+            return
+        between = beside(open_ends) & ~(self.closed | self.ground.fixed | self.next_to_x)
+        for first, near in waiting:
+            middle = near & between & ~self.passed
+            if middle:
+                middle &= -middle
+                last = beside(middle) & open_ends
+                if last:
+                    last &= -last
+                    open_ends ^= last
+                    self._take(first, middle.bit_length() - 1, last.bit_length() - 1)
+
+    def _take(self, *path: int) -> None:
+        """Add a path that no other is in the way of."""
+        previous = _X
+        for node in path:
+            self.before[node] = previous
+            if previous != _X:
+                self.after[previous] = node
+            self.passed |= 1 << node
+            previous = node
+        self.after[previous] = _Y
+        self.count += 1
 
     def search(self) -> int | None:
-        """Look for one more path; the last choosable node on it (``_X`` for none), or None where there is none."""
-        self.entry_from, self.exit_from = {}, {}
-        self.left = opened = 0
-        entered, leaving = self.xs | self.removed, self.xs
-        # Who led to a node that lets any number of paths through: the last choosable one before it.
-        led_to = dict.fromkeys(members(self.xs), _X)
-        while leaving:
-            lowest = leaving & -leaving
-            leaving ^= lowest
-            node = lowest.bit_length() - 1
-            origin = led_to.get(node, node)
-            new_cliques, new = self.cliques.next_to(node, opened)
-            opened |= new_cliques
-            new &= ~entered
+        """Look for one more path; the last choosable node on it, or None where there is none."""
+        cliques, fixed, passed = self.ground.cliques, self.ground.fixed, self.passed
+        ends = self.next_to_y & ~passed
+        goals = (self.ground.beside(ends) | ends) & ~passed
+        self.steps = steps = list[tuple[int, int]]()
+        self.exit_from = {}
+        origin, new = _X, self.next_to_x
+        entered, left, leaving, opened = self.closed, 0, 0, 0
+        while True:
             entered |= new
-            if new & self.ys:
-                return origin
-            fixed = new & ~self.choosable
-            leaving |= fixed
-            while fixed:
-                led_to[(fixed & -fixed).bit_length() - 1] = origin
-                fixed &= fixed - 1
-            leaving |= self._enter(new & self.choosable, origin)
-            arrived = self.left & self.next_to_y & ~self.passed
-            if arrived:
-                return (arrived & -arrived).bit_length() - 1
-        self.entered = entered
-        return None
+            steps.append((origin, new))
+            occupied = new & passed
+            new ^= occupied | new & fixed
+            if occupied:
+                new |= self._taken_back(occupied, left | new)
+            left |= new
+            leaving |= new
+            if new & goals:
+                return self._arrive(new & goals, ends)
+            new = 0
+            while leaving and not new:
+                lowest = leaving & -leaving
+                leaving ^= lowest
+                origin = lowest.bit_length() - 1
+                near, opened = cliques.next_to(origin, opened)
+                new = near & ~entered
+            if not new:
+                self.entered, self.left = entered, left
+                return None
+            if new & fixed:
+                new = (new | self.ground.past(new & fixed)) & ~entered
 
-    def _enter(self, nodes: int, origin: int) -> int:
-        """Enter choosable nodes for the first time; returns those whose exits that reaches for the first time.
+    def _taken_back(self, occupied: int, left: int) -> int:
+        """The exits reached for the first time by entering nodes on paths.
 
-        A free node is passed. A node on a path lets no other through, but the path's way to it can be taken
-        back: that leads to the exit of the node before it.
+        Such a node lets no other path through, but the path's way to it can be taken back: that leads to the
+        exit of the node before it.
         """
         reached = 0
-        while nodes:
-            lowest = nodes & -nodes
-            nodes ^= lowest
+        while occupied:
+            lowest = occupied & -occupied
+            occupied ^= lowest
             node = lowest.bit_length() - 1
-            self.entry_from[node] = origin
-            beyond = self.before.get(node, node)
-            if beyond != _X and not self.left >> beyond & 1:
-                self.left |= 1 << beyond
+            beyond = self.before[node]
+            if beyond != _X and not (left | reached) >> beyond & 1:
                 self.exit_from[beyond] = node
                 reached |= 1 << beyond
         return reached
 
+    def _arrive(self, arrived: int, ends: int) -> int:
+        """Go the last step, where there is one, from one of the nodes that lie beside the ends of paths."""
+        at_end = arrived & ends
+        if not at_end:
+            node = (arrived & -arrived).bit_length() - 1
+            at_end = self.ground.beside(1 << node) & ends
+            at_end &= -at_end
+            self.steps.append((node, at_end))
+        return (at_end & -at_end).bit_length() - 1
+
     def reroute(self, last: int) -> None:
         """Put the path that was found into the others: steps taken back go first, then the new ones come."""
+        before, after = self.before, self.after
         added = [(last, _Y)]
         node = last
         while node != _X:
-            entered = self.exit_from[node]
+            entered = self.exit_from.get(node, node)
             if entered != node:
                 # The exit was reached by taking back the step from this node to the one entered.
-                del self.after[node], self.before[entered]
-            node = self.entry_from[entered]
+                del after[node], before[entered]
+            node = self._origin(entered)
             if node != entered:
                 added.append((node, entered))
+            else:
+                # Entered from its own exit: both its steps are taken back.
+                self.passed ^= 1 << node
         for first, second in added:
-            self.after[first] = second
-            self.before[second] = first
-        self.after.pop(_X, None)
-        self.before.pop(_Y, None)
-        self.passed = mask_of(self.before)
+            if second != _Y:
+                before[second] = first
+            if first != _X:
+                after[first] = second
+                self.passed |= 1 << first
+        self.count += 1
+
+    def _origin(self, entered: int) -> int:
+        """The node from whose exit the last search entered another."""
+        for origin, new in self.steps:
+            if new >> entered & 1:
+                return origin
+        message = "a node on the way found was not entered"
+        raise AssertionError(message)

@@ -17,6 +17,10 @@ from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
 from pathgate.graphs.masks import mask_of, members, unpack
 
+# What is in up to so many cliques is remembered, for so many sets of cliques at most.
+_FEW = 16
+_MOST_KNOWN = 10_000
+
 
 @dataclass(frozen=True)
 class Hubs:
@@ -110,12 +114,15 @@ class Cliques:
         relevant: mask of the ancestral set.
         district_of: for each node in a district of several its lowest node; others are their own.
         joint: for each such lowest node the clique: the district and the parents of its nodes.
+        known: for sets of nodes whose cliques were looked at, all that are in these; where there are no
+            districts, other ancestral sets of the graph may share it.
     """
 
     graph: CausalGraph
     relevant: int
     district_of: dict[int, int]
     joint: dict[int, int]
+    known: dict[int, int]
 
     @classmethod
     def over(cls, graph: CausalGraph, nodes: int) -> Cliques:
@@ -123,8 +130,8 @@ class Cliques:
         return cls.within(graph, ancestors(graph, nodes))
 
     @classmethod
-    def within(cls, graph: CausalGraph, relevant: int) -> Cliques:
-        """The augmented graph of a set that holds its own ancestors."""
+    def within(cls, graph: CausalGraph, relevant: int, known: dict[int, int] | None = None) -> Cliques:
+        """The augmented graph of a set that holds its own ancestors; ``known`` may come from another such set."""
         district_of: dict[int, int] = {}
         joint: dict[int, int] = {}
         if len(graph.lower_ends):
@@ -135,14 +142,8 @@ class Cliques:
                     joint[first] = mask_of(district)
                     for node in district:
                         joint[first] |= graph.parent_masks[node]
-        return cls(graph, relevant, district_of, joint)
-
-    def of(self, node: int) -> int:
-        """The cliques that a node is in, as a mask of the nodes they go by."""
-        found = self.graph.child_masks[node] & self.relevant | 1 << node
-        if self.district_of:
-            found = mask_of(self.district_of.get(member, member) for member in members(found))
-        return found
+        shared = known if known is not None and not district_of else {}
+        return cls(graph, relevant, district_of, joint, shared)
 
     def together(self, cliques: int) -> int:
         """The nodes of some cliques."""
@@ -155,18 +156,27 @@ class Cliques:
         return found
 
     def next_to(self, node: int, opened: int) -> tuple[int, int]:
-        """The cliques of a node that are not opened yet, and the nodes in them."""
+        """The nodes in the cliques of a node, and the cliques opened by now.
+
+        Nodes whose cliques are all in ``opened`` may be left out.
+        """
+        heads = self.graph.child_masks[node] & self.relevant | 1 << node
+        found = self.known.get(heads)
+        return (found, opened) if found is not None else self._look_at(heads, opened)
+
+    def _look_at(self, heads: int, opened: int) -> tuple[int, int]:
+        """The same, for the cliques that hold these nodes together with their parents."""
+        cliques = heads
         if self.district_of:
-            unopened = self.of(node) & ~opened
-            return unopened, self.together(unopened)
-        # Without districts a clique is a node and its parents: the same, put on one spot for its speed.
-        unopened = left = (self.graph.child_masks[node] & self.relevant | 1 << node) & ~opened
-        found, parents = unopened, self.graph.parent_masks
-        while left:
-            lowest = left & -left
-            left ^= lowest
-            found |= parents[lowest.bit_length() - 1]
-        return unopened, found
+            cliques = mask_of(self.district_of.get(head, head) for head in members(heads))
+        if cliques.bit_count() > _FEW:
+            # Looked at together, the cliques of all nodes could take much longer than each clique once.
+            unopened = cliques & ~opened
+            return self.together(unopened), opened | unopened
+        if len(self.known) >= _MOST_KNOWN:
+            self.known.clear()
+        found = self.known[heads] = self.together(cliques)
+        return found, opened
 
     def spread(self, starts: int, stopping: int) -> tuple[int, int]:
         """What can be reached from ``starts`` without passing ``stopping``, and which of those it stops at."""
@@ -174,20 +184,12 @@ class Cliques:
         while leaving:
             lowest = leaving & -leaving
             leaving ^= lowest
-            new_cliques, new = self.next_to(lowest.bit_length() - 1, opened)
-            opened |= new_cliques
-            new &= ~seen
+            near, opened = self.next_to(lowest.bit_length() - 1, opened)
+            new = near & ~seen
             seen |= new
             leaving |= new & ~stopping
         stopped = seen & stopping & ~starts
         return seen & ~stopped, stopped
-
-    def around(self, nodes: int) -> int:
-        """Everything that shares a clique with one of the nodes."""
-        found = 0
-        for node in members(nodes):
-            found |= self.together(self.of(node))
-        return found
 
 
 def _districts(graph: CausalGraph, relevant: int, inside: list[bool]) -> Iterable[list[int]]:

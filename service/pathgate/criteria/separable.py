@@ -33,9 +33,11 @@ class Pairs:
 
     Attributes:
         kept: the graph and the rows kept.
+        known: what ``Cliques`` found out for one pair and can use for others.
     """
 
     kept: Kept
+    known: dict[int, int] = field(default_factory=dict, repr=False)
     _above: dict[int, int] = field(default_factory=dict, repr=False)
     _joined: dict[int, int] = field(default_factory=dict, repr=False)
 
