@@ -1,8 +1,8 @@
 """What to change so that a biased config carries its effect: fewest changes first.
 
 A change adds or drops one covariate, drops one column's fixed effects, or drops one part of the row filter. What can
-never stay goes first. Then every choice of one further change is tried, of two and so on, as long as all of that
-many fit in ``MOST_TRIALS`` (fewer on large graphs, where a trial takes longer): what is found so is smallest. Past
+never stay goes first. Then the nearest sound choices are looked for (``nearest``), as long as no more than
+``MOST_TRIALS`` have to be judged (fewer on large graphs, where that takes longer): what is found so is smallest. Past
 that, remedies are built from minimal valid sets, less every change that turns out not to be needed. Every remedy
 returned has been judged as the config itself is: applied, it reviews as sound.
 """
@@ -11,16 +11,15 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
-from itertools import combinations, islice
-from math import comb
+from itertools import islice
 
-from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.selection import Part
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.kinship import ancestors, descendants
+from pathgate.graphs.kinship import descendants
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Choice, Claim
+from pathgate.review.nearest import key_of, nearest_sound
 
 MOST_TRIALS = 1000
 # Nodes and edges that all trials of one search together may look at.
@@ -67,9 +66,14 @@ def find_remedies(claim: Claim, deadline: Deadline) -> tuple[Remedy, ...]:
     if not claim.can_be_carried:
         return ()
     start = _start(claim)
-    found = list(_nearest(claim, start, deadline)) or list(_built(claim, start, deadline))
-    remedies = {_key(claim, choice): _remedy(claim, choice) for choice in found}
-    ordered = sorted(remedies.values(), key=lambda remedy: (remedy.changes, _cost(claim, remedy)))
+    found = nearest_sound(claim, start, deadline, _trials(claim.graph)) or list(
+        _built(claim, start, deadline)
+    )
+    remedies = {key_of(claim, choice): _remedy(claim, choice) for choice in found}
+    ordered = sorted(
+        (found for _key, found in sorted(remedies.items())),
+        key=lambda remedy: (remedy.changes, _cost(claim, remedy)),
+    )
     return tuple(ordered[:MOST_REMEDIES])
 
 
@@ -85,17 +89,8 @@ def _start(claim: Claim) -> Choice:
     return Choice(claim.usable.covariates & ~barred, fixed, parts)
 
 
-def _key(claim: Claim, choice: Choice) -> tuple[int, int, tuple[int, ...]]:
-    return choice.covariates, choice.fixed_effects, _kept_places(claim, choice)
-
-
 def _keeps(choice: Choice, part: Part) -> bool:
     return any(part is kept for kept in choice.parts)
-
-
-def _kept_places(claim: Claim, choice: Choice) -> tuple[int, ...]:
-    kept = set(map(id, choice.parts))
-    return tuple(place for place, part in enumerate(claim.parts) if id(part) in kept)
 
 
 def _parts_that_may_stay(claim: Claim) -> tuple[Part, ...]:
@@ -109,47 +104,6 @@ def _parts_that_may_stay(claim: Claim) -> tuple[Part, ...]:
 def _trials(graph: CausalGraph) -> int:
     edges = len(graph.sources) + len(graph.lower_ends)
     return min(MOST_TRIALS, MOST_WORK // (graph.size + edges + 1))
-
-
-def _nearest(claim: Claim, start: Choice, deadline: Deadline) -> Iterator[Choice]:
-    """All sound choices with the fewest further changes, as far as these are few."""
-    candidates = tuple(members(_worth_changing(claim.effect_among(start.parts), start)))
-    parts = () if claim.row_filter_fixed else start.parts
-    droppable: tuple[int | Part, ...] = (*members(start.fixed_effects), *parts)
-    left = _trials(claim.graph)
-    for changes in range(len(candidates) + len(droppable) + 1):
-        left -= comb(len(candidates) + len(droppable), changes)
-        if left < 0:
-            return
-        sound = []
-        for choice in _changed(start, candidates, droppable, changes):
-            deadline.poll()
-            if claim.is_carried_by(choice):
-                sound.append(choice)
-        if sound:
-            yield from sound
-            return
-
-
-def _changed(
-    start: Choice, candidates: tuple[int, ...], droppable: tuple[int | Part, ...], changes: int
-) -> Iterator[Choice]:
-    """Every choice that many changes away; ``droppable`` are columns of fixed effects and parts of the filter."""
-    for dropped_count in range(min(changes, len(droppable)) + 1):
-        for dropped in combinations(droppable, dropped_count):
-            gone = mask_of(each for each in dropped if isinstance(each, int))
-            parts = tuple(part for part in start.parts if all(part is not each for each in dropped))
-            fixed = start.fixed_effects & ~gone
-            for toggled in combinations(candidates, changes - dropped_count):
-                yield Choice(start.covariates ^ mask_of(toggled), fixed, parts)
-
-
-def _worth_changing(effect: Effect, start: Choice) -> int:
-    """Covariates to drop, and columns to add: only an ancestor of what is in question can block a path."""
-    ends = effect.treatments | effect.outcomes
-    relevant = ancestors(effect.back_door_graph, ends | start.covariates | effect.kept.conditioned)
-    addable = relevant & effect.usable & ~effect.kept.conditioned & ~start.fixed_effects
-    return addable | start.covariates
 
 
 def _built(claim: Claim, start: Choice, deadline: Deadline) -> Iterator[Choice]:
@@ -180,7 +134,7 @@ def _trimmed(claim: Claim, start: Choice, choice: Choice, deadline: Deadline) ->
 
 
 def _remedy(claim: Claim, choice: Choice) -> Remedy:
-    kept = _kept_places(claim, choice)
+    kept = key_of(claim, choice)[2]
     adjusted = choice.covariates | choice.fixed_effects
     return Remedy(
         covariates=choice.covariates,

@@ -1,0 +1,178 @@
+"""Which sound choices lie nearest to a config's own? By closing what is open, one change after the other.
+
+A change adds or drops a covariate, drops a column's fixed effects or drops a part of the row filter. Whatever mends a
+choice must close its open path: condition on a node of it that is no collider, or let go of everything that opens one
+of its colliders. So a few changes of each choice need to be followed, breadth first, and all choices that are sound
+after the fewest changes are found. One search for a path a choice.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+from pathgate.criteria.adjustment import Effect, is_valid
+from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.paths import Trail, find_open_path
+from pathgate.criteria.reachability import Conditions
+from pathgate.criteria.selection import Part
+from pathgate.graphs.kinship import ancestors, descendants
+from pathgate.graphs.masks import members
+from pathgate.review.claims import Choice, Claim
+
+
+@dataclass(frozen=True, slots=True)
+class _Step:
+    """A choice on the way, with the covariates that were added and dropped to get there."""
+
+    choice: Choice
+    added: int = 0
+    dropped: int = 0
+
+    def with_covariate(self, node: int) -> _Step:
+        choice = replace(self.choice, covariates=self.choice.covariates | 1 << node)
+        return _Step(choice, self.added | 1 << node, self.dropped)
+
+    def without_covariate(self, node: int) -> _Step:
+        choice = replace(self.choice, covariates=self.choice.covariates & ~(1 << node))
+        return _Step(choice, self.added, self.dropped | 1 << node)
+
+    def without_fixed_effect(self, node: int) -> _Step:
+        choice = replace(self.choice, fixed_effects=self.choice.fixed_effects & ~(1 << node))
+        return replace(self, choice=choice)
+
+    def without_part(self, part: Part) -> _Step:
+        parts = tuple(each for each in self.choice.parts if each is not part)
+        return replace(self, choice=replace(self.choice, parts=parts))
+
+
+Key = tuple[int, int, tuple[int, ...]]
+
+
+def key_of(claim: Claim, choice: Choice) -> Key:
+    """A choice as something to tell it from others by: covariates, fixed effects, places of the parts that stay."""
+    kept = set(map(id, choice.parts))
+    places = tuple(place for place, part in enumerate(claim.parts) if id(part) in kept)
+    return choice.covariates, choice.fixed_effects, places
+
+
+def nearest_sound(claim: Claim, start: Choice, deadline: Deadline, most: int) -> list[Choice]:
+    """All sound choices that lie the fewest changes from ``start``; none where more than ``most`` had to be judged.
+
+    ``start`` holds nothing that can never stay.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    level = {key_of(claim, start): _Step(start)}
+    judged = 0
+    while level:
+        judged += len(level)
+        if judged > most:
+            return []
+        sound = []
+        following: dict[Key, _Step] = {}
+        for step in level.values():
+            deadline.poll()
+            if claim.is_carried_by(step.choice):
+                sound.append(step.choice)
+            elif not sound:
+                for nearer in _closing(claim, step):
+                    following.setdefault(key_of(claim, nearer.choice), nearer)
+        if sound:
+            return sound
+        level = following
+    return []
+
+
+def _closing(claim: Claim, step: _Step) -> Iterator[_Step]:
+    """Changes one of which is part of whatever mends this choice."""
+    choice = step.choice
+    stuck = claim.leaves_no_variation(choice)
+    if stuck:
+        yield from _freeing(claim, step, stuck)
+        return
+    effect = claim.effect_among(choice.parts)
+    held = claim.held_fixed(choice)
+    if is_valid(effect, held):
+        # Only who is kept stands in the way: no path tells which columns could undo that.
+        yield from _any(claim, step, effect)
+        return
+    graph = effect.back_door_graph
+    conditioned = held | effect.kept.conditioned
+    trail = find_open_path(graph, effect.treatments, effect.outcomes, Conditions.on(graph, conditioned))
+    if trail is not None:
+        yield from _blocking(effect, step, trail, held)
+        for node, role in trail.inner:
+            if role == "collider":
+                yield from _letting_go(claim, step, effect, node, held)
+
+
+def _blocking(effect: Effect, step: _Step, trail: Trail, held: int) -> Iterator[_Step]:
+    for node, role in trail.inner:
+        may_add = effect.usable >> node & 1 and not (step.dropped | held) >> node & 1
+        if role != "collider" and may_add:
+            yield step.with_covariate(node)
+
+
+def _letting_go(claim: Claim, step: _Step, effect: Effect, collider: int, held: int) -> Iterator[_Step]:
+    """Changes one of which is part of every way of closing a collider, where it can be closed at all."""
+    kept = effect.kept
+    openers = (held | kept.conditioned) & descendants(kept.graph, 1 << collider)
+    changes = [_without(claim, step, effect, node) for node in members(openers)]
+    if changes and all(changes):
+        yield from changes[0]
+
+
+def _without(claim: Claim, step: _Step, effect: Effect, node: int) -> tuple[_Step, ...]:
+    """Changes one of which is needed for a node not to be held fixed; none where it has to stay so."""
+    choice = step.choice
+    part = effect.kept.part_of.get(node)
+    if part is not None:
+        is_droppable = not claim.row_filter_fixed and any(part is each for each in choice.parts)
+        return (step.without_part(part),) if is_droppable else ()
+    if choice.covariates >> node & 1:
+        return () if step.added >> node & 1 else (step.without_covariate(node),)
+    fixed = tuple(members(choice.fixed_effects))
+    alone = [column for column in fixed if column == node or claim.absorbed(1 << column) >> node & 1]
+    # What is computed from things that several fixed effects hold fixed is freed by letting go of one of them.
+    return tuple(step.without_fixed_effect(column) for column in alone[:1] or fixed)
+
+
+def _freeing(claim: Claim, step: _Step, stuck: int) -> Iterator[_Step]:
+    """Let go of a computed column that only the treatment could make vary, or of something it is computed from."""
+    choice = step.choice
+    node = stuck.bit_length() - 1
+    involved = 1 << node | _made_of(claim, node)
+    for column in members(choice.covariates & involved & ~step.added):
+        yield step.without_covariate(column)
+    for column in members(choice.fixed_effects):
+        yield step.without_fixed_effect(column)
+    if not claim.row_filter_fixed:
+        for part in choice.parts:
+            if part.fixed and part.columns & involved:
+                yield step.without_part(part)
+
+
+def _made_of(claim: Claim, node: int) -> int:
+    """Everything that a column is computed from, over several steps."""
+    found = claim.inputs.get(node, 0)
+    for each in members(found):
+        found |= _made_of(claim, each)
+    return found
+
+
+def _any(claim: Claim, step: _Step, effect: Effect) -> Iterator[_Step]:
+    """Every change: only an ancestor of what is in question can block anything."""
+    choice, kept = step.choice, effect.kept
+    ends = effect.treatments | effect.outcomes
+    relevant = ancestors(effect.back_door_graph, ends | claim.held_fixed(choice) | kept.conditioned)
+    held = claim.held_fixed(choice) | kept.conditioned | step.dropped
+    for node in members(relevant & effect.usable & ~held):
+        yield step.with_covariate(node)
+    for node in members(choice.covariates & ~step.added):
+        yield step.without_covariate(node)
+    for node in members(choice.fixed_effects):
+        yield step.without_fixed_effect(node)
+    for part in () if claim.row_filter_fixed else choice.parts:
+        yield step.without_part(part)
