@@ -51,6 +51,7 @@ def tokens_of(text: str, dialect: Dialect, wanted: str = "condition") -> tuple[T
         raise SqlRefused(f"the SQL text holds no {wanted}")
     _refuse_nesting(tokens)
     _refuse_rereading(tokens, dialect)
+    _refuse_long_chains(tokens, dialect)
     return tuple(tokens)
 
 
@@ -88,6 +89,26 @@ def _refuse_rereading(tokens: Sequence[Token], dialect: Dialect) -> None:
             doubled += is_typed
         elif token.token_type in CLOSING and open_levels:
             doubled -= open_levels.pop()
+
+
+def _refuse_long_chains(tokens: Sequence[Token], dialect: Dialect) -> None:
+    """Each [ after a value makes the parser go through all of that value again, so x[1][1]… is squared."""
+    operators = dialect.parser_class.COLUMN_OPERATORS
+    outer: list[int] = []
+    chain, is_going_on = 0, False
+    for token in tokens:
+        kind = token.token_type
+        is_operator = kind in operators
+        if not (is_going_on or is_operator or kind in CLOSING or kind == TokenType.L_BRACKET):
+            chain = 0
+        if kind in OPENING:
+            outer.append(chain + (kind == TokenType.L_BRACKET))
+            chain = 0
+        elif kind in CLOSING and outer:
+            chain = outer.pop()
+        if chain > MOST_NESTING:
+            raise too_nested(_where(token))
+        is_going_on = is_operator
 
 
 def too_nested(where: str = "") -> SqlRefused:

@@ -34,9 +34,10 @@ class Condition:
 
     Attributes:
         written: its SQL text.
-        columns: what it reads.
+        columns: what it reads, apart from what its rows are grouped by.
         fixed: does it hold its one column at one constant?
         null_test: what it asks, where it does nothing but ask whether its one column is null.
+        is_grouped: does it read what its rows are grouped by?
         is_key: does it only say which rows of two tables belong together?
         words: what stands in it for a function without brackets (CURRENT_USER), though it might name a column.
     """
@@ -45,6 +46,7 @@ class Condition:
     columns: tuple[exp.Column, ...]
     fixed: bool = False
     null_test: str = ""
+    is_grouped: bool = False
     is_key: bool = False
     words: tuple[str, ...] = ()
 
@@ -91,8 +93,10 @@ def _conditions(sql: SqlText) -> Conditions:
     listed: list[Condition] = []
     for clause in joined.clauses:
         is_having = clause.kind == TokenType.HAVING
-        grouped = joined.groups if is_having else ()
-        reading = _Reading(sql.dialect, joins=joined.has_joins, may_aggregate=is_having, grouped=grouped)
+        has_groups = is_having and bool(joined.groups)
+        reading = _Reading(
+            sql.dialect, joins=joined.has_joins, may_aggregate=is_having, has_groups=has_groups
+        )
         listed += reading.conditions(clause.stretch, clause.tree)
     return Conditions(sql.dialect, _each_once(listed), joined)
 
@@ -104,7 +108,7 @@ class _Reading:
     dialect: Dialect
     joins: bool = False
     may_aggregate: bool = False
-    grouped: tuple[exp.Column, ...] = ()
+    has_groups: bool = False
 
     def conditions(self, stretch: Stretch, tree: exp.Expr) -> Iterator[Condition]:
         for part, conjunct in parts_of(stretch, tree, self.dialect):
@@ -114,26 +118,26 @@ class _Reading:
 
     def _condition(self, part: Stretch, conjunct: exp.Expr | None, tree: exp.Expr) -> Condition | None:
         node = tree if conjunct is None else conjunct
-        columns = list(node.find_all(exp.Column))
+        columns = tuple(node.find_all(exp.Column))
         if node.find(exp.Window):
             raise _refused("a window function has no place in a condition", part.written)
-        if node.find(exp.AggFunc):
-            if not self.may_aggregate:
-                raise _refused("an aggregate has no place in a condition on single rows", part.written)
-            columns += self.grouped
-        if not columns:
+        is_aggregate = node.find(exp.AggFunc) is not None
+        if is_aggregate and not self.may_aggregate:
+            raise _refused("an aggregate has no place in a condition on single rows", part.written)
+        is_grouped = is_aggregate and self.has_groups
+        if not columns and not is_grouped:
             if is_always_true(node) is not True:
                 raise _refused("this condition reads no column, so it keeps all rows or none", part.written)
             return None
         functions = self.dialect.parser_class.NO_PAREN_FUNCTIONS
         words = tuple(token.text for token in part.tokens if token.token_type in functions)
         if conjunct is None:
-            return Condition(part.written, tuple(columns), words=words)
+            return Condition(part.written, columns, is_grouped=is_grouped, words=words)
         if is_never_true(node):
             raise _refused("nothing compares with NULL, so no row is kept; write IS NULL", part.written)
         fixed = fixed_column(node, is_strict=is_strict_about_truth(self.dialect)) is not None
         is_key = self.joins and is_key_of_join(node)
-        return Condition(part.written, tuple(columns), fixed, null_test_of(node), is_key, words)
+        return Condition(part.written, columns, fixed, null_test_of(node), is_grouped, is_key, words)
 
 
 def _each_once(conditions: Iterator[Condition] | list[Condition]) -> tuple[Condition, ...]:

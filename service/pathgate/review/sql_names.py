@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 
 from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault, Place
@@ -168,8 +169,7 @@ class _Reading:
         if joined is not None and joined.selecting:
             yield Assumed("join", 0, place, joined.selecting)
         if joined is not None and joined.groups:
-            groups = self.finder.read(joined.groups)
-            yield Assumed("group", groups.columns, place, names=groups.outside)
+            yield Assumed("group", self._groups.columns, place, names=self._groups.outside)
 
     def _read(self, condition: Condition) -> Reads:
         if condition.is_key:
@@ -178,7 +178,15 @@ class _Reading:
             # The same column on both sides, or keys that the graph does not know: rows that belong together.
             if None in nodes or len(nodes) == 1:
                 return Reads()
-        return self.finder.read(condition.columns, condition.words)
+        reads = self.finder.read(condition.columns, condition.words)
+        if not condition.is_grouped:
+            return reads
+        both = dict.fromkeys((*reads.outside, *self._groups.outside))
+        return Reads(reads.columns | self._groups.columns, tuple(both), reads.is_coarse)
+
+    @cached_property
+    def _groups(self) -> Reads:
+        return self.finder.read(self.found.joined.groups if self.found.joined is not None else ())
 
     def _assume(
         self, kind: str, columns: int, written: str | None = None, names: tuple[str, ...] = ()
