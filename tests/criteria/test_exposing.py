@@ -11,11 +11,20 @@ import pytest
 
 from pathgate.criteria import Deadline, OutOfTime
 from pathgate.criteria.exposing import Exposing
+from pathgate.graphs.masks import mask_of
 from tests.brute import separated, separating_sets, with_selection
 from tests.criteria.asking import kept_of
 from tests.review.brute_hinges import with_edge
 from tests.strategies import random_graph, random_parts
-from tests.values import Graph, graph_of, is_adjacent, measured_names, node_names, topological_names
+from tests.values import (
+    Graph,
+    arrows_of,
+    graph_of,
+    is_adjacent,
+    measured_names,
+    node_names,
+    topological_names,
+)
 
 SEEDS = [
     pytest.param(range(250), id="250"),
@@ -93,6 +102,60 @@ def test_pairs_asked_for_in_bulk_are_told_as_those_asked_for_one_by_one(monkeypa
 
 #   rain → late ← promotion, late → ticket
 LATE = graph_of(("rain", "late"), ("promotion", "late"), ("late", "ticket"))
+
+
+def with_computed(value: Graph) -> tuple[Graph, str | None]:
+    """The graph with one of its columns computed from its parents, so without unmeasured causes; None: no such."""
+    above = {target for _, target in arrows_of(value)}
+    computed = next((name for name in measured_names(value) if name in above), None)
+    bows = [edge for edge in value["edges"] if edge.get("kind") == "bidirected"]
+    gone = [edge for edge in bows if computed in (edge["source"], edge["target"])]
+    return {**value, "edges": [edge for edge in value["edges"] if edge not in gone]}, computed
+
+
+@pytest.mark.parametrize("seeds", SEEDS)
+def test_a_statement_about_a_computed_column_leaves_it_some_variation(seeds: range):
+    seen: Counter[bool] = Counter()
+    for seed in seeds:
+        value, computed = with_computed(drawn(seed)[0])
+        parts = drawn(seed)[1]
+        selected, conditioned = with_selection(value, parts)
+        if computed is None or computed in conditioned:
+            continue
+        graph = kept_of(value).graph
+        node, made_of = graph.index[computed], mask_of(graph.parents(graph.index[computed]))
+        exposing = Exposing(graph, Deadline.never(), kept=kept_of(value, parts), inputs={node: made_of})
+        found = exposing.statements(node, graph.everything & ~(1 << node))
+        for other, statement in found.items():
+            ends = computed, graph.name(other)
+            can = False
+            if ends[1] in set(measured_names(value)) - set(conditioned) and not is_adjacent(value, *ends):
+                held = graph.mask(set(conditioned) & set(node_names(value)))
+                every = separating_sets(selected, *ends, conditioned)
+                can = any(made_of & ~(graph.mask(given) | held) for given in every)
+            assert (statement is not None) is can, (seed, ends)
+            if statement is not None:
+                assert made_of & ~(statement.given | graph.mask(set(conditioned) & set(node_names(value)))), (
+                    seed
+                )
+                assert_is_broken_by_an_edge(value, parts, ends, graph.names_of(statement.given))
+            seen[can] += 1
+    assert min(seen.values()) > len(seeds) / 5
+
+
+def test_what_is_computed_from_a_computed_column_goes_with_it():
+    #   wait → cost, cost → total ← fee; tickets by themselves
+    value = graph_of(("wait", "cost"), ("cost", "total"), ("fee", "total"), isolated=["ticket"])
+    graph = kept_of(value).graph
+    cost, total, ticket = (graph.index[name] for name in ("cost", "total", "ticket"))
+    inputs = {cost: graph.mask("wait"), total: graph.mask(["cost", "fee"])}
+    told = Exposing(graph, Deadline.never(), inputs=inputs).statements(total, 1 << ticket)[ticket]
+    assert told is not None
+    assert graph.names_of(told.given) == ("fee",)
+    assert graph.names_of(Exposing(graph, Deadline.never()).statements(total, 1 << ticket)[ticket].given) == (
+        "cost",
+        "fee",
+    )
 
 
 def test_what_the_filter_joins_has_no_statement():

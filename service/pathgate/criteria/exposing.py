@@ -4,10 +4,14 @@ That of the two themselves, where both are measured, vary among the rows kept, a
 of columns: an edge breaks it whatever is given. It is told as the basis states it for the rows kept. Whether a pair
 can be separated is seen at once where not even a path with every collider open joins the two; the rest is asked
 pair by pair, or for very many partners of a node at once (``separable``).
+
+A column that is computed from others is settled once they are given, and a statement about it then holds whatever
+the graph: so one of them is left out, where the pair can be separated without it.
 """
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
 
@@ -19,7 +23,7 @@ from pathgate.criteria.separable import Pairs, is_fully_measured
 from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 
 # More partners of a node than these are cheaper to ask about all at once.
 FEW = 8
@@ -34,6 +38,7 @@ class Exposing:
         deadline: when to stop.
         hubs: nodes that many pairs have in common; these are asked about from there.
         kept: the same graph as it is seen through the rows kept, where rows are left out.
+        inputs: for each computed column the mask of what it is computed from, inputs before what uses them.
 
     >>> from pathgate.criteria.selection import Part
     >>> graph = CausalGraph.of(("rain", "ticket"), ("promotion", "ticket"))
@@ -47,6 +52,7 @@ class Exposing:
     deadline: Deadline
     hubs: int = 0
     kept: Kept | None = None
+    inputs: Mapping[int, int] = field(default_factory=dict)
     _joined: dict[int, int] = field(default_factory=dict, repr=False)
     _above: dict[int, int] = field(default_factory=dict, repr=False)
     _separable: dict[int, tuple[int, int]] = field(default_factory=dict, repr=False)
@@ -70,9 +76,45 @@ class Exposing:
             for other in members(others)
         }
 
-    def _statement(self, node: int, other: int) -> Independency:
+    def _statement(self, node: int, other: int) -> Independency | None:
         first, second = (node, other) if node < other else (other, node)
-        return basis(self._pairs, first, second)
+        stated = basis(self._pairs, first, second)
+        ends = 1 << first | 1 << second
+        return self._unsettled(first, second) if self._settled(stated.given) & ends else stated
+
+    def _settled(self, given: int) -> int:
+        """What has one value once these columns are given on the rows kept."""
+        settled = given | self._pairs.kept.conditioned
+        for node, made_of in self.inputs.items():
+            if not made_of & ~settled:
+                settled |= 1 << node
+        return settled
+
+    def _unsettled(self, first: int, second: int) -> Independency | None:
+        """A statement about two separable columns, one of them computed, under which both still vary."""
+        kept, widest = self._pairs.kept, self._pairs.widest(first, second)
+        ends = 1 << first | 1 << second
+        for left_out in self._left_out(ends & mask_of(self.inputs)):
+            self.deadline.poll()
+            given = widest & ~left_out
+            if self._settled(given) & ends:
+                continue
+            if are_separated(kept.graph, 1 << first, 1 << second, given | kept.conditioned):
+                return Independency(first, 1 << second, given)
+        return None
+
+    def _left_out(self, computed: int) -> Iterator[int]:
+        """For each column that some computed ones come from: it and whatever is computed from it."""
+        sources = computed
+        for node, made_of in reversed(list(self.inputs.items())):
+            if sources >> node & 1:
+                sources |= made_of
+        for source in members(sources & ~mask_of(self.inputs)):
+            left_out = 1 << source
+            for node, made_of in self.inputs.items():
+                if made_of & left_out:
+                    left_out |= 1 << node
+            yield left_out
 
     def _separable_from(self, node: int, others: int) -> int:
         """Which of these can be separated from ``node`` by columns? What is found is remembered."""
