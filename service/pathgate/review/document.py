@@ -14,6 +14,7 @@ from pathgate.review.config import NO_META
 from pathgate.review.findings import Finding
 from pathgate.review.remedies import Remedy
 from pathgate.review.review import Review
+from pathgate.review.roles import ColumnRole
 from pathgate.review.summary import ABOUT_THE_GRAPH, SOUND_MEANS, remedy_text
 
 Json = dict[str, Any]
@@ -27,9 +28,7 @@ def review_document(answer: Review) -> Json:
         "verdict": answer.verdict,
         "summary": answer.summary,
         "findings": [finding_document(finding) for finding in answer.findings],
-        "columns": [
-            {"column": each.column, "role": each.role, "advice": each.advice} for each in answer.columns
-        ],
+        "columns": [_role_document(each) for each in answer.columns],
         "coefficients": [
             {"term": each.term, "reads_as": each.reads_as, "why": each.why} for each in answer.coefficients
         ],
@@ -40,6 +39,13 @@ def review_document(answer: Review) -> Json:
         document["measure_next"] = measure_document(claim.graph, answer.measure_next)
     if answer.config.meta is not NO_META:
         document["meta"] = answer.config.meta
+    return document
+
+
+def _role_document(found: ColumnRole) -> Json:
+    document: Json = {"column": found.column, "role": found.role, "advice": found.advice}
+    if found.precision is not None:
+        document["precision"] = found.precision
     return document
 
 

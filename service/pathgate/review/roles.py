@@ -1,15 +1,13 @@
 """What each column is to the effect claimed, and what to do with it.
 
-The roles are exclusive; the first that fits in this order holds: treatment, outcome, mediator (on a proper
-causal path), descendant-of-outcome and descendant-of-mediator, confounder (a cause of the treatment that
-also reaches the outcome past the treatments), collider and descendant-of-collider (conditioning on it joins
-treatment and outcome where a minimal valid set had kept them apart), cause-of-treatment, cause-of-outcome,
-descendant-of-treatment, proxy (dependent on treatment or outcome in another way), unrelated.
+The roles are exclusive: ``ROLES`` holds them in the order in which they are tried, each with what it means.
 """
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from types import MappingProxyType
 from typing import Literal
 
 from pathgate.criteria.adjustment import Effect, total_effect, valid_set
@@ -21,6 +19,7 @@ from pathgate.criteria.verdict import are_separated
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Choice, Claim
+from pathgate.review.optional import Precision, precision_of
 from pathgate.review.remedies import Remedy
 
 Role = Literal[
@@ -38,16 +37,43 @@ Role = Literal[
     "proxy",
     "unrelated",
 ]
+ROLES: Mapping[Role, str] = MappingProxyType(
+    {
+        "treatment": "the column whose effect is claimed",
+        "outcome": "the column on which it is claimed",
+        "mediator": "lies on a directed path from a treatment to an outcome that meets no treatment again",
+        "descendant-of-outcome": "comes about by way of an outcome that a treatment leads to",
+        "descendant-of-mediator": "comes about by way of a mediator",
+        "confounder": "a cause of a treatment that also leads to an outcome past the treatments",
+        "collider": "adjusting for it joins treatment and outcome, which were kept apart: it is a common consequence"
+        " on the path that opens",
+        "descendant-of-collider": "adjusting for it joins treatment and outcome, since it comes about by way of a"
+        " common consequence",
+        "cause-of-treatment": "a cause of a treatment alone",
+        "cause-of-outcome": "a cause of an outcome alone",
+        "descendant-of-treatment": "a consequence of a treatment that leads to no outcome",
+        "proxy": "dependent on treatment or outcome in another way",
+        "unrelated": "independent of treatment and outcome",
+    }
+)
 Advice = Literal["keep", "drop", "add", "optional", "leave-out"]
 
 
 @dataclass(frozen=True, slots=True)
 class ColumnRole:
-    """A column's role for the effect, and what the config should do with it."""
+    """A column's role for the effect, and what the config should do with it.
+
+    Attributes:
+        column: its name.
+        role: the first in ``ROLES`` that fits.
+        advice: what to do with it.
+        precision: what adjusting for it does to the precision of a linear model, where it may be in or out.
+    """
 
     column: str
     role: Role
     advice: Advice
+    precision: Precision | None = None
 
 
 def column_roles(
@@ -66,8 +92,11 @@ def column_roles(
     answers = []
     for node in members(columns):
         deadline.poll()
-        advice = _advice(claim, node, remedy, is_sound=is_sound)
-        answers.append(ColumnRole(claim.graph.name(node), roles.of(node), advice))
+        if is_sound and not claim.ends >> node & 1:
+            advice, precision = _advice_where_sound(claim, node)
+        else:
+            advice, precision = _advice(claim, node, remedy), None
+        answers.append(ColumnRole(claim.graph.name(node), roles.of(node), advice, precision))
     return tuple(answers)
 
 
@@ -120,16 +149,32 @@ class _Roles:
         return "collider" if node in colliders else "descendant-of-collider"
 
 
-def _advice(claim: Claim, node: int, remedy: Remedy | None, *, is_sound: bool) -> Advice:
+def _advice_where_sound(claim: Claim, node: int) -> tuple[Advice, Precision | None]:
+    """A column that may be in or out is optional where it is in, or where putting it in would help."""
+    is_covariate, is_used = _uses(claim, node)
+    if (is_used and not is_covariate) or claim.graph.measured >> node & 1 == 0:
+        return "keep" if is_used else "leave-out", None
+    column = 1 << node
+    covariates = claim.covariates & ~column if is_covariate else claim.covariates | column
+    other = Choice(covariates, claim.fixed_effects & ~column, claim.parts)
+    if not claim.is_carried_by(other):
+        return "keep" if is_covariate else "leave-out", None
+    precision = precision_of(claim.effect, claim.held_fixed(other), node)
+    return "optional" if is_covariate or precision == "raises" else "leave-out", precision
+
+
+def _uses(claim: Claim, node: int) -> tuple[bool, bool]:
+    """Does the config adjust for a column, and does it use it at all?"""
+    is_covariate = bool(claim.adjusted_for >> node & 1)
+    return is_covariate, is_covariate or any(
+        part.columns >> node & 1 for part in (*claim.parts, *claim.silent)
+    )
+
+
+def _advice(claim: Claim, node: int, remedy: Remedy | None) -> Advice:
     if claim.ends >> node & 1:
         return "keep"
-    is_covariate = bool(claim.adjusted_for >> node & 1)
-    is_used = is_covariate or any(part.columns >> node & 1 for part in (*claim.parts, *claim.silent))
-    if is_sound:
-        if not is_covariate:
-            return "keep" if is_used else "leave-out"
-        without = Choice(claim.covariates & ~(1 << node), claim.fixed_effects & ~(1 << node), claim.parts)
-        return "optional" if claim.is_carried_by(without) else "keep"
+    is_covariate, is_used = _uses(claim, node)
     if remedy is None:
         return "keep" if is_used and not claim.effect.forbidden >> node & 1 else "leave-out"
     if remedy.adjusted_for >> node & 1:

@@ -9,8 +9,9 @@ from pathgate.demo import demo_configs, demo_graph
 from pathgate.review.coefficients import ReadsAs
 from pathgate.review.config import understand_config
 from pathgate.review.hinge_document import whole_document
+from pathgate.review.optional import Precision
 from pathgate.review.review import review
-from pathgate.review.roles import Advice, Role
+from pathgate.review.roles import ROLES, Advice
 from pathgate.review.rules import RULES
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.web.endpoints.hinge_schema import HINGE_COMPONENTS
@@ -117,8 +118,20 @@ REVIEW: dict[str, Any] = {
                 "type": "object",
                 "properties": {
                     "column": {"type": "string"},
-                    "role": {"enum": list(get_args(Role))},
-                    "advice": {"enum": list(get_args(Advice))},
+                    "role": {
+                        "enum": list(ROLES),
+                        "description": "the first that fits: "
+                        + "; ".join(f"{r}: {m}" for r, m in ROLES.items()),
+                    },
+                    "advice": {
+                        "enum": list(get_args(Advice)),
+                        "description": "what the config should do with it; optional: it may be adjusted for or not",
+                    },
+                    "precision": {
+                        "enum": list(get_args(Precision)),
+                        "description": "where a column may be in or out: what adjusting for it does to the precision"
+                        " of a linear model",
+                    },
                 },
                 "required": ["column", "role", "advice"],
                 "additionalProperties": False,
