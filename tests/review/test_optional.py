@@ -53,7 +53,7 @@ def test_what_a_column_does_to_precision_is_what_it_does_in_every_linear_world(s
                 if told["precision"] in ("lowers", "none"):
                     assert ratio >= 1 - 1e-9, seed
             seen[told["precision"]] += 1
-    assert set(seen) == {"raises", "lowers", "none", "depends"}
+    assert set(seen) == {"raises", "lowers", "none"}
 
 
 def test_a_cause_of_the_outcome_helps_and_a_cause_of_the_treatment_costs():

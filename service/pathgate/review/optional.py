@@ -14,15 +14,14 @@ from typing import Literal
 from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.verdict import are_separated
 
-Precision = Literal["raises", "lowers", "none", "depends"]
+Precision = Literal["raises", "lowers", "none"]
 
 
 def precision_of(effect: Effect, others: int, node: int) -> Precision:
     """What adjusting for ``node`` beside the ``others`` does to the precision; both choices carry the effect."""
     graph, column = effect.kept.graph, 1 << node
     given = others & ~column | effect.kept.conditioned
-    is_apart_from_treatment = are_separated(graph, effect.treatments, column, given)
+    if not are_separated(graph, effect.treatments, column, given):
+        return "lowers"
     is_apart_from_outcome = are_separated(graph, effect.outcomes, column, given | effect.treatments)
-    if is_apart_from_treatment:
-        return "none" if is_apart_from_outcome else "raises"
-    return "lowers" if is_apart_from_outcome else "depends"
+    return "none" if is_apart_from_outcome else "raises"
