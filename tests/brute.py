@@ -35,11 +35,13 @@ from tests.values import (
 
 __all__ = [
     "Path",
+    "adjustment_criterion",
     "all_directed_paths",
     "all_paths",
     "ancestors",
     "colliders",
     "descendants",
+    "direct_criterion",
     "forbidden",
     "inclusion_minimal",
     "induced_pairs",
@@ -178,9 +180,10 @@ def forbidden(graph: Graph, treatments: Names, outcomes: Names) -> frozenset[str
     return everything - as_set(treatments) - as_set(outcomes)
 
 
-def _adjustment_criterion(
+def adjustment_criterion(
     graph: Graph, treatments: Names, outcomes: Names, conditioned: Names
 ) -> Callable[[frozenset[str]], bool]:
+    """:func:`is_valid_adjustment` for many covariate sets: paths are listed once."""
     starts, ends, fixed = as_set(treatments), as_set(outcomes), as_set(conditioned)
     paths = proper_paths(graph, starts, ends)
     barred = _on_or_below_causal_paths(graph, paths) | starts | ends
@@ -204,7 +207,7 @@ def is_valid_adjustment(
     ``graph`` and ``conditioned`` are those of :func:`with_selection` where rows are filtered. A treatment or
     outcome that is itself given (a covariate, or held at one value) is never valid.
     """
-    return _adjustment_criterion(graph, treatments, outcomes, conditioned)(as_set(covariates))
+    return adjustment_criterion(graph, treatments, outcomes, conditioned)(as_set(covariates))
 
 
 def is_valid_direct(
@@ -212,13 +215,26 @@ def is_valid_direct(
 ) -> bool:
     """The direct effect's definition: nothing given descends from the outcome where the arrow exists, and
     the two are separated once the arrow is removed; where there is no arrow, separation alone."""
-    given = as_set(covariates) | as_set(conditioned)
-    if given & {treatment, outcome}:
-        return False
+    return direct_criterion(graph, treatment, outcome, conditioned)(as_set(covariates))
+
+
+def direct_criterion(
+    graph: Graph, treatment: str, outcome: str, conditioned: Names
+) -> Callable[[frozenset[str]], bool]:
+    """:func:`is_valid_direct` for many covariate sets: paths are listed once."""
     has_arrow = (treatment, outcome) in arrows_of(graph)
-    if has_arrow and given & descendants(graph, outcome):
-        return False
-    return separated(without_arrow(graph, treatment, outcome), treatment, outcome, given)
+    barred = {treatment, outcome} | (descendants(graph, outcome) if has_arrow else set())
+    fixed = as_set(conditioned)
+    paths = list(all_paths(without_arrow(graph, treatment, outcome), treatment, outcome))
+
+    def is_valid(covariates: frozenset[str]) -> bool:
+        given = covariates | fixed
+        if given & barred:
+            return False
+        opening = ancestors(graph, given)
+        return not any(is_open_given(path, given, opening) for path in paths)
+
+    return is_valid
 
 
 def valid_sets(
@@ -229,7 +245,7 @@ def valid_sets(
     free = [name for name in measured_names(graph) if name not in ends]
     if asks == "direct":
         (treatment,), (outcome,) = as_set(treatments), as_set(outcomes)
-        every = subsets(free)
-        return [one for one in every if is_valid_direct(graph, treatment, outcome, one, conditioned)]
-    is_valid = _adjustment_criterion(graph, treatments, outcomes, conditioned)
+        is_valid = direct_criterion(graph, treatment, outcome, conditioned)
+    else:
+        is_valid = adjustment_criterion(graph, treatments, outcomes, conditioned)
     return [chosen for chosen in subsets(free) if is_valid(chosen)]

@@ -22,6 +22,8 @@ from pathgate.review.determined import determined_by
 MOST_EFFECTS = 64
 # Of so many fixed effects every set to keep is looked at; of more, those that lack one, or hold one or none.
 MOST_FIXED_EFFECTS = 6
+# Sets of columns left out, one after the other, in search of a choice that leaves the treatments some variation.
+MOST_EXCLUSIONS = 100
 
 
 @dataclass(frozen=True, slots=True)
@@ -173,14 +175,30 @@ class Claim:
         return not part.columns & ~self.readable and not (part.fixed and part.columns & self.ends)
 
     def absorbed(self, fixed_effects: int) -> int:
-        """What has one value within each value of any of these columns, measured or not."""
-        if not fixed_effects:
-            return 0
+        """What has one value within each value of one of these columns of the config, measured or not."""
         constant = 0
+        for node in members(fixed_effects):
+            constant |= self._constant_within[node]
+        return constant & ~fixed_effects
+
+    @cached_property
+    def _constant_within(self) -> dict[int, int]:
+        """For each column of the fixed effects, what is constant within it, step by step, or computed from that."""
+        below: dict[int, int] = {}
         for node, columns in self.graph.constant_within.items():
-            if any(fixed_effects >> column & 1 for column in columns):
-                constant |= 1 << node
-        return determined_by(constant | fixed_effects, self.inputs) & ~fixed_effects
+            for column in columns:
+                below[column] = below.get(column, 0) | 1 << node
+        found = {}
+        for fixed in members(self.fixed_effects):
+            constant = reached = 1 << fixed
+            while reached:
+                further = 0
+                for node in members(reached):
+                    further |= below.get(node, 0)
+                reached = further & ~constant
+                constant |= reached
+            found[fixed] = determined_by(constant, self.inputs)
+        return found
 
     def held_fixed(self, choice: Choice) -> int:
         """All that a choice holds fixed in the comparison, rows aside."""
@@ -243,11 +261,40 @@ class Claim:
         population = self.population_of(self.effect_among(parts))
         for kept in self._fixed_effects_to_keep():
             held = kept | self.absorbed(kept)
-            found = None if held & self.ends else population.one(required=held | required)
-            if found is not None:
-                choice = Choice(found & ~held | required & ~held, kept, parts)
-                if self.is_carried_by(choice):
-                    yield choice
+            choice = None if held & self.ends else self._varying(population, kept, parts, required)
+            if choice is not None and self.is_carried_by(choice):
+                yield choice
+
+    def _varying(
+        self, population: Population, kept: int, parts: tuple[Part, ...], required: int
+    ) -> Choice | None:
+        """A choice with these fixed effects that carries the effect and leaves the treatments some variation.
+
+        Where one leaves them none, whichever does must lack that computed column or something it is made of.
+        """
+        held = kept | self.absorbed(kept)
+        waiting, met = [0], set[int]()
+        while waiting and len(met) < MOST_EXCLUSIONS:
+            excluded = waiting.pop()
+            met.add(excluded)
+            found = population.one(required=held | required, allowed=~excluded)
+            if found is None:
+                continue
+            choice = Choice((found | required) & ~held, kept, parts)
+            stuck = self.leaves_no_variation(choice)
+            if not stuck:
+                return choice
+            behind = self._made_of(stuck.bit_length() - 1) & choice.covariates & ~required
+            waiting += [both for node in members(behind) if (both := excluded | 1 << node) not in met]
+        return None
+
+    def _made_of(self, column: int) -> int:
+        """A computed column with all that it is computed from, step by step."""
+        found = 1 << column
+        for node in sorted(self.inputs, reverse=True):
+            if found >> node & 1:
+                found |= self.inputs[node]
+        return found
 
     def _fixed_effects_to_keep(self) -> Iterator[int]:
         """Sets of fixed effects, larger ones first."""

@@ -46,6 +46,17 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
                 " one value of it the treatment has no variation of its own."
             )
             yield Finding("no-variation-left", (graph.name(named.node),), message, named.place)
+    for filter_part in config.rows.filter_parts:
+        part = filter_part.part
+        for node in members(stuck & part.columns if part.fixed else 0):
+            made_of = graph.names_of(claim.inputs[node])
+            message = (
+                f"The condition {part_text(part.written)} keeps one value of {listed([graph.name(node)])}, which is"
+                f" computed from {listed(made_of)}: with what the model adjusts for, only"
+                f" {listed(graph.names_of(claim.treatments), 'or')} can make it differ, so the treatment is left no"
+                " variation of its own."
+            )
+            yield Finding("no-variation-left", (graph.name(node),), message, filter_part.place, part.written)
 
 
 def _both(config: Config, named: Named, name: str, role: str) -> str:
