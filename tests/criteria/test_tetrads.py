@@ -12,6 +12,7 @@ import numpy as np
 import pytest
 
 from pathgate.criteria import Deadline, OutOfTime, Tetrad, tetrads
+from pathgate.criteria.tetrads import tetrads_from
 from pathgate.graphs import CausalGraph, read_graph
 from tests.brute_paths import all_directed_paths
 from tests.linear_worlds import TOLERANCE, Matrix, draw_world
@@ -212,10 +213,13 @@ def one_factor(indicators: int) -> CausalGraph:
 
 def test_a_listing_begins_where_it_is_told_to():
     graph = one_factor(7)
-    everything = list(tetrads(graph, Deadline.never()))
-    assert len(everything) == 3 * comb(7, 4)
-    for start in range(len(everything) + 2):
-        assert list(tetrads(graph, Deadline.never(), start=start)) == everything[start:]
+    everything = list(tetrads_from(graph, 0, Deadline.never()))
+    assert [tetrad for _place, tetrad in everything] == list(tetrads(graph, Deadline.never()))
+    places = [place for place, _tetrad in everything]
+    assert len(places) == 3 * comb(7, 4)
+    assert places == sorted(set(places))
+    for start in range(places[-1] + 2):
+        assert list(tetrads_from(graph, start, Deadline.never())) == [e for e in everything if e[0] >= start]
 
 
 @pytest.mark.parametrize("at_once", [1, 2, 5])
@@ -246,11 +250,16 @@ def test_the_first_page_of_a_hundred_columns_takes_one_block_of_pairs():
     assert deadline.looks == 2 * graph.size + 1
 
 
-def test_the_last_page_of_a_hundred_columns_comes_without_those_before():
-    everything = 3 * comb(100, 4)
-    page = list(tetrads(one_factor(100), Deadline.never(), start=everything - 5))
-    assert len(page) == 5
-    assert (page[-1].rows, page[-1].columns) == (("sign96", "sign99"), ("sign97", "sign98"))
+def test_a_late_page_of_fifty_columns_comes_without_those_before():
+    """Of 1,225 pairs of rows those from the page's place on are gone through, one block instead of two."""
+    graph = one_factor(50)
+    place = next(
+        place for place, found in tetrads_from(graph, 0, Deadline.never()) if found.rows[0] == "sign40"
+    )
+    deadline = Counted(1.0)
+    page = list(islice(tetrads_from(graph, place, deadline), 100))
+    assert {found.rows[0] for _place, found in page} == {"sign40"}
+    assert deadline.looks <= 2 * graph.size + len(page)
 
 
 def test_the_search_is_cut_off_by_the_deadline():

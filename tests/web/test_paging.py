@@ -9,7 +9,7 @@ import pytest
 
 from pathgate.criteria import Deadline, OutOfTime
 from pathgate.web.operations import Call
-from pathgate.web.paging import page_from, page_of
+from pathgate.web.paging import page_at, page_of
 from pathgate.web.settings import Settings
 
 
@@ -49,10 +49,22 @@ def test_a_page_is_not_called_complete_where_time_runs_out_before_it_begins():
 def test_a_listing_that_can_begin_anywhere_is_told_where_to_begin():
     starts = []
 
-    def listing(start: int) -> Iterator[int]:
+    def listing(start: int) -> Iterator[tuple[int, str]]:
         starts.append(start)
-        return iter(range(start, 5))
+        yield from ((place, "ab"[place % 2]) for place in (0, 5, 6, 30, 41) if place >= start)
 
-    first, page = page_from(call_of(Deadline.never(), limit=3), "trial", listing)
-    second, last = page_from(call_of(Deadline.never(), limit=3, cursor=page["cursor"]), "trial", listing)
-    assert (first, second, last, starts) == ([0, 1, 2], [3, 4], {"complete": True}, [0, 3])
+    first, page = page_at(call_of(Deadline.never(), limit=3), "trial", listing)
+    second, last = page_at(call_of(Deadline.never(), limit=3, cursor=page["cursor"]), "trial", listing)
+    assert (first, second, last, starts) == (["a", "b", "a"], ["a", "b"], {"complete": True}, [0, 30])
+
+
+def test_a_listing_that_is_cut_short_goes_on_after_the_last_item_given():
+    starts = []
+
+    def listing(start: int) -> Iterator[tuple[int, int]]:
+        starts.append(start)
+        yield from ((place, place) for place in (0, 20, 40) if place >= start)
+
+    first, page = page_at(call_of(looking(1)), "trial", listing)
+    second, last = page_at(call_of(Deadline.never(), cursor=page["cursor"]), "trial", listing)
+    assert (first, second, last, starts) == ([0, 20], [40], {"complete": True}, [0, 21])

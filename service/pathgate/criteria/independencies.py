@@ -32,14 +32,20 @@ class Independency:
     given: int
 
 
-def separable_pairs(pairs: Pairs, deadline: Deadline) -> Iterator[tuple[int, int]]:
-    """Every pair of columns that some set of columns separates, in the graph's order.
+def separable_pairs(
+    pairs: Pairs, deadline: Deadline, *, start: tuple[int, int] = (0, 0)
+) -> Iterator[tuple[int, int]]:
+    """Every pair of columns that some set of columns separates, in the graph's order; from ``start`` on.
 
     Raises:
         OutOfTime: the deadline came first.
     """
-    for node in members(pairs.columns):
-        yield from ((node, other) for other in members(pairs.separable(node, deadline)))
+    first, second = start
+    for node in members(pairs.columns >> first << first):
+        others = pairs.separable(node, deadline)
+        if node == first:
+            others = others >> second << second
+        yield from ((node, other) for other in members(others))
 
 
 def separators_of(pairs: Pairs, first: int, second: int) -> Separators:
@@ -73,8 +79,17 @@ def every_minimal(pairs: Pairs, deadline: Deadline) -> Iterator[Independency]:
         OutOfTime: the deadline came first.
     """
     for first, second in separable_pairs(pairs, deadline):
-        for found in separators_of(pairs, first, second).every_minimal(deadline):
-            yield Independency(first, 1 << second, found & ~pairs.kept.conditioned)
+        yield from minimal_about(pairs, first, second, deadline)
+
+
+def minimal_about(pairs: Pairs, first: int, second: int, deadline: Deadline) -> Iterator[Independency]:
+    """Those of them that are about one pair.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    for found in separators_of(pairs, first, second).every_minimal(deadline):
+        yield Independency(first, 1 << second, found & ~pairs.kept.conditioned)
 
 
 def basis(pairs: Pairs, first: int, second: int) -> Independency:

@@ -95,7 +95,10 @@ class Pairs:
 
     def adjacent(self, node: int) -> int:
         """The nodes that an edge joins to this one."""
-        return mask_of(self.kept.graph.neighbour_lists[node])
+        graph = self.kept.graph
+        if graph.is_small:
+            return graph.parent_masks[node] | graph.child_masks[node] | graph.spouse_masks[node]
+        return mask_of(graph.neighbour_lists[node])
 
     def widest(self, first: int, second: int) -> int:
         """The columns above a pair: they separate it where anything does."""

@@ -13,7 +13,7 @@ from __future__ import annotations
 from collections import defaultdict, deque
 from collections.abc import Iterator
 from dataclasses import dataclass
-from itertools import combinations, islice
+from itertools import islice
 
 import numpy as np
 import numpy.typing as npt
@@ -47,14 +47,11 @@ class Tetrad:
     columns_side: tuple[str, ...]
 
 
-def tetrads(graph: CausalGraph, deadline: Deadline, *, start: int = 0) -> Iterator[Tetrad]:
+def tetrads(graph: CausalGraph, deadline: Deadline) -> Iterator[Tetrad]:
     """Every vanishing tetrad without a vanishing covariance in it, each once, in the graph's order.
 
     A tetrad with a vanishing covariance in it vanishes only where a whole row or column of it does; that says
     nothing new, and those are left out. Of several choke points the one nearest to the rows is named.
-
-    Args:
-        start: how many tetrads to pass over; that costs less than making them.
 
     Raises:
         OutOfTime: the deadline came first.
@@ -66,19 +63,39 @@ def tetrads(graph: CausalGraph, deadline: Deadline, *, start: int = 0) -> Iterat
     ('a', 'c') ('b', 'd') ('haste',)
     ('a', 'd') ('b', 'c') ('haste',)
     """
+    return (found for _place, found in tetrads_from(graph, 0, deadline))
+
+
+def tetrads_from(graph: CausalGraph, start: int, deadline: Deadline) -> Iterator[tuple[int, Tetrad]]:
+    """The same from a place on, each with its place; what comes before is not looked for.
+
+    Places rise from one tetrad to the next, not always by one; 0 is the first.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
     sides = _Sides.of(graph)
     measured = np.fromiter(members(graph.measured), dtype=np.int64)
-    pairs = combinations(measured.tolist(), 2)
+    # The place tells the number of the pair of rows, and which of its tetrads it is: fewer than these.
+    most = max(1, len(measured)) ** 2
+    rank, skipped = divmod(start, most)
+    pairs = _pairs_from(measured.tolist(), rank)
     at_once = max(1, min(_MOST_PAIRS, _MOST_CELLS // (2 * graph.size + 1)))
     while block := list(islice(pairs, at_once)):
         found = _Found.of(sides, measured, np.array(block, dtype=np.int64), deadline)
         for place in np.flatnonzero(found.counts).tolist():
             deadline.poll()
-            if start >= found.counts[place]:
-                start -= int(found.counts[place])
-                continue
-            yield from islice(_named(graph, block[place], found.chokes(place)), start, None)
-            start = 0
+            named = enumerate(_named(graph, block[place], found.chokes(place)), start=(rank + place) * most)
+            yield from islice(named, 0 if place else skipped, None)
+        rank, skipped = rank + len(block), 0
+
+
+def _pairs_from(columns: list[int], rank: int) -> Iterator[tuple[int, int]]:
+    """All pairs of columns in order, without the first ``rank`` of them."""
+    for place, first in enumerate(columns):
+        later = columns[place + 1 :]
+        yield from ((first, other) for other in later[rank:])
+        rank = max(0, rank - len(later))
 
 
 @dataclass(frozen=True, slots=True)

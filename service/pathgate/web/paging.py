@@ -1,15 +1,15 @@
 """Pages of a long listing, without a store: the cursor says where to go on and which request it belongs to.
 
-A cursor holds the number of items already given and a digest of that number, the operation, the version and
-the request. So any replica takes it, and one that was made for another request is noticed. No secret is in it.
+A cursor holds the place of the first item not given yet and a digest of that place, the operation, the version
+and the request. So any replica takes it, and one that was made for another request is noticed. No secret is in it.
 """
 
 from __future__ import annotations
 
 import base64
 import hashlib
+import sys
 from collections.abc import Callable, Iterable, Iterator
-from itertools import islice
 from typing import Any, TypeVar
 
 import msgspec
@@ -34,13 +34,18 @@ def page_of(call: Call, operation: str, items: Iterable[Item]) -> tuple[list[Ite
         Failed: the cursor was not made for this request.
         OutOfTime: the time ran out before the first item.
     """
-    return page_from(call, operation, lambda start: _after(call, items, start))
+    return page_at(call, operation, lambda start: _after(call, items, start))
 
 
-def page_from(
-    call: Call, operation: str, listing: Callable[[int], Iterable[Item]]
+def page_at(
+    call: Call, operation: str, listing: Callable[[int], Iterable[tuple[int, Item]]]
 ) -> tuple[list[Item], dict[str, Any]]:
-    """As ``page_of``, for a listing that passes over its first ``start`` items faster than it makes them.
+    """As ``page_of``, for a listing that can go on at a place without making what comes before.
+
+    Args:
+        call: the request.
+        operation: what it asks.
+        listing: the items from a place on, each with its place; places rise, and 0 comes before all of them.
 
     Raises:
         Failed: the cursor was not made for this request.
@@ -50,26 +55,26 @@ def page_from(
     request = _request_digest(call, operation)
     start = _place_of(call.body["cursor"], request) if "cursor" in call.body else 0
     found: list[Item] = []
-    was_cut = False
+    after = start
     try:
-        for item in islice(listing(start), limit + 1):
+        for place, item in listing(start):
+            if len(found) == limit:
+                return found, {"complete": False, "cursor": _cursor(place, request)}
             found.append(item)
+            after = place + 1
             call.deadline.poll()
     except OutOfTime:
         if not found:
             raise
-        was_cut = True
-    if len(found) <= limit and not was_cut:
-        return found, {"complete": True}
-    found = found[:limit]
-    return found, {"complete": False, "cursor": _cursor(start + len(found), request)}
+        return found, {"complete": False, "cursor": _cursor(after, request)}
+    return found, {"complete": True}
 
 
-def _after(call: Call, items: Iterable[Item], start: int) -> Iterator[Item]:
-    """The items from ``start`` on; the time is watched while those before are passed over."""
+def _after(call: Call, items: Iterable[Item], start: int) -> Iterator[tuple[int, Item]]:
+    """The items from ``start`` on with their numbers; the time is watched while those before are passed over."""
     for place, item in enumerate(items):
         if place >= start:
-            yield item
+            yield place, item
         else:
             call.deadline.poll()
 
@@ -92,6 +97,6 @@ def _place_of(cursor: str, request: bytes) -> int:
         place = int(held[_DIGEST_BYTES:])
     except ValueError:
         place = -1
-    if place < 0 or _cursor(place, request) != cursor:
+    if not 0 <= place <= sys.maxsize or _cursor(place, request) != cursor:
         raise Failed(Problem.of("bad-cursor", "the cursor was not made for this request"))
     return place

@@ -2,18 +2,18 @@
 
 from __future__ import annotations
 
-from pathgate.criteria.tetrads import Tetrad, tetrads
+from pathgate.criteria.tetrads import Tetrad, tetrads_from
 from pathgate.web.endpoints.reading import graph_of
 from pathgate.web.endpoints.shared_schemas import CURSOR, GRAPH, LIMIT, NAME_LIST, NEXT_PAGE
 from pathgate.web.operations import Call, Example, Json, Operation
-from pathgate.web.paging import page_from
+from pathgate.web.paging import page_at
 
 
 def answer(call: Call) -> Json:
     """The vanishing tetrads among the measured columns, a page at a time, each with its choke point."""
     graph = graph_of(call)
     call.refuse_faults()
-    found, page = page_from(call, "constraints", lambda start: tetrads(graph, call.deadline, start=start))
+    found, page = page_at(call, "constraints", lambda start: tetrads_from(graph, start, call.deadline))
     return {"tetrads": [_tetrad(each) for each in found], **page}
 
 

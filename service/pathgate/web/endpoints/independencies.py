@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from itertools import islice
+from math import inf
 from typing import Any
 
 from pathgate.criteria.deadline import Deadline
@@ -11,7 +13,7 @@ from pathgate.criteria.independencies import (
     Independency,
     basis,
     basis_sets,
-    every_minimal,
+    minimal_about,
     separable_pairs,
     sequential,
     smallest,
@@ -26,10 +28,13 @@ from pathgate.review.wording import arrow_text
 from pathgate.web.endpoints.reading import graph_of, names_of
 from pathgate.web.endpoints.shared_schemas import CURSOR, GRAPH, LIMIT, NAME_LIST, NEXT_PAGE, SELECTED_ON
 from pathgate.web.operations import Call, Example, Json, Operation
-from pathgate.web.paging import page_of
+from pathgate.web.paging import page_at
 
 _Token = Independency | tuple[int, int]
 """What a page counts: a statement, or a separable pair whose statement is not worked out yet."""
+
+# More minimal sets of one pair than any caller pages through; places of pairs are so far apart.
+_MOST_MINIMAL = 2**28
 
 FORMS = ("smallest", "every-minimal", "basis", "basis-sets", "sequential")
 
@@ -45,7 +50,7 @@ def answer(call: Call) -> Json:
     call.refuse_faults()
     pairs = Pairs(kept)
     listing = _Listing(pairs, form, call.body.get("max_given"), call.deadline)
-    found, page = page_of(call, "independencies", listing.tokens())
+    found, page = page_at(call, "independencies", listing.tokens)
     document: Json = {"independencies": [listing.document(each) for each in found], **page}
     if page["complete"]:
         document["inseparable"] = [_inseparable(pairs, *pair) for pair in pairs.inseparable(call.deadline)]
@@ -72,29 +77,42 @@ class _Listing:
     max_given: int | None
     deadline: Deadline
 
-    def tokens(self) -> Iterator[_Token]:
-        """What the pages count, in order."""
-        graph = self.pairs.kept.graph
+    def tokens(self, start: int) -> Iterator[tuple[int, _Token]]:
+        """What the pages count, from a place on, each with its place."""
+        if self.max_given is not None:
+            return filter(self._fits, self._statements(start))
+        return self._pairs(start) if self.form in ("smallest", "basis") else self._statements(start)
+
+    def _statements(self, start: int) -> Iterator[tuple[int, Independency]]:
         if self.form in ("smallest", "basis"):
-            found = separable_pairs(self.pairs, self.deadline)
-            yield from found if self.max_given is None else filter(self._fits, map(self._of_pair, found))
-        elif self.form == "every-minimal":
-            yield from filter(self._fits, every_minimal(self.pairs, self.deadline))
-        elif self.form == "basis-sets":
-            yield from filter(self._fits, basis_sets(graph, self.deadline))
-        else:
-            yield from filter(self._fits, sequential(graph))
+            return ((place, self._of_pair(pair)) for place, pair in self._pairs(start))
+        if self.form == "every-minimal":
+            return self._minimal(start)
+        graph = self.pairs.kept.graph
+        found = basis_sets(graph, self.deadline) if self.form == "basis-sets" else sequential(graph)
+        return islice(enumerate(found), start, None)
+
+    def _pairs(self, start: int) -> Iterator[tuple[int, tuple[int, int]]]:
+        size = max(1, self.pairs.kept.graph.size)
+        for first, second in separable_pairs(self.pairs, self.deadline, start=divmod(start, size)):
+            yield first * size + second, (first, second)
+
+    def _minimal(self, start: int) -> Iterator[tuple[int, Independency]]:
+        begin, skipped = divmod(start, _MOST_MINIMAL)
+        for place, pair in self._pairs(begin):
+            found = minimal_about(self.pairs, *pair, self.deadline)
+            numbered = enumerate(found, start=place * _MOST_MINIMAL)
+            yield from islice(numbered, skipped if place == begin else 0, None)
 
     def document(self, token: _Token) -> Json:
         """A statement with what a contradiction of it would mean."""
-        self.deadline.poll()
         statement = token if isinstance(token, Independency) else self._of_pair(token)
-        graph = self.pairs.kept.graph
-        others = graph.names_of(statement.y)
+        names = self.pairs.kept.graph.names
+        others = [names[node] for node in members(statement.y)]
         return {
-            "x": graph.name(statement.x),
-            "y": list(others) if self.form == "basis-sets" else others[0],
-            "given": list(graph.names_of(statement.given)),
+            "x": names[statement.x],
+            "y": others if self.form == "basis-sets" else others[0],
+            "given": [names[node] for node in members(statement.given)],
             "cheaper_exists": self._has_cheaper(statement),
             "tests_absence_of": _absent_edges(self.pairs, statement),
         }
@@ -103,8 +121,8 @@ class _Listing:
         self.deadline.poll()
         return (smallest if self.form == "smallest" else basis)(self.pairs, *pair)
 
-    def _fits(self, statement: Independency) -> bool:
-        return self.max_given is None or statement.given.bit_count() <= self.max_given
+    def _fits(self, found: tuple[int, Independency]) -> bool:
+        return self.max_given is None or found[1].given.bit_count() <= self.max_given
 
     def _has_cheaper(self, statement: Independency) -> bool:
         """Does some statement about the same pair condition on fewer columns?"""
@@ -116,24 +134,23 @@ class _Listing:
 
 def _absent_edges(pairs: Pairs, statement: Independency) -> list[Json]:
     """The edges between the two sides that the graph lacks and could hold: any of them would break the statement."""
-    graph = pairs.kept.graph
+    names, x = pairs.kept.graph.names, statement.x
     absent = []
-    for other in members(statement.y):
-        for source, target in ((statement.x, other), (other, statement.x)):
-            if _could_cause(pairs, source, target):
-                ends = {"source": graph.name(source), "target": graph.name(target)}
-                absent.append({**ends, "kind": "directed"})
-        ends = {"source": graph.name(statement.x), "target": graph.name(other)}
-        absent.append({**ends, "kind": "bidirected"})
+    for y in members(statement.y):
+        if _could_cause(pairs, x, y):
+            absent.append({"source": names[x], "target": names[y], "kind": "directed"})
+        if _could_cause(pairs, y, x):
+            absent.append({"source": names[y], "target": names[x], "kind": "directed"})
+        absent.append({"source": names[x], "target": names[y], "kind": "bidirected"})
     return absent
 
 
 def _could_cause(pairs: Pairs, source: int, target: int) -> bool:
     """Would an arrow between the two neither close a cycle nor run back in time?"""
+    if pairs.below[target] >> source & 1:
+        return False
     recorded = pairs.kept.graph.recorded
-    before, after = recorded.get(source), recorded.get(target)
-    runs_back = before is not None and after is not None and before > after
-    return not runs_back and not pairs.below[target] >> source & 1
+    return not recorded or recorded.get(source, -inf) <= recorded.get(target, inf)
 
 
 def _inseparable(pairs: Pairs, first: int, second: int) -> Json:
