@@ -30,6 +30,19 @@ UNANSWERABLE = {
 }
 MISNAMED = {**SOUND, "name": "misnamed one", "covariates": ["wether"]}
 
+# A filter with one part that opens a collider, written over several lines.
+FILTERED_YAML = """\
+- name: filtered one
+  treatment: late
+  outcome: refund
+  covariates: [weather]
+  row_filter: >-
+    weather > 3
+    AND ticket = 1
+"""
+# Biased by what somebody has accepted, as a review that knows waivers marks it.
+WAIVER = {"why": "the ticket desk was closed", "owner": "refunds team", "until": "2027-01-31"}
+
 COMMAND = [sys.executable, "-c", "from pathgate.cli.main import main; main(prog_name='pathgate')"]
 # Without what would change what is printed.
 ENVIRONMENT = {key: said for key, said in os.environ.items() if not key.startswith("PATHGATE_MAX")}

@@ -12,6 +12,7 @@ from typing import Any
 import click
 
 from pathgate.cli.review_command import review
+from pathgate.cli.small_commands import check, explain, new
 from pathgate.cli.terminal import say, settings_in_force
 
 FAILED = 2
@@ -90,4 +91,5 @@ def _show_version(context: click.Context) -> None:
     context.exit()
 
 
-main.add_command(review)
+for command in (review, check, explain, new):
+    main.add_command(command)

@@ -107,7 +107,7 @@ def _reader(name: str) -> Callable[[Any, Path], Any]:
     if name not in known:
         from pathgate.graphs.names import did_you_mean  # noqa: PLC0415 - heavy, and rarely needed
 
-        hint = did_you_mean(name, known) or f" (there are {', '.join(known)})"
+        hint = did_you_mean(name, list(known)) or f" (there are {', '.join(known)})"
         raise ValueError(f"no such setting{hint}")
     return known[name]
 

@@ -13,6 +13,7 @@ from pathlib import Path
 from typing import Any
 from urllib.parse import quote
 
+from pathgate.cli.choices import NOT_JUDGED_MEANS, NOT_JUDGED_RULE
 from pathgate.cli.run import Fault, Item, Place, Run, Weighed
 from pathgate.cli.wording import counts_text, gone_text, waiver_text
 from pathgate.cli.writing import json_bytes
@@ -23,8 +24,6 @@ from pathgate.version import VERSION
 Json = dict[str, Any]
 
 SCHEMA = "https://docs.oasis-open.org/sarif/sarif/v2.1.0/errata01/os/schemas/sarif-schema-2.1.0.json"
-NOT_JUDGED_RULE = "config-not-judged"
-_NOT_JUDGED_MEANS = "The config could not be judged, so nothing is known of it."
 _ROOT = "ROOT"
 _MEANINGS = {0: "no config falls short", 1: "some config falls short", 2: "something could not be judged"}
 
@@ -32,7 +31,7 @@ _MEANINGS = {0: "no config falls short", 1: "some config falls short", 2: "somet
 def run_sarif(run: Run, root: Path | None = None) -> bytes:
     """The log; files below ``root`` (the working folder where None) are named as seen from there."""
     base = Path(os.path.realpath(root or Path.cwd()))
-    rules = [*map(_rule, RULES), _described(NOT_JUDGED_RULE, _NOT_JUDGED_MEANS, "error")]
+    rules = [*map(_rule, RULES), _described(NOT_JUDGED_RULE, NOT_JUDGED_MEANS, "error")]
     indices = {rule["id"]: index for index, rule in enumerate(rules)}
     driver = {"name": "Pathgate", "version": VERSION, "rules": rules}
     results = [result for item in run.items for result in _results(item, base)]

@@ -42,6 +42,9 @@ class YamlSpotting:
             value, start = event.value, event.start_mark.index
             # A block's end mark lies behind the empty lines that follow it.
             raw = self.text[start : event.end_mark.index].rstrip()
+            if not raw:
+                # A value that is left out is marked where the next one begins; it belongs behind its own key.
+                start = len(self.text[:start].rstrip())
             spot = self.spotting.scalar(start, start + len(raw), lambda: value)
             self.anchors[event.anchor] = spot, value
         elif isinstance(event, NodeEvent):
