@@ -19,6 +19,7 @@ from pathgate.review.rows_kept import ALL_ROWS, RowsKept, understand_rows
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.review.shape import Shape, are_cut_off
 from pathgate.review.terms import ModelTerm
+from pathgate.review.waivers import Acceptance, understand_waivers
 
 NO_META = object()
 """Stands where a config has no ``meta``: null is something a config may say."""
@@ -47,6 +48,7 @@ class Config:
         may_read_unmeasured: may conditions on the rows read unmeasured nodes? Not in a team's config.
         repeated: the columns that the model adjusts for twice, once by a recode.
         passed_over: the names that the config declares as outside the graph, where it uses them.
+        accepted: its waivers.
         written: the config as it was written, for its digest; None where it never was.
     """
 
@@ -69,6 +71,7 @@ class Config:
     may_read_unmeasured: bool = False
     repeated: tuple[Named, ...] = ()
     passed_over: tuple[tuple[str, tuple[str | int, ...]], ...] = ()
+    accepted: tuple[Acceptance, ...] = ()
     written: Mapping[str, Any] | None = None
 
     @property
@@ -126,6 +129,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     modelled = (*treatments, *outcomes, *(named for read in adjusted.values() for named in read))
     rows = understand_rows(said, names, modelled)
     known = _known(said, names)
+    waivers = understand_waivers(said, names)
     _refuse_meaningless(value, said, faults)
     if faults:
         return None
@@ -148,6 +152,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         meta=said.get("meta", NO_META),
         repeated=repeated,
         passed_over=tuple(names.passed_over),
+        accepted=waivers,
         written=value,
     )
 

@@ -61,6 +61,13 @@ def finding_document(finding: Finding) -> Json:
     }
     if finding.part is not None:
         document["part"] = finding.part
+    if finding.accepted is not None:
+        until = finding.accepted.until
+        document["accepted"] = {
+            "why": finding.accepted.why,
+            "owner": finding.accepted.owner,
+            "until": None if until is None else until.isoformat(),
+        }
     if finding.path is not None:
         document["open_path"] = path_document(finding.path)
     if finding.causal_path:

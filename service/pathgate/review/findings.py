@@ -3,11 +3,21 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from datetime import date
 
 from pathgate.criteria.paths import OpenPath
 from pathgate.criteria.selection import Label
 from pathgate.graphs.errors import Place
 from pathgate.review.rules import RULES, Severity
+
+
+@dataclass(frozen=True, slots=True)
+class Waiver:
+    """Why a team accepts a finding, who answers for it, and until which day."""
+
+    why: str
+    owner: str = ""
+    until: date | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -23,6 +33,7 @@ class Finding:
         path: the open path that shows it.
         causal_path: the causal path, by labels, that a conditioned column lies on or descends from.
         descent: from a node of the causal path down to what is conditioned on.
+        accepted: the waiver that accepts it; it never changes a verdict.
     """
 
     rule: str
@@ -33,6 +44,7 @@ class Finding:
     path: OpenPath | None = None
     causal_path: tuple[Label, ...] = ()
     descent: tuple[Label, ...] = ()
+    accepted: Waiver | None = None
 
     @property
     def severity(self) -> Severity:

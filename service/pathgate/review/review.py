@@ -8,6 +8,7 @@ It speaks of the graph that it was given.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from datetime import date
 from typing import Literal
 
 from pathgate.criteria.deadline import Deadline
@@ -28,6 +29,7 @@ from pathgate.review.remedies import Remedy, find_remedies
 from pathgate.review.roles import ColumnRole, column_roles
 from pathgate.review.summary import summarise
 from pathgate.review.timing import timing_findings
+from pathgate.review.waivers import accept
 from pathgate.review.warnings import warning_findings
 
 Verdict = Literal["sound", "biased", "unanswerable"]
@@ -63,11 +65,23 @@ class Review:
     summary: str
     measure_next: MeasureNext | None = None
 
+    @property
+    def falls_short(self) -> bool:
+        """Is it not sound, by an error that no waiver accepts?"""
+        return any(each.severity == "error" and each.accepted is None for each in self.findings)
+
 
 def review(
-    graph: CausalGraph, config: Config, deadline: Deadline | None = None, *, all_columns: bool = False
+    graph: CausalGraph,
+    config: Config,
+    deadline: Deadline | None = None,
+    *,
+    all_columns: bool = False,
+    today: date | None = None,
 ) -> Review:
     """Judge a config against a graph; with ``all_columns`` every column of the graph is given its role.
+
+    Waivers run out by ``today``, in UTC the day it is where none is given.
 
     Raises:
         OutOfTime: the deadline came first.
@@ -91,6 +105,7 @@ def review(
         *computed_findings(claim, config),
         *assumption_findings(claim, config),
     ]
+    findings = accept(findings, config.accepted, today)
     findings.sort(key=lambda finding: _GRAVITY[finding.severity])
     verdict = _verdict(claim, findings)
     remedies = find_remedies(claim, deadline) if verdict == "biased" else ()

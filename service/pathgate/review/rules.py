@@ -16,11 +16,13 @@ class Rule:
         name: stable, kebab-case.
         severity: with an ``error`` the config is not sound.
         meaning: one sentence.
+        may_be_waived: can a team accept it? Not where no number could mean anything.
     """
 
     name: str
     severity: Severity
     meaning: str
+    may_be_waived: bool = True
 
 
 RULES: dict[str, Rule] = {
@@ -111,19 +113,53 @@ RULES: dict[str, Rule] = {
             "no-variation-left",
             "error",
             "What the model holds fixed leaves treatment or outcome no variation of its own.",
+            may_be_waived=False,
         ),
-        Rule("treatment-among-covariates", "error", "The model adjusts for its own treatment."),
-        Rule("outcome-among-covariates", "error", "The model adjusts for its own outcome."),
         Rule(
-            "treatment-fixed", "error", "The rows kept hold one value of the treatment: nothing to compare."
+            "treatment-among-covariates",
+            "error",
+            "The model adjusts for its own treatment.",
+            may_be_waived=False,
         ),
-        Rule("outcome-fixed", "error", "The rows kept hold one value of the outcome: nothing to compare."),
-        Rule("unmeasured-covariate", "error", "The model adjusts for something the platform does not hold."),
         Rule(
-            "unmeasured-filter-column", "error", "The rows are kept by something the platform does not hold."
+            "outcome-among-covariates", "error", "The model adjusts for its own outcome.", may_be_waived=False
         ),
-        Rule("unmeasured-treatment", "error", "The treatment is something the platform does not hold."),
-        Rule("unmeasured-outcome", "error", "The outcome is something the platform does not hold."),
+        Rule(
+            "treatment-fixed",
+            "error",
+            "The rows kept hold one value of the treatment: nothing to compare.",
+            may_be_waived=False,
+        ),
+        Rule(
+            "outcome-fixed",
+            "error",
+            "The rows kept hold one value of the outcome: nothing to compare.",
+            may_be_waived=False,
+        ),
+        Rule(
+            "unmeasured-covariate",
+            "error",
+            "The model adjusts for something the platform does not hold.",
+            may_be_waived=False,
+        ),
+        Rule(
+            "unmeasured-filter-column",
+            "error",
+            "The rows are kept by something the platform does not hold.",
+            may_be_waived=False,
+        ),
+        Rule(
+            "unmeasured-treatment",
+            "error",
+            "The treatment is something the platform does not hold.",
+            may_be_waived=False,
+        ),
+        Rule(
+            "unmeasured-outcome",
+            "error",
+            "The outcome is something the platform does not hold.",
+            may_be_waived=False,
+        ),
         Rule("filter-depends-on-treatment", "warning", "Who is kept depends on the treatment."),
         Rule("lost-rows-depend-on-treatment", "warning", "Which rows go missing depends on the treatment."),
         Rule(
@@ -178,6 +214,25 @@ RULES: dict[str, Rule] = {
             "join-selects-rows",
             "note",
             "A join keeps only rows with a partner: assumed unrelated to everything in the graph.",
+        ),
+        Rule(
+            "waiver-expired",
+            "warning",
+            "A waiver has run out, and accepts nothing any more.",
+            may_be_waived=False,
+        ),
+        Rule(
+            "waiver-without-reason",
+            "warning",
+            "A waiver gives no reason, and so accepts nothing.",
+            may_be_waived=False,
+        ),
+        Rule("waiver-unused", "warning", "A waiver meets no finding.", may_be_waived=False),
+        Rule(
+            "waiver-not-allowed",
+            "warning",
+            "A waiver names a rule that cannot be waived.",
+            may_be_waived=False,
         ),
         Rule(
             "kept-rows-only",

@@ -137,6 +137,43 @@ MISSING: Schema = {
     "additionalProperties": NAMES,
 }
 
+ACCEPT: Schema = {
+    "type": "array",
+    "title": "a list of waivers {rule, columns, why, owner, until}",
+    "description": "findings that the team knows of and accepts; a waiver never changes the verdict, and is shown with"
+    " what it accepts",
+    "maxItems": 1000,
+    "items": {
+        "type": "object",
+        "title": "a waiver {rule, columns, why, owner, until}",
+        "properties": {
+            "rule": {
+                "type": "string",
+                "maxLength": 100,
+                "description": "the rule whose findings are accepted",
+            },
+            "columns": {
+                **SOME_NAMES,
+                "description": "only the finding that blames exactly these columns; without it every one of the rule",
+            },
+            "why": {
+                "type": "string",
+                "maxLength": 2000,
+                "description": "the reason; without one nothing is accepted",
+            },
+            "owner": {"type": "string", "maxLength": 200, "description": "who answers for it"},
+            "until": {
+                "type": "string",
+                "title": "a date as YYYY-MM-DD",
+                "pattern": "^[0-9]{4}-[0-9]{2}-[0-9]{2}$",
+                "description": "the last day on which it holds, YYYY-MM-DD (days in UTC)",
+            },
+        },
+        "required": ["rule"],
+        "additionalProperties": False,
+    },
+}
+
 CONFIG_SCHEMA: Schema = {
     "type": "object",
     "description": "What one model claims: which effect it reports, adjusted for what, on which rows. Without a"
@@ -208,9 +245,9 @@ CONFIG_SCHEMA: Schema = {
             **NAMES,
             "description": "names of columns that the graph does not have and the config may use",
         },
+        "accept": ACCEPT,
         "meta": {"description": "anything; returned as it is"},
     },
     "required": ["treatment"],
     "additionalProperties": False,
-    "x-not-yet": ["accept"],
 }

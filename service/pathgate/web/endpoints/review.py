@@ -54,6 +54,17 @@ FINDING: dict[str, Any] = {
         "pointer": {"type": "string", "description": "where in the request"},
         "help": {"type": "string", "description": "the page that explains the rule"},
         "part": {"description": "the condition on the rows it is about, as written"},
+        "accepted": {
+            "type": "object",
+            "description": "the waiver that accepts it; the verdict stays what it is",
+            "properties": {
+                "why": {"type": "string"},
+                "owner": {"type": "string"},
+                "until": {"type": ["string", "null"]},
+            },
+            "required": ["why", "owner", "until"],
+            "additionalProperties": False,
+        },
         "open_path": {"$ref": "#/components/schemas/Path"},
         "causal_path": {**_LABELS, "description": "the causal path that forbids the column"},
         "descent": {**_LABELS, "description": "from that path down to what is conditioned on"},
