@@ -1,0 +1,50 @@
+"""What is one factor of a formula: which columns does it read, and how much of one does it keep?
+
+A bare or backquoted name is a column by that name; an expression in Python is parsed and looked at. Linear in
+the text.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from pathgate.review.formula_bounds import Piece
+from pathgate.review.formula_calls import column_named, is_attribute
+from pathgate.review.formula_columns import columns_of
+from pathgate.review.formula_keeps import Keeps, keeps_of
+from pathgate.review.formula_python import parsed
+
+
+@dataclass(frozen=True, slots=True)
+class Factor:
+    """One factor of a term of a formula.
+
+    Attributes:
+        written: as the formula writes it first, backquotes and braces included.
+        names: the columns that it reads, none twice, in the order of its text.
+        keeps: how much of its one column it keeps, or ``computed`` of several.
+    """
+
+    written: str
+    names: tuple[str, ...]
+    keeps: Keeps
+
+
+def factor_of(piece: Piece) -> tuple[tuple[str, ...], Factor]:
+    """The factor that a piece of a formula is, and a key that two ways of writing one factor share.
+
+    Raises:
+        FormulaRefused: it reads no column, or holds what is not read.
+    """
+    if piece.kind == "name" and not _has_attribute(piece):
+        return (piece.text,), Factor(piece.written, (piece.text,), "column")
+    expression = parsed(piece.text, piece.written)
+    columns = columns_of(expression)
+    factor = Factor(piece.written, tuple(dict.fromkeys(columns)), keeps_of(expression, columns))
+    name = column_named(expression.tree, expression.names)
+    return (expression.key if name is None else (name,)), factor
+
+
+def _has_attribute(piece: Piece) -> bool:
+    """Does a bare name take something of a column (``x.dt.year``)?"""
+    return "." in piece.written and piece.written == piece.text and is_attribute(piece.text)
