@@ -6,7 +6,7 @@ Works on plain values: a column computed from others is a new node, child of its
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from tests.values import Graph, Names, as_set
@@ -78,17 +78,9 @@ class Columns:
         )
 
     def recorded(self) -> dict[str, int]:
-        """When each column is recorded, where that is said; a computed one when the latest of its inputs is."""
-        moments = {
-            node["id"]: node["recorded"]
-            for node in self.graph["nodes"]
-            if isinstance(node, dict) and "recorded" in node
-        }
-        for column in self.inputs:
-            known = [moments[base] for base in self.bases(column) if base in moments]
-            if known:
-                moments[column] = max(known)
-        return moments
+        """When each column is recorded, where that is said."""
+        nodes = [node for node in self.graph["nodes"] if isinstance(node, dict)]
+        return {node["id"]: node["recorded"] for node in nodes if "recorded" in node}
 
 
 def columns_of(graph: Graph, derived: Mapping[str, Mapping[str, Any]]) -> Columns:
@@ -107,8 +99,13 @@ def columns_of(graph: Graph, derived: Mapping[str, Mapping[str, Any]]) -> Column
     inputs = {
         name: frozenset(recodes.get(each, each) for each in made_of) for name, made_of in computed.items()
     }
-    nodes = [*graph["nodes"], *({"id": name} for name in inputs)]
     arrows = [{"source": each, "target": name} for name in inputs for each in sorted(inputs[name])]
-    return Columns(
-        {**graph, "nodes": nodes, "edges": [*graph["edges"], *arrows]}, recodes, frozenset(coarse), inputs
-    )
+    grown = {**graph, "edges": [*graph["edges"], *arrows]}
+    team = Columns(grown, recodes, frozenset(coarse), inputs)
+    moments = team.recorded()
+    nodes = list(graph["nodes"])
+    for name in inputs:
+        # A computed column is recorded when the latest of its inputs is.
+        known = [moments[base] for base in team.bases(name) if base in moments]
+        nodes.append({"id": name, "recorded": max(known)} if known else {"id": name})
+    return replace(team, graph={**grown, "nodes": nodes})

@@ -1,16 +1,16 @@
 """What does a sound config hinge on? By making every change to the graph and judging the config anew.
 
 An edge is added, turned or taken away alone; what leaves a graph with a cycle or an arrow back in time is no graph.
+What a config computes keeps its inputs and gets no other cause.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import replace
 from itertools import combinations
 from typing import Any
 
-from tests.review.brute_review import Question, is_sound
+from tests.review.brute_review import Question, reviews_as_sound
 from tests.values import Graph, arrows_of, bidirected_of, node_names, topological_names
 
 Edge = tuple[str, str, str]
@@ -19,22 +19,21 @@ Edge = tuple[str, str, str]
 
 def absent_hinges(question: Question) -> set[Edge]:
     """The absent edges any one of which would make the config anything but sound."""
-    return {
-        edge for edge in _absent_edges(question.graph) if _is_lost(question, with_edge(question.graph, edge))
-    }
+    grown = question.columns.graph
+    return {edge for edge in _absent_edges(question) if _is_lost(question, with_edge(grown, edge))}
 
 
 def reversed_hinges(question: Question) -> set[Edge]:
     """The arrows whose turning round would, named as they are in the graph."""
-    present = set(arrows_of(question.graph))
-    turned = {("directed", a, b) for a, b in present if (b, a) not in present}
-    return {edge for edge in turned if _is_lost(question, with_turned(question.graph, edge))}
+    grown = question.columns.graph
+    turned = {("directed", *ends) for ends in arrows_of(question.graph)}
+    return {edge for edge in turned if _is_lost(question, with_turned(grown, edge))}
 
 
 def removed_hinges(question: Question) -> set[Edge]:
     """The edges whose absence would."""
-    edges = edges_of(question.graph)
-    return {edge for edge in edges if _is_lost(question, without_edges(question.graph, {edge}))}
+    edges, grown = edges_of(question.graph), question.columns.graph
+    return {edge for edge in edges if _is_lost(question, without_edges(grown, {edge}))}
 
 
 def doubtful_verdict(question: Question, doubtful: list[Edge]) -> tuple[str, set[Edge]]:
@@ -42,8 +41,7 @@ def doubtful_verdict(question: Question, doubtful: list[Edge]) -> tuple[str, set
     sound = {}
     for count in range(len(doubtful) + 1):
         for absent in map(frozenset, combinations(doubtful, count)):
-            changed = replace(question, graph=without_edges(question.graph, absent))
-            sound[absent] = is_sound(changed, question.covariates, question.parts)
+            sound[absent] = reviews_as_sound(question, without_edges(question.columns.graph, absent))
     verdict = "always" if all(sound.values()) else "depends" if any(sound.values()) else "never"
     return verdict, {edge for absent in sound for edge in absent if sound[absent] != sound[absent - {edge}]}
 
@@ -82,17 +80,17 @@ def is_faulty(graph: Graph) -> bool:
     return is_back_in_time or topological_names(graph) is None
 
 
-def _absent_edges(graph: Graph) -> Iterator[Edge]:
-    names, present = node_names(graph), edges_of(graph)
-    candidates = [("bidirected", a, b) for a, b in combinations(names, 2)]
-    candidates += [("directed", a, b) for a in names for b in names if a != b]
+def _absent_edges(question: Question) -> Iterator[Edge]:
+    """All edges that might exist: what is computed from others has no other cause, measured or not."""
+    grown = question.columns.graph
+    names, present, computed = node_names(grown), edges_of(grown), set(question.columns.inputs)
+    candidates = [("bidirected", a, b) for a, b in combinations(names, 2) if not {a, b} & computed]
+    candidates += [("directed", a, b) for a in names for b in names if a != b and b not in computed]
     return (edge for edge in candidates if edge not in present)
 
 
-def _is_lost(question: Question, graph: Graph) -> bool:
-    if is_faulty(graph):
-        return False
-    return not is_sound(replace(question, graph=graph), question.covariates, question.parts)
+def _is_lost(question: Question, grown: Graph) -> bool:
+    return not is_faulty(grown) and not reviews_as_sound(question, grown)
 
 
 def _names_of(edge: dict[str, Any], graph: Graph) -> set[Edge]:

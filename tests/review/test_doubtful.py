@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 from collections import Counter
+from collections.abc import Callable
 from typing import Any
 
 import pytest
@@ -14,7 +15,9 @@ from pathgate.review import doubtful as doubtful_module
 from pathgate.review import read_config, review
 from pathgate.review.hinge_document import whole_document
 from tests.review.brute_hinges import Edge, doubtful_verdict
+from tests.review.brute_review import Question
 from tests.review.random_configs import random_config
+from tests.review.random_pipelines import random_pipeline
 from tests.values import Graph, graph_of, node_names
 
 SEEDS = [
@@ -46,10 +49,11 @@ def told(graph: Graph, edge: dict[str, Any]) -> Edge:
 
 
 @pytest.mark.parametrize("seeds", SEEDS)
-def test_verdict_and_edges_are_those_of_trying_every_choice(seeds: range):
+@pytest.mark.parametrize("configs", [random_config, random_pipeline])
+def test_verdict_and_edges_are_those_of_trying_every_choice(seeds: range, configs: Callable[[int], Question]):
     seen: Counter[str] = Counter()
     for seed in seeds:
-        question = random_config(seed)
+        question = configs(seed)
         graph, doubtful = with_doubts(question.graph, random.Random(seed), 4)
         answer = judged(graph, question.config())
         if not doubtful:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import random
 from collections import Counter
+from collections.abc import Callable, Iterator
 from dataclasses import replace
 from typing import Any
 
@@ -15,7 +16,7 @@ from pathgate.graphs import read_graph
 from pathgate.review import hinges as hinges_module
 from pathgate.review import read_config, review
 from pathgate.review.hinge_document import whole_document
-from tests.brute import separated
+from tests.brute import separated, subsets
 from tests.review.brute_hinges import (
     absent_hinges,
     is_faulty,
@@ -23,10 +24,11 @@ from tests.review.brute_hinges import (
     reversed_hinges,
     with_edge,
 )
-from tests.review.brute_review import Question, is_sound
+from tests.review.brute_review import Question, reviews_as_sound, selected_graph
 from tests.review.random_configs import random_config
+from tests.review.random_pipelines import random_pipeline
 from tests.strategies import HOSTILE_NAMES, renamed
-from tests.values import graph_of, measured_names, node_names, topological_names
+from tests.values import Graph, graph_of, node_names, topological_names
 
 SEEDS = [
     pytest.param(range(600), id="600"),
@@ -62,11 +64,18 @@ def with_moments(question: Question, seed: int) -> Question:
     return replace(question, graph=graph)
 
 
-def sound_configs(seeds: range) -> Any:
+def with_its_moments(seed: int) -> Question:
+    """A random config, some nodes recorded at moments half of the time."""
+    return with_moments(random_config(seed), seed)
+
+
+def sound_configs(
+    seeds: range, configs: Callable[[int], Question] = with_its_moments
+) -> Iterator[tuple[int, Question]]:
     """The sound ones among random configs."""
     for seed in seeds:
-        question = with_moments(random_config(seed), seed)
-        if is_sound(question, question.covariates, question.parts):
+        question = configs(seed)
+        if reviews_as_sound(question):
             yield seed, question
 
 
@@ -75,9 +84,10 @@ def edges(listed: list[dict[str, Any]]) -> list[tuple[str, str, str]]:
 
 
 @pytest.mark.parametrize("seeds", SEEDS)
-def test_the_three_lists_are_those_of_making_every_change(seeds: range):
+@pytest.mark.parametrize("configs", [with_its_moments, random_pipeline])
+def test_the_three_lists_are_those_of_making_every_change(seeds: range, configs: Callable[[int], Question]):
     seen: Counter[str] = Counter()
-    for seed, question in sound_configs(seeds):
+    for seed, question in sound_configs(seeds, configs):
         found = hinges_on(question.graph, question.config())
         assert found["complete"]
         expected = (absent_hinges(question), reversed_hinges(question), removed_hinges(question))
@@ -99,39 +109,57 @@ def test_only_a_sound_verdict_hinges_on_anything():
     others = 0
     for seed in range(200):
         question = random_config(seed)
-        if not is_sound(question, question.covariates, question.parts):
+        if not reviews_as_sound(question):
             assert hinges_on(question.graph, question.config()) == nothing, seed
             others += 1
     assert others > 50
 
 
-def test_an_absent_edge_is_exposed_by_an_independency_of_its_ends_that_it_breaks():
+@pytest.mark.parametrize("configs", [with_its_moments, random_pipeline])
+def test_an_absent_edge_is_exposed_by_an_independency_of_its_ends_that_it_breaks(
+    configs: Callable[[int], Question],
+):
     seen: Counter[bool] = Counter()
-    for seed, question in sound_configs(range(1200)):
-        graph, columns = question.graph, measured_names(question.graph)
-        for edge in hinges_on(graph, question.config())["absent_edges"]:
+    for seed, question in sound_configs(range(800), configs):
+        promised = _Promised(question)
+        for edge in hinges_on(question.graph, question.config())["absent_edges"]:
             pair, statement = {edge["source"], edge["target"]}, edge["exposed_by"]
             seen[statement is None] += 1
             if statement is None:
-                given = [name for name in columns if name not in pair]
-                assert not pair <= set(columns) or not _is_separable(graph, *sorted(pair), given), seed
+                assert not promised.is_separable(*sorted(pair)), seed
                 continue
             assert {statement["x"], statement["y"]} == pair
-            assert set(statement["given"]) <= set(columns) - pair
-            ends = (statement["x"], statement["y"], statement["given"])
-            assert separated(graph, *ends), seed
-            assert not separated(with_edge(graph, (edge["kind"], edge["source"], edge["target"])), *ends), (
-                seed
-            )
+            ends = (statement["x"], statement["y"], frozenset(statement["given"]))
+            assert promised.says_something(*ends), seed
+            assert promised.separates(*ends), seed
+            joined = with_edge(promised.selected, (edge["kind"], edge["source"], edge["target"]))
+            assert not promised.separates(*ends, joined), seed
     assert min(seen[True], seen[False]) > 50
 
 
-def _is_separable(graph: Any, one: str, other: str, pool: list[str]) -> bool:
-    choices = range(1 << len(pool))
-    return any(
-        separated(graph, one, other, [name for k, name in enumerate(pool) if chosen >> k & 1])
-        for chosen in choices
-    )
+class _Promised:
+    """What a config's graph promises of pairs of columns on the rows that it keeps, by definition."""
+
+    def __init__(self, question: Question) -> None:
+        self.selected, self._conditioned = selected_graph(question, question.parts)
+        self._columns = question.columns
+        self._varying = question.measured - set(self._conditioned)
+
+    def is_separable(self, one: str, other: str) -> bool:
+        """Does some set of columns separate the two, and leave them both some variation?"""
+        pool = sorted(self._varying - {one, other})
+        return any(
+            self.says_something(one, other, given) and self.separates(one, other, given)
+            for given in subsets(pool)
+        )
+
+    def says_something(self, one: str, other: str, given: frozenset[str]) -> bool:
+        """Are these columns, and do both ends vary once the rest is given?"""
+        settled = self._columns.determined(given | set(self._conditioned))
+        return {one, other} | given <= self._varying and not {one, other} & settled
+
+    def separates(self, one: str, other: str, given: frozenset[str], graph: Graph | None = None) -> bool:
+        return separated(graph or self.selected, one, other, given | set(self._conditioned))
 
 
 def test_renaming_the_nodes_renames_the_hinges_and_changes_nothing_else():

@@ -17,8 +17,9 @@ from pathgate.criteria.errors import OutOfTime
 from pathgate.criteria.exposing import Exposing
 from pathgate.criteria.hinges import Hinges
 from pathgate.criteria.independencies import Independency
+from pathgate.criteria.whole_hinges import WholeHinges
 from pathgate.graphs.graph import CausalGraph, Edge
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Claim
 from pathgate.review.visible import visible
 
@@ -95,15 +96,24 @@ def plain_name(name: str) -> str:
     return name if _PLAIN.issuperset(name) else f'"{visible(name)}"'
 
 
+def _hinges(claim: Claim) -> Hinges | WholeHinges:
+    if claim.population == "whole":
+        return WholeHinges(claim.effect, claim.usable_covariates, claim.known)
+    return Hinges(claim.effect, claim.usable_covariates, claim.asks == "direct")
+
+
 class _Search:
     """Goes through a graph node by node until the time or the room is used up."""
 
     def __init__(self, claim: Claim, deadline: Deadline) -> None:
         self.is_complete = True
         self._graph = claim.graph
+        self._computed = mask_of(claim.inputs)
         self._deadline = deadline
-        self._hinges = Hinges(claim.effect, claim.usable_covariates, claim.asks == "direct")
-        self._exposing = Exposing(claim.graph, deadline, hubs=claim.ends)
+        self._hinges = _hinges(claim)
+        self._exposing = Exposing(
+            claim.graph, deadline, hubs=claim.ends, kept=claim.effect.kept, inputs=claim.inputs
+        )
         self._room = MOST_NAMES
 
     def absent_edges(self) -> Iterator[AbsentEdge]:
@@ -123,7 +133,7 @@ class _Search:
     def turned_arrows(self) -> Iterator[Edge]:
         """The arrows that must not lead the other way round."""
         for source, targets in enumerate(self._graph.child_masks):
-            for target in members(targets):
+            for target in members(targets & ~self._computed):
                 if self._deadline.expired:
                     self.is_complete = False
                     return
@@ -138,14 +148,15 @@ class _Search:
     def _rows(self) -> Iterator[tuple[str, int, int]]:
         """Kind, node and the other ends of the edges that must not exist; bidirected edges at the lower end."""
         graph, hinges = self._graph, self._hinges
-        everything = graph.everything
-        for node in range(graph.size):
-            absent = everything >> (node + 1) << (node + 1) & ~graph.spouse_masks[node]
+        # What is computed from others has no other cause.
+        free = graph.everything & ~self._computed
+        for node in members(free):
+            absent = free >> (node + 1) << (node + 1) & ~graph.spouse_masks[node]
             others = hinges.bidirected_with(node) & absent
             if others:
                 yield "bidirected", node, others
         for node in range(graph.size):
-            absent = everything & ~graph.child_masks[node] & ~(1 << node) & self._not_earlier(node)
+            absent = free & ~graph.child_masks[node] & ~(1 << node) & self._not_earlier(node)
             others = hinges.arrows_from(node, absent)
             if others:
                 yield "directed", node, others & ~self._exposing.above(node)
