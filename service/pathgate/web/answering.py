@@ -10,10 +10,10 @@ from werkzeug.exceptions import ClientDisconnected
 
 from pathgate.criteria.deadline import Deadline
 from pathgate.web.body import read_json
-from pathgate.web.media import check_accept, check_content
+from pathgate.web.media import check_accept, check_content, prefers_lines
 from pathgate.web.operations import Operation, envelope_shape, open_call
 from pathgate.web.problems import Failed, Problem
-from pathgate.web.replies import json_reply
+from pathgate.web.replies import json_reply, lines_reply
 from pathgate.web.settings import Settings
 
 
@@ -24,12 +24,17 @@ def view_of(operation: Operation, settings: Settings) -> Callable[[], Response]:
     def view() -> Response:
         said = request.environ
         check_content(said.get("CONTENT_TYPE"), said.get("HTTP_CONTENT_ENCODING"))
-        check_accept(said.get("HTTP_ACCEPT"))
+        accept = said.get("HTTP_ACCEPT")
+        in_lines = operation.lines if prefers_lines(accept) else None
+        if in_lines is None:
+            check_accept(accept)
         body = _read_body(settings.max_body_bytes)
         # Time spent waiting for the body is the caller's; only what follows is computing.
         deadline = Deadline(settings.time_budget_seconds)
         value = read_json(body, settings.max_depth)
         call = open_call(operation, shape, value, settings, deadline)
+        if in_lines is not None:
+            return lines_reply(in_lines(call))
         answer = operation.answer(call)
         call.refuse_faults()
         return json_reply(answer)

@@ -8,6 +8,7 @@ from werkzeug.http import parse_accept_header, parse_options_header
 from pathgate.web.problems import Failed, Problem
 
 JSON = "application/json"
+LINES = "application/x-ndjson"
 
 
 def check_content(content_type: str | None, encoding: str | None) -> None:
@@ -41,6 +42,14 @@ def check_accept(accept: str | None, offered: str = JSON) -> None:
     if parse_accept_header(accept, MIMEAccept).quality(offered) <= 0:
         detail = f"the answer is {offered}, which the Accept header of the request rules out"
         raise Failed(Problem.of("not-acceptable", detail))
+
+
+def prefers_lines(accept: str | None) -> bool:
+    """Would the caller rather have the answer line by line than as one document?"""
+    if accept is None or LINES not in accept:
+        return False
+    wanted = parse_accept_header(accept, MIMEAccept)
+    return wanted.quality(LINES) > 0 and wanted.best_match([JSON, LINES], JSON) == LINES
 
 
 def _unsupported(detail: str) -> Failed:

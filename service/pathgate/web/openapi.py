@@ -17,6 +17,7 @@ from pathgate.criteria.deadline import Deadline
 from pathgate.graphs.schema import GRAPH_SCHEMA
 from pathgate.version import VERSION
 from pathgate.web.endpoints import OPERATIONS
+from pathgate.web.media import LINES
 from pathgate.web.openapi_gets import get_paths
 from pathgate.web.operations import Example, Operation, envelope_shape, open_call
 from pathgate.web.problem_schema import PROBLEM_SCHEMA, problem_response
@@ -102,6 +103,8 @@ def _post(operation: Operation) -> Json:
     failures = {
         str(status): {"$ref": f"#/components/responses/{_response_name(status)}"} for status in _FAILURES
     }
+    failures |= {str(status): problem_response(status, slugs) for status, slugs in operation.failures.items()}
+    in_lines: Json = {LINES: {"schema": operation.line_schema}} if operation.line_schema else {}
     answers = [_answer_to(operation, example) for example in operation.examples]
     return {
         "operationId": operation.name,
@@ -125,10 +128,11 @@ def _post(operation: Operation) -> Json:
                     "application/json": {
                         "schema": _reference(operation, "Answer"),
                         "examples": _examples(operation, answers),
-                    }
+                    },
+                    **in_lines,
                 },
             },
-            **failures,
+            **dict(sorted(failures.items())),
         },
     }
 

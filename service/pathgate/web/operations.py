@@ -21,6 +21,8 @@ Json = dict[str, Any]
 Schema = Mapping[str, Any]
 
 GRAPH_REFERENCE = {"$ref": "#/components/schemas/Graph"}
+# Stands in the schema of a list whose items are judged one by one: a faulty one is no fault of the request.
+APART = "x-judged-apart"
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,6 +52,9 @@ class Operation:
         response_schema: JSON Schema of the answer.
         examples: at least one.
         answer: computes the answer, whose members leave in the order in which it holds them.
+        lines: computes the answer line by line, for callers that take it as it comes; None where there is no such form.
+        line_schema: JSON Schema of a line.
+        failures: further statuses that it may end in, each with the slugs of its problems.
         components: further schemas that the two refer to as ``#/components/schemas/<Name>``.
     """
 
@@ -60,6 +65,9 @@ class Operation:
     response_schema: Schema
     examples: tuple[Example, ...]
     answer: Callable[[Call], Json]
+    lines: Callable[[Call], Iterator[Json]] | None = None
+    line_schema: Schema | None = None
+    failures: Mapping[int, tuple[str, ...]] = field(default_factory=dict)
     components: Mapping[str, Schema] = field(default_factory=dict)
 
     @property
@@ -156,11 +164,12 @@ def open_call(operation: Operation, shape: Shape, value: Any, settings: Settings
 
 
 def _graphs_taken_out(schema: Any) -> Any:
-    """The schema with every reference to a graph replaced by "anything"."""
+    """The schema with every reference to a graph, and all that is judged apart, replaced by "anything"."""
     if _is_graph(schema):
         return True
     if isinstance(schema, Mapping):
-        return {key: _graphs_taken_out(each) for key, each in schema.items()}
+        held = {key: said for key, said in schema.items() if not (key == "items" and schema.get(APART))}
+        return {key: _graphs_taken_out(each) for key, each in held.items()}
     if isinstance(schema, list | tuple):
         return [_graphs_taken_out(each) for each in schema]
     return schema

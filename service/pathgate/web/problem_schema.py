@@ -85,8 +85,9 @@ def problem_response(status: int, slugs: Sequence[str]) -> Schema:
             "retryable": {"const": types[0].retryable},
         }
     }
-    if status == 400:
-        own["required"] = ["line", "column"]
+    if status == 409:
+        own["properties"]["review"] = {"$ref": "#/components/schemas/Review"}
+    own["required"] = {400: ["line", "column"], 409: ["review"]}.get(status, [])
     return {
         "description": "; ".join(each.title for each in types) + ".",
         "headers": {"X-Request-Id": {"$ref": "#/components/headers/RequestId"}},

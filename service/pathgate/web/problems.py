@@ -73,6 +73,14 @@ _TYPES = (
         " application/json or */*, or leave the header out.",
     ),
     ProblemType(
+        "falls-short",
+        409,
+        "The config falls short of what it claims",
+        "The request asked for the review of a config as a gate, and the config is not sound: its number is not the"
+        " effect that it claims, by an error that no waiver accepts. The member review holds the whole review, with"
+        " what is wrong and what to change. Without as_gate the same review comes with status 200.",
+    ),
+    ProblemType(
         "request-timeout",
         408,
         "The request did not arrive in time",

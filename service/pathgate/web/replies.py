@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import logging
 import re
+from collections.abc import Iterator
 from typing import Any
 from uuid import uuid4
 
@@ -14,7 +15,7 @@ from werkzeug.exceptions import HTTPException
 from pathgate.graphs.errors import PathgateError
 from pathgate.graphs.names import did_you_mean, quoted
 from pathgate.web.json_faults import NotJson
-from pathgate.web.media import JSON
+from pathgate.web.media import JSON, LINES
 from pathgate.web.problems import PROBLEM_TYPES, Failed, Problem, Refused, problem_of, refusal
 from pathgate.web.settings import Settings
 
@@ -28,6 +29,11 @@ _UUID = re.compile(r"[0-9a-f]{8}(?:-[0-9a-f]{4}){3}-[0-9a-f]{12}", re.IGNORECASE
 def json_reply(document: Any, status: int = 200, media_type: str = JSON) -> Response:
     """A reply that holds a JSON document, its members in the order given."""
     return Response(msgspec.json.encode(document), status, content_type=media_type)
+
+
+def lines_reply(documents: Iterator[Any]) -> Response:
+    """A reply that holds one JSON document a line, each sent as soon as it is there."""
+    return Response((msgspec.json.encode(each) + b"\n" for each in documents), content_type=LINES)
 
 
 def request_id() -> str:

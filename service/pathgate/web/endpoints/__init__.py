@@ -10,12 +10,14 @@ from pathgate.web.endpoints import (
     graph_check,
     independencies,
     review,
+    reviews,
     separation,
 )
 from pathgate.web.operations import Operation
 
 OPERATIONS: tuple[Operation, ...] = (
     review.OPERATION,
+    reviews.OPERATION,
     adjustment.OPERATION,
     separation.OPERATION,
     colliders.OPERATION,

@@ -156,7 +156,8 @@ def _check(call: Call, claim: Claim, config: Config, population: Population) -> 
 def _reason(finding: Finding) -> Json:
     """A finding without what only a review has."""
     document = finding_document(finding)
-    del document["severity"], document["pointer"]
+    for member in ("severity", "pointer", "help"):
+        del document[member]
     return document
 
 

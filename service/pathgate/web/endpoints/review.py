@@ -18,6 +18,7 @@ from pathgate.web.endpoints.hinge_schema import HINGE_COMPONENTS
 from pathgate.web.endpoints.reading import graph_of
 from pathgate.web.endpoints.shared_schemas import GRAPH, MEASURE_NEXT, NAME_LIST, PATH_COMPONENTS
 from pathgate.web.operations import Call, Example, Json, Operation
+from pathgate.web.problems import Failed, Problem
 
 
 def answer(call: Call) -> Json:
@@ -36,7 +37,10 @@ def answer(call: Call) -> Json:
         raise AssertionError(message)
     all_columns = call.whole.get("columns", "in-question") == "all"
     judged = review(graph, config, call.deadline, all_columns=all_columns)
-    return whole_document(judged, call.deadline, hinges=call.whole.get("hinges", True))
+    document = whole_document(judged, call.deadline, hinges=call.whole.get("hinges", True))
+    if call.whole.get("as_gate", False) and judged.falls_short:
+        raise Failed(Problem.of("falls-short", judged.summary, review=document))
+    return document
 
 
 _LABELS: dict[str, Any] = {"type": "array", "items": {"$ref": "#/components/schemas/Label"}}
@@ -202,6 +206,13 @@ OPERATION = Operation(
                 "default": True,
                 "description": "whether to say what a sound verdict hinges on",
             },
+            "as_gate": {
+                "title": "true or false",
+                "type": "boolean",
+                "default": False,
+                "description": "answer with status 409 and the review inside where the config is not sound by an error"
+                " that no waiver accepts, for callers that look at the status alone",
+            },
             "columns": {
                 "enum": ["in-question", "all"],
                 "default": "in-question",
@@ -211,7 +222,7 @@ OPERATION = Operation(
         },
         "required": ["graph", "config"],
         "additionalProperties": False,
-        "x-not-yet": ["include", "as_gate"],
+        "x-not-yet": ["include"],
     },
     response_schema={"$ref": "#/components/schemas/Review"},
     components=REVIEW_COMPONENTS,
@@ -272,4 +283,5 @@ OPERATION = Operation(
         ),
     ),
     answer=answer,
+    failures={409: ("falls-short",)},
 )
