@@ -79,6 +79,8 @@ class _Reading:
 
     def _product(self, term: ModelTerm) -> str:
         columns = self._graph.names_of(term.crossed)
+        if not columns:
+            return "it is declared as outside the graph: nothing is known of it"
         if len(columns) < 2:
             return "several terms together describe this column: none of them is its effect alone"
         return f"how the effect of {listed(columns[:1])} differs by {listed(columns[1:])}, and no effect of a column"

@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 from functools import cache
 from typing import Any, Literal, TypeGuard
 
-from pathgate.graphs.errors import Fault
+from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of, members
 from pathgate.graphs.names import quoted
@@ -70,7 +70,7 @@ class Config:
     meta: object = NO_META
     may_read_unmeasured: bool = False
     repeated: tuple[Named, ...] = ()
-    passed_over: tuple[tuple[str, tuple[str | int, ...]], ...] = ()
+    passed_over: tuple[tuple[str, Place], ...] = ()
     accepted: tuple[Acceptance, ...] = ()
     written: Mapping[str, Any] | None = None
 
@@ -143,7 +143,9 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         weighted_by=adjusted["weighted_by"],
         matched_on=adjusted["matched_on"],
         treated=ends.treated,
-        terms=formula.terms if formula else _plain_terms(ends.treated, adjusted["covariates"]),
+        terms=formula.terms
+        if formula
+        else _plain_terms(ends.treated, adjusted["covariates"], names.passed_over),
         rows=rows,
         row_filter_fixed=said.get("row_filter_fixed", False),
         asks=said.get("asks", "total"),
@@ -157,8 +159,13 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     )
 
 
-def _plain_terms(treated: Sequence[Named], covariates: Sequence[Named]) -> tuple[ModelTerm, ...]:
-    return tuple(ModelTerm(named.written, named.place, named.node) for named in (*treated, *covariates))
+def _plain_terms(
+    treated: Sequence[Named], covariates: Sequence[Named], passed_over: Sequence[tuple[str, Place]]
+) -> tuple[ModelTerm, ...]:
+    """The terms of a model without a formula: its treatments, then its covariates, outside ones last."""
+    inside = (ModelTerm(named.written, named.place, named.node) for named in (*treated, *covariates))
+    outside = (ModelTerm(name, place, None) for name, place in passed_over if place[0] == "covariates")
+    return (*inside, *outside)
 
 
 _ADJUSTING = ("covariates", "fixed_effects", "weighted_by", "matched_on")

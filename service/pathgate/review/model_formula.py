@@ -82,7 +82,7 @@ class _Understanding:
         single = mask_of(nodes[0].node for _term, nodes in read if len(nodes) == 1)
         plain = treated | mask_of(node for node in members(single) if node < self._first)
         adjusted = self._adjusted(read, plain)
-        terms = tuple(self._term(term, nodes, read, plain) for term, nodes in read if nodes)
+        terms = tuple(self._term(term, nodes, read, plain) for term, nodes in read)
         covariates = tuple(named for named in adjusted.values() if not treated >> named.node & 1)
         computed = frozenset(self._columns.graph.names[self._first :])
         return ModelFormula(
@@ -179,7 +179,7 @@ class _Understanding:
         return 0 if kept is None else 2 if kept else 1
 
     def _term(self, term: Term, nodes: list[Named], read: Sequence[_Read], plain: int) -> ModelTerm:
-        if self._is_product(nodes, plain):
+        if not nodes or self._is_product(nodes, plain):
             return ModelTerm(term.written, _PLACE, None, self._columns_of(nodes))
         if len(nodes) > 1:
             return ModelTerm(term.written, _PLACE, self._product(term, nodes))

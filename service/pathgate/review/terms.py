@@ -14,7 +14,8 @@ class ModelTerm:
     Attributes:
         written: the term as the config writes it.
         place: where.
-        node: the column that it is, computed ones included; None for a product of columns that stand alone as well.
+        node: the column that it is, computed ones included; None for a product of columns that stand alone as well,
+            and for what is outside the graph.
         crossed: mask of the columns that it is multiplied with, or for a product of all its columns.
         is_bent: do other terms hold further functions of the same column?
     """
