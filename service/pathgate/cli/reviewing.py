@@ -57,17 +57,56 @@ class Question:
     shows_hinges: bool = False
 
 
-def review_files(asked: Question, settings: Settings, tick: Tick = lambda _done, _of: None) -> Run:
+Judging = Callable[[Question, Settings], Judge]
+"""Who is to judge what is asked; raises ``Stopped`` where nobody can."""
+
+
+class Stopped(Exception):
+    """Nothing can be judged, because of what ``where`` is: ``problem`` says why."""
+
+    def __init__(self, problem: Json, where: Found) -> None:
+        super().__init__(problem["detail"])
+        self.problem = problem
+        self.faults = faults_of(problem, where)
+
+
+def local_judge(asked: Question, settings: Settings) -> Judge:
+    """Who judges in this process, against the graph asked for.
+
+    Raises:
+        Stopped: that graph cannot be used.
+    """
+    try:
+        source = read_file(asked.graph, settings)
+    except Unreadable as error:
+        raise Stopped(unreadable_problem(asked.graph, error), Found(asked.graph, unreadable=error)) from None
+    try:
+        graph = read_graph(source, settings)
+    except Unjudgeable as error:
+        raise Stopped(error.problem, Found(asked.graph, source.value, source)) from None
+    return LocalJudge(graph, settings, hinges=asked.hinges, dialect=asked.dialect)
+
+
+def review_files(
+    asked: Question,
+    settings: Settings,
+    tick: Tick = lambda _done, _of: None,
+    judging: Judging = local_judge,
+) -> Run:
     """Review every config that the files hold.
+
+    Args:
+        tick: told how far it is.
+        judging: who judges.
 
     Raises:
         OSError: the baseline that is to be written or pruned cannot be.
     """
     founds = list(find_configs(asked.configs, asked.graph, settings))
     try:
-        judge = _judge(asked, settings)
+        judge = judging(asked, settings)
         baseline = _baseline(asked, settings)
-    except _Stopped as stopped:
+    except Stopped as stopped:
         return _all_skipped(asked, founds, stopped)
     answers = []
     for done, found in enumerate(founds):
@@ -78,27 +117,6 @@ def review_files(asked: Question, settings: Settings, tick: Tick = lambda _done,
     return _weighed(asked, founds, answers, baseline)
 
 
-class _Stopped(Exception):
-    """Nothing can be judged."""
-
-    def __init__(self, problem: Json, where: Found) -> None:
-        super().__init__(problem["detail"])
-        self.problem = problem
-        self.faults = faults_of(problem, where)
-
-
-def _judge(asked: Question, settings: Settings) -> Judge:
-    try:
-        source = read_file(asked.graph, settings)
-    except Unreadable as error:
-        raise _Stopped(unreadable_problem(asked.graph, error), Found(asked.graph, unreadable=error)) from None
-    try:
-        graph = read_graph(source, settings)
-    except Unjudgeable as error:
-        raise _Stopped(error.problem, Found(asked.graph, source.value, source)) from None
-    return LocalJudge(graph, settings, hinges=asked.hinges, dialect=asked.dialect)
-
-
 def _baseline(asked: Question, settings: Settings) -> Baseline | None:
     if asked.baseline is None or asked.write_baseline is not None:
         return None
@@ -106,7 +124,7 @@ def _baseline(asked: Question, settings: Settings) -> Baseline | None:
         return read_baseline(asked.baseline, settings)
     except Unreadable as error:
         problem = unreadable_problem(asked.baseline, error, "The baseline could not be used")
-        raise _Stopped(problem, Found(asked.baseline, unreadable=error)) from None
+        raise Stopped(problem, Found(asked.baseline, unreadable=error)) from None
 
 
 def _answer(found: Found, judge: Judge) -> Json:
@@ -130,7 +148,7 @@ def _weighed(
     if gone:
         Baseline(baseline.path, baseline.known - gone).write()
     return replace(
-        run, notes=(f"{len(gone):,} entries that no longer occur were taken out of the baseline.",)
+        run, notes=(f"Entries that no longer occur were taken out of the baseline: {sum(gone.values()):,}.",)
     )
 
 
@@ -143,11 +161,11 @@ def _noting_down(asked: Question, founds: Sequence[Found], answers: Sequence[Jso
         return replace(run, notes=(note,))
     full = Baseline(empty.path, to_be_known(empty, founds, run.items, asked.fail_on))
     full.write()
-    note = f"The baseline was written: {full.known.total():,} findings are known from now on."
+    note = f"The baseline was written. Findings known from now on: {full.known.total():,}."
     return replace(_weighed(asked, founds, answers, full), notes=(note,))
 
 
-def _all_skipped(asked: Question, founds: Sequence[Found], stopped: _Stopped) -> Run:
+def _all_skipped(asked: Question, founds: Sequence[Found], stopped: Stopped) -> Run:
     problem = plain_problem("Skipped", f"skipped, since nothing could be judged: {stopped.problem['detail']}")
     items = []
     for found in founds:

@@ -10,10 +10,24 @@ from typing import Any
 
 
 def json_bytes(document: Any) -> bytes:
-    """A JSON document as people read it, with a line break at its end."""
+    """A JSON document as people read it, with a line break at its end; what could steer a terminal is escaped.
+
+    >>> json_bytes(["→ \\x9b"])
+    b'[\\n  "\\xe2\\x86\\x92 \\\\u009b"\\n]\\n'
+    """
     from msgspec import json  # noqa: PLC0415 - slow to import, and only what writes needs it
 
-    return json.format(json.encode(document), indent=2) + b"\n"
+    text = json.format(json.encode(document), indent=2).decode()
+    # Outside strings nothing but line breaks is unprintable, so whatever else is stands inside one.
+    lines = (line if line.isprintable() else "".join(map(_escaped, line)) for line in text.split("\n"))
+    return ("\n".join(lines) + "\n").encode()
+
+
+def _escaped(character: str) -> str:
+    if character.isprintable():
+        return character
+    units = character.encode("utf-16-be")
+    return "".join(f"\\u{units[k]:02x}{units[k + 1]:02x}" for k in range(0, len(units), 2))
 
 
 def write_whole(path: Path, content: bytes) -> None:
