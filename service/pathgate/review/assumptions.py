@@ -23,7 +23,7 @@ def assumption_findings(claim: Claim, config: Config) -> Iterator[Finding]:
     for assumed in config.rows.assumed:
         if assumed.kind == "outside":
             continue  # told of with all other names outside the graph
-        columns = claim.graph.names_of(assumed.columns)
+        columns = (*claim.graph.names_of(assumed.columns), *assumed.names)
         yield Finding(
             _RULES[assumed.kind], columns, _message(assumed, columns), assumed.place, assumed.written
         )
