@@ -37,12 +37,12 @@ def factor_of(piece: Piece) -> tuple[tuple[str, ...], Factor]:
         FormulaRefused: it reads no column, or holds what is not read.
     """
     if piece.kind == "name" and not _has_attribute(piece):
-        return (piece.text,), Factor(piece.written, (piece.text,), "column")
+        return ("column", piece.text), Factor(piece.written, (piece.text,), "column")
     expression = parsed(piece.text, piece.written)
     columns = columns_of(expression)
     factor = Factor(piece.written, tuple(dict.fromkeys(columns)), keeps_of(expression, columns))
     name = column_named(expression.tree, expression.names)
-    return (expression.key if name is None else (name,)), factor
+    return (("expression", *expression.key) if name is None else ("column", name)), factor
 
 
 def _has_attribute(piece: Piece) -> bool:

@@ -90,7 +90,8 @@ class _Steps:
         if called is None or called.is_method:
             return False
         if called.name in _MONOTONE | _SAME:
-            return len(call.args) == 1 and not call.keywords
+            has_base = called.name == "log" and len(call.args) == 2 and _is_base(call.args[1])
+            return (len(call.args) == 1 or has_base) and not call.keywords
         return called.name in _CODINGS or (called.name in _BASES and _spans_the_column(call, called.name))
 
     def _arithmetic_keeps(self, left: ast.expr, operator: ast.operator, right: ast.expr) -> bool:
@@ -120,6 +121,11 @@ def _spans_the_column(call: ast.Call, name: str) -> bool:
     if name == "poly":
         degrees += call.args[1:]
     return all(_is_degree(degree) for degree in degrees)
+
+
+def _is_base(node: ast.expr) -> bool:
+    number = _number(node)
+    return number is not None and number > 0 and number != 1
 
 
 def _is_degree(node: ast.expr) -> bool:

@@ -96,6 +96,8 @@ def _plain_string(literal: str, written: str) -> str:
 
 def _refuse_unparsable(skeleton: str, written: str) -> None:
     """``skeleton`` is the text with its strings emptied and its names replaced."""
+    if skeleton.startswith("as."):
+        raise _refused("functions are read as Python's: write C(…) for a column of categories", written)
     word = _UNREAD_WORD.search(skeleton)
     if word:
         raise _refused(f"a factor of a formula cannot hold {word[0]}", written)
@@ -106,6 +108,10 @@ def _refuse_unparsable(skeleton: str, written: str) -> None:
             raise _refused(f"this is not read as a number: {quoted(number)}", written)
     if not unicodedata.is_normalized("NFKC", skeleton):
         raise _refused("Python reads some of these letters as others: write the name in backquotes", written)
+    _refuse_nesting(skeleton, written)
+
+
+def _refuse_nesting(skeleton: str, written: str) -> None:
     depth = deepest = 0
     for character in skeleton:
         depth += (character in "([{") - (character in ")]}")
