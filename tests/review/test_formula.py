@@ -325,6 +325,8 @@ def test_backquotes_take_any_name(name: str) -> None:
         ("refund ~ ``", "cannot be read at"),
         ("refund ~ van `` + locker", "cannot be read at"),
         ("refund ~ van {} + locker", "cannot be read at"),
+        ("refund ~ van + {}{locker}", "cannot be read at"),
+        ("refund ~ van + locker {}", "cannot be read at"),
         ("refund ~ log(``)", "two backquotes"),
         ("refund ~ I(2)", "reads no column"),
         ("refund ~ np.mean(van)", "reads no column"),
