@@ -89,6 +89,17 @@ def test_every_remark_survives_being_said_otherwise(seed):
     assert digest_of(said_otherwise(GRAPH, random.Random(seed))) == digest_of(GRAPH)
 
 
+def _rename(graph: Json, old: str, new: str) -> None:
+    for edge in graph["edges"]:
+        edge.update({end: new for end in ("source", "target") if edge[end] == old})
+
+
+def _timeless(graph: Json) -> None:
+    for node in graph["nodes"]:
+        if isinstance(node, dict):
+            node.pop("recorded", None)
+
+
 GRAPH_CHANGES = {
     "id": lambda g: g["nodes"].__setitem__(3, "late_pick_up") or _rename(g, "late_pickup", "late_pick_up"),
     "one more node": lambda g: g["nodes"].append("promotion"),
@@ -115,17 +126,6 @@ GRAPH_CHANGES = {
     "note on bidirected": lambda g: g["edges"][3].update(note="storms"),
     "edge left out": lambda g: g["edges"].pop(2),
 }
-
-
-def _rename(graph: Json, old: str, new: str) -> None:
-    for edge in graph["edges"]:
-        edge.update({end: new for end in ("source", "target") if edge[end] == old})
-
-
-def _timeless(graph: Json) -> None:
-    for node in graph["nodes"]:
-        if isinstance(node, dict):
-            node.pop("recorded", None)
 
 
 def test_whatever_is_read_of_a_graph_changes_its_digest():
