@@ -33,8 +33,10 @@ def _treatments(claim: Claim, config: Config) -> Iterator[Finding]:
 
 
 def _coarse(claim: Claim, config: Config) -> Iterator[Finding]:
+    keeps_a_part = config.columns.recodes
+    whole = {named.node for named in config.adjusted_for if not keeps_a_part.get(named.written)}
     for named in (*config.adjusted_for, *config.repeated):
-        if config.columns.recodes.get(named.written):
+        if keeps_a_part.get(named.written) and named.node not in whole:
             name = claim.graph.name(named.node)
             message = (
                 f"{listed([named.written])} keeps only a part of {listed([name])}: adjusting for it is partial, and"
@@ -48,7 +50,9 @@ def _redundant(claim: Claim, config: Config) -> Iterator[Finding]:
         others = claim.adjusted_for & ~(1 << named.node)
         if named.node in claim.inputs and determined_by(others, claim.inputs) >> named.node & 1:
             yield _told_redundant(claim, named, claim.graph.names_of(claim.inputs[named.node]))
-    for named in config.repeated:
+    whole = {named.node for named in config.adjusted_for if not config.columns.recodes.get(named.written)}
+    # Of two buckets of a column neither determines the other.
+    for named in (each for each in config.repeated if each.node in whole):
         yield _told_redundant(claim, named, (claim.graph.name(named.node),))
 
 

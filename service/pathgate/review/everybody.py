@@ -12,7 +12,7 @@ from pathgate.criteria.paths import OpenPath, explain_path, find_open_path
 from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.whole import recovers
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.findings import Finding
@@ -71,9 +71,12 @@ def _path_to_selection(claim: Claim) -> OpenPath | None:
 
 
 def _filtered_weights(claim: Claim, config: Config) -> Iterator[Finding]:
-    weights = claim.known & claim.usable_covariates
+    held, known = claim.usable_covariates, claim.known
+    needed = mask_of(
+        node for node in members(known & held) if not recovers(claim.effect, held, known & ~(1 << node))
+    )
     for filter_part in config.rows.filter_parts:
-        for node in members(filter_part.part.columns & weights):
+        for node in members(filter_part.part.columns & needed):
             name = claim.graph.name(node)
             message = (
                 f"The row filter reads {listed([name])}, which has to be weighted by how it is distributed in"

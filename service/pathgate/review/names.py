@@ -63,19 +63,26 @@ class NameReader:
 
     def read_each(self, listed: Sequence[tuple[str, Place]]) -> tuple[Named, ...]:
         """The same for names that are not next to each other in the input."""
-        found: dict[int, Named] = {}
+        found: dict[int, list[Named]] = {}
         for name, at in listed:
             node = self.find(name)
             if node is None:
                 self._unknown(name, at)
-            elif node not in found:
-                found[node] = Named(node, at, name)
-            elif name in self.recodes or found[node].written in self.recodes:
-                self.repeated.append(Named(node, at, name))
+                continue
+            before = found.setdefault(node, [])
+            is_bare = name not in self.recodes and any(each.written not in self.recodes for each in before)
+            if not is_bare and all(each.written != name for each in before):
+                before.append(Named(node, at, name))
             elif self.refuse_repeats:
                 detail = f"the column {quoted(self.graph.name(node))} is named twice"
                 self.faults.append(Fault("invalid-request", at, detail, (self.graph.name(node),)))
-        return tuple(found.values())
+        return tuple(self._fullest(several) for several in found.values())
+
+    def _fullest(self, several: list[Named]) -> Named:
+        """The name that keeps most of a column; the others only repeat it."""
+        fullest = min(several, key=lambda named: self.recodes.get(named.written, False))
+        self.repeated.extend(named for named in several if named is not fullest)
+        return fullest
 
     def mask(self, value: str | Sequence[str], place: Place) -> int:
         """The same as a mask, for sets that are only computed with."""

@@ -8,6 +8,7 @@ from pathgate.criteria.deadline import Deadline
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
+from pathgate.review.determined import determined_by
 from pathgate.review.findings import Finding
 from pathgate.review.wording import capital, listed, part_text, silent_text
 
@@ -71,10 +72,11 @@ def _treatments(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Fi
 def _rows(claim: Claim, config: Config) -> Iterator[Finding]:
     graph = claim.graph
     below = descendants(graph, claim.treatments)
+    alone = determined_by(claim.treatments, claim.inputs)
     for filter_part in (*config.rows.filter_parts, *config.rows.silent_parts):
         part = filter_part.part
-        # A filter on treatments alone narrows their range and says nothing else about who is kept.
-        if part.columns & below and part.columns & ~claim.treatments:
+        # A filter on treatments, or what is computed from them alone, narrows their range and says nothing else.
+        if part.columns & below and part.columns & ~alone:
             columns = graph.names_of(part.columns & below)
             is_silent = any(filter_part is silent for silent in config.rows.silent_parts)
             who = f"Who is kept by {part_text(part.written)} depends on the treatment"
