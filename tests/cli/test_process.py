@@ -33,7 +33,12 @@ HEAVY = [
     "rich",
     "ruamel",
     "jsonschema_rs",
+    "sqlglot",
+    "rapidfuzz",
+    "pandas",
+    "xml",
 ]
+COMMANDS = ["review", "check", "explain", "new", "serve"]
 
 
 def run(*words: str, **environment: str) -> subprocess.CompletedProcess[str]:
@@ -47,7 +52,7 @@ def run(*words: str, **environment: str) -> subprocess.CompletedProcess[str]:
     )
 
 
-@pytest.mark.parametrize("words", [["--help"], ["review", "--help"], ["serve", "--help"], ["--version"]])
+@pytest.mark.parametrize("words", [["--help"], ["--version"], *([name, "--help"] for name in COMMANDS)])
 def test_help_is_answered_without_the_weight_of_the_checks(words):
     program = (
         "import sys\nfrom pathgate.cli.main import main\n"
@@ -57,6 +62,11 @@ def test_help_is_answered_without_the_weight_of_the_checks(words):
     done = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True)
     assert done.stdout
     assert done.stderr == "[]\n"
+
+
+def test_every_command_is_in_the_help():
+    listed = CliRunner().invoke(main, ["--help"]).output.split("Commands:")[1]
+    assert sorted(line.split()[0] for line in listed.strip().splitlines()) == sorted(COMMANDS)
 
 
 def test_the_version_is_that_of_the_package():
