@@ -60,8 +60,14 @@ class _Reading:
         self._claim = claim
         self._graph = claim.graph
         self._kept = claim.effect.kept
-        self._regressors = claim.usable_covariates | mask_of(named.node for named in config.treated)
+        self._terms = claim.usable.covariates | mask_of(named.node for named in config.treated)
+        absorbing = claim.usable.fixed_effects
+        self._absorbed = absorbing | claim.absorbed(absorbing)
         self._outcomes = listed(self._graph.names_of(claim.outcomes))
+        missing = self._graph.names_of(claim.ends & ~self._graph.measured)
+        self._unfit = (
+            f"the platform does not hold {listed(missing)}, so no such model can be fitted" if missing else ""
+        )
 
     def read(self, term: ModelTerm) -> tuple[ReadsAs, str]:
         """How one term reads, and why."""
@@ -86,10 +92,12 @@ class _Reading:
         return f"how the effect of {listed(columns[:1])} differs by {listed(columns[1:])}, and no effect of a column"
 
     def _column(self, node: int) -> tuple[ReadsAs, str]:
-        if not self._graph.measured >> node & 1 or self._claim.outcomes >> node & 1:
-            return "neither", "the model cannot have this column beside its outcome"
+        if self._unfit:
+            return "neither", self._unfit
         causes = self._bases(node)
-        others = self._regressors & ~(1 << node)
+        if (1 << node | causes) & ~self._graph.measured or self._claim.outcomes & (1 << node | causes):
+            return "neither", "the platform does not hold it, or it is the outcome itself"
+        others = self._terms & ~(1 << node) | self._absorbed
         stuck = self._without_variation(node, causes, others)
         if stuck:
             return "neither", stuck
@@ -116,6 +124,8 @@ class _Reading:
     def _without_variation(self, node: int, causes: int, others: int) -> str:
         """Why nothing of the column is left once the other terms are held fixed; empty where something is."""
         shared = self._graph.names_of(causes & others)
+        if 1 << node & others:
+            return "the fixed effects absorb it, so nothing of it is left to vary"
         if shared:
             return f"it is computed from {listed(shared)}, which the model holds fixed as well"
         inputs = self._claim.inputs
