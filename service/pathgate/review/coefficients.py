@@ -129,11 +129,13 @@ class _Reading:
         if shared:
             return f"it is computed from {listed(shared)}, which the model holds fixed as well"
         inputs = self._claim.inputs
-        if inputs and determined_by(others, inputs) & (causes | 1 << node):
-            return "the other terms determine it, so nothing of it is left to vary"
-        if inputs and self._claim.only_varied_by(causes, others):
-            stuck = listed(self._graph.names_of(self._claim.only_varied_by(causes, others)))
-            return f"{stuck} is computed from it and held fixed, so nothing of it is left to vary"
+        held = others | self._kept.conditioned & self._graph.everything
+        if inputs and determined_by(held, inputs) & (causes | 1 << node):
+            return "what else is held fixed determines it, so nothing of it is left to vary"
+        stuck = self._claim.only_varied_by(causes, held)
+        if stuck:
+            names = listed(self._graph.names_of(stuck))
+            return f"{names} is computed from it and held fixed, so nothing of it is left to vary"
         return ""
 
     def _total(self, effect: Effect) -> str:
