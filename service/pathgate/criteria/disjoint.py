@@ -19,6 +19,8 @@ _X, _Y = -1, -2
 def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, removed: int) -> int | None:
     """The smallest set of choosable nodes without which nothing leads from x to y, nearest to x.
 
+    Something must lead from x to y as it is; else the answer means nothing.
+
     Args:
         cliques: the augmented graph.
         xs, ys: what is to be parted.
@@ -40,6 +42,8 @@ def fewest_nodes_between(cliques: Cliques, xs: int, ys: int, choosable: int, rem
     near_y ^= inevitable
     if not near_x or not near_y:
         return inevitable
+    if not inevitable and near_x & (near_x - 1) == 0:
+        return near_x
     paths = _Paths(ground, near_x, near_y, xs | ys | removed | inevitable)
     paths.take_short_ones()
     # As many paths as nodes nearest to x: these are the smallest set, and no other is as near.
@@ -67,11 +71,15 @@ class _Ground:
 
     def beside(self, nodes: int) -> int:
         """What one step leads to from some nodes, these included."""
+        cliques = self.cliques
+        children, relevant, known = cliques.graph.child_masks, cliques.relevant, cliques.known
         near = 0
         while nodes:
             lowest = nodes & -nodes
             nodes ^= lowest
-            near |= self.cliques.next_to(lowest.bit_length() - 1, 0)[0]
+            # As ``Cliques.next_to`` does it, put on the spot for its speed.
+            heads = children[lowest.bit_length() - 1] & relevant | lowest
+            near |= known.get(heads) or cliques.look_at(heads, 0)[0]
         return near | self.past(near & self.fixed) if near & self.fixed else near
 
     def past(self, fixed: int) -> int:
@@ -118,44 +126,46 @@ class _Paths:
 
     def take_short_ones(self) -> None:
         """Begin with paths of two and three nodes, which need no search; later ones reroute what is in the way."""
-        beside, open_ends = self.ground.beside, self.next_to_y
+        beside, ends, starts = self.ground.beside, self.next_to_y, self.next_to_x
         waiting = list[tuple[int, int]]()
-        for first in members(self.next_to_x):
-            near = beside(1 << first)
-            if near & open_ends:
-                last = near & open_ends & -(near & open_ends)
-                open_ends ^= last
-                self._take(first, last.bit_length() - 1)
+        while starts:
+            first = starts & -starts
+            starts ^= first
+            near = beside(first)
+            found = near & ends
+            if found:
+                ends ^= found & -found
+                self._take(first, found & -found)
             else:
                 waiting.append((first, near))
-        if not open_ends:
-            return
-        between = beside(open_ends) & ~(self.closed | self.ground.fixed | self.next_to_x)
+        between = beside(ends) & ~(self.closed | self.ground.fixed | self.next_to_x)
         for first, near in waiting:
             middle = near & between & ~self.passed
-            if middle:
-                middle &= -middle
-                last = beside(middle) & open_ends
-                if last:
-                    last &= -last
-                    open_ends ^= last
-                    self._take(first, middle.bit_length() - 1, last.bit_length() - 1)
+            while middle and ends:
+                found = beside(middle & -middle) & ends
+                if found:
+                    ends ^= found & -found
+                    self._take(first, middle & -middle, found & -found)
+                    break
+                middle &= middle - 1
 
     def _take(self, *path: int) -> None:
-        """Add a path that no other is in the way of."""
+        """Add a path, given by masks, that no other is in the way of."""
         previous = _X
-        for node in path:
+        for mask in path:
+            node = mask.bit_length() - 1
             self.before[node] = previous
-            if previous != _X:
-                self.after[previous] = node
-            self.passed |= 1 << node
+            self.after[previous] = node
+            self.passed |= mask
             previous = node
         self.after[previous] = _Y
+        del self.after[_X]
         self.count += 1
 
     def search(self) -> int | None:
         """Look for one more path; the last choosable node on it, or None where there is none."""
         cliques, fixed, passed = self.ground.cliques, self.ground.fixed, self.passed
+        children, relevant, known = cliques.graph.child_masks, cliques.relevant, cliques.known
         ends = self.next_to_y & ~passed
         goals = (self.ground.beside(ends) | ends) & ~passed
         self.steps = steps = list[tuple[int, int]]()
@@ -178,7 +188,10 @@ class _Paths:
                 lowest = leaving & -leaving
                 leaving ^= lowest
                 origin = lowest.bit_length() - 1
-                near, opened = cliques.next_to(origin, opened)
+                heads = children[origin] & relevant | lowest
+                near = known.get(heads)
+                if near is None:
+                    near, opened = cliques.look_at(heads, opened)
                 new = near & ~entered
             if not new:
                 self.entered, self.left = entered, left

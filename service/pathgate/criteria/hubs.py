@@ -105,7 +105,7 @@ class Hubs:
         return mask_of(inside), mask_of(stopped)
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)
 class Cliques:
     """The augmented graph of an ancestral set of a small graph, as masks; a clique goes by a node of its district.
 
@@ -162,9 +162,9 @@ class Cliques:
         """
         heads = self.graph.child_masks[node] & self.relevant | 1 << node
         found = self.known.get(heads)
-        return (found, opened) if found is not None else self._look_at(heads, opened)
+        return (found, opened) if found is not None else self.look_at(heads, opened)
 
-    def _look_at(self, heads: int, opened: int) -> tuple[int, int]:
+    def look_at(self, heads: int, opened: int) -> tuple[int, int]:
         """The same, for the cliques that hold these nodes together with their parents."""
         cliques = heads
         if self.district_of:

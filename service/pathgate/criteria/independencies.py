@@ -61,8 +61,9 @@ def smallest(pairs: Pairs, first: int, second: int) -> Independency:
         return Independency(first, 1 << second, 0)
     if kept.graph.is_small:
         # What Separators would find, without finding out again what is known of the pair.
-        cliques = Cliques.within(kept.graph, pairs.above(first) | pairs.above(second), pairs.known)
-        choosable = pairs.widest(first, second)
+        above = pairs.above(first) | pairs.above(second)
+        cliques = Cliques.within(kept.graph, above, pairs.known)
+        choosable = above & pairs.columns & ~(1 << first | 1 << second)
         found = fewest_nodes_between(cliques, 1 << first, 1 << second, choosable, kept.conditioned)
     else:
         found = separators_of(pairs, first, second).smallest()

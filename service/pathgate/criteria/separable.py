@@ -89,8 +89,23 @@ class Pairs:
         if found is None:
             # Asked about pair by pair: the last node's answer is all that is worth keeping.
             self._joined.clear()
-            conditions = Conditions.on(self.kept.graph, self.kept.conditioned)
-            found = self._joined[node] = connected(self.kept.graph, 1 << node, conditions)
+            if self.kept.conditioned:
+                conditions = Conditions.on(self.kept.graph, self.kept.conditioned)
+                found = connected(self.kept.graph, 1 << node, conditions)
+            else:
+                found = self._below_the_same(self.above(node))
+            self._joined[node] = found
+        return found
+
+    def _below_the_same(self, nodes: int) -> int:
+        """What lies below some nodes, or below the other ends of their bidirected edges."""
+        graph = self.kept.graph
+        found = 0
+        for node in members(nodes):
+            if not found >> node & 1:
+                found |= self.below[node]
+            for spouse in graph.spouses(node):
+                found |= self.below[spouse]
         return found
 
     def adjacent(self, node: int) -> int:
@@ -121,10 +136,21 @@ class Pairs:
 
     def above(self, node: int) -> int:
         """A node, its ancestors, and those of what the kept rows condition on."""
+        if self.kept.graph.is_small:
+            return self._all_above[node]
         found = self._above.get(node)
         if found is None:
             found = self._above[node] = ancestors(self.kept.graph, 1 << node) | self._above_kept
         return found
+
+    @cached_property
+    def _all_above(self) -> list[int]:
+        graph = self.kept.graph
+        above = [1 << node | self._above_kept for node in range(graph.size)]
+        for node in graph.topological_order:
+            for parent in graph.parents(node):
+                above[node] |= above[parent]
+        return above
 
     @cached_property
     def _above_kept(self) -> int:
