@@ -40,8 +40,8 @@ FILTERED_YAML = """\
     weather > 3
     AND ticket = 1
 """
-# Biased by what somebody has accepted, as a review that knows waivers marks it.
-WAIVER = {"why": "the ticket desk was closed", "owner": "refunds team", "until": "2027-01-31"}
+# What a config says of a finding that its team accepts.
+WAIVER = {"why": "the ticket desk was closed", "owner": "refunds team", "until": "2999-01-31"}
 
 COMMAND = [sys.executable, "-c", "from pathgate.cli.main import main; main(prog_name='pathgate')"]
 # Without what would change what is printed.

@@ -16,10 +16,9 @@ from click.testing import CliRunner
 from markdown_it import MarkdownIt
 
 from pathgate.cli.choices import FORMS
-from pathgate.cli.judging import Judge
 from pathgate.cli.main import main
 from pathgate.cli.rendering import rendered
-from pathgate.cli.reviewing import Question, local_judge, review_files
+from pathgate.cli.reviewing import Question, review_files
 from pathgate.cli.run import Run
 from pathgate.review.rules import RULES
 from pathgate.web.settings import Settings
@@ -31,23 +30,9 @@ CONFIGS = [
     BIASED,
     UNANSWERABLE,
     {**BIASED, "name": "known one"},
-    {**BIASED, "name": "waived one"},
+    {**BIASED, "name": "waived one", "accept": [{"rule": "covariate-on-collider", **WAIVER}]},
     MISNAMED,
 ]
-
-
-def waiving(asked: Question, settings: Settings) -> Judge:
-    """Judges, and marks as accepted what a config of a certain name has wrong."""
-    inner = local_judge(asked, settings)
-
-    def judge(config: Any) -> dict[str, Any]:
-        answer = inner(config)
-        if config["name"] == "waived one":
-            for finding in answer["review"]["findings"]:
-                finding["accepted"] = WAIVER
-        return answer
-
-    return judge
 
 
 @pytest.fixture
@@ -73,7 +58,7 @@ def run(here: Path) -> Run:
     gone = {"rule": "no-arrow", "file": "all.json", "config": "sound one", "columns": []}
     write(here, "base.json", {"pathgate_baseline": 1, "findings": [*entries, gone]})
     asked = asking("all.json", "filtered.yaml", "broken.json", baseline=Path("base.json"))
-    return review_files(asked, Settings(), judging=waiving)
+    return review_files(asked, Settings())
 
 
 def sarif(run: Run) -> dict[str, Any]:

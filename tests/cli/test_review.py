@@ -14,7 +14,7 @@ from pathgate.demo import demo_configs, demo_graph
 from pathgate.graphs import read_graph
 from pathgate.review import read_config, review_document
 from pathgate.review import review as review_one
-from tests.cli.shelf import BIASED, GRAPH, MISNAMED, SOUND, UNANSWERABLE, write
+from tests.cli.shelf import BIASED, GRAPH, MISNAMED, SOUND, UNANSWERABLE, WAIVER, write
 
 
 def pathgate(*words: str, **environment: str) -> Result:
@@ -300,3 +300,34 @@ def test_a_call_that_means_nothing_is_said_in_one_line(words):
     assert (result.exit_code, result.stdout) == (2, "")
     assert len(result.stderr.splitlines()) == 1
     assert result.stderr.endswith("(see pathgate review --help)\n")
+
+
+def test_a_waiver_counts_for_the_status_and_never_for_the_verdict(tmp_path, graph):
+    waiver = {"rule": "covariate-on-collider", **WAIVER}
+    accepted = write(tmp_path, "a.json", {**BIASED, "accept": [waiver]})
+    result = pathgate(graph, accepted)
+    assert result.exit_code == 0
+    assert result.stdout.startswith("BIASED  biased one\n")
+    assert f"  accepted error covariate-on-collider at {accepted}:1:" in result.stdout
+    why = "- Accepted by refunds team until 2999-01-31: the ticket desk was closed"
+    assert f"  {why}\n" in result.stdout
+    assert result.stdout.splitlines()[-1].endswith("Errors: 0 new, 0 known, 1 accepted.")
+
+
+@pytest.mark.parametrize(
+    ("change", "rule"),
+    [
+        ({"until": "2020-01-31"}, "waiver-expired"),
+        ({"why": ""}, "waiver-without-reason"),
+        ({"columns": "weather"}, "waiver-unused"),
+        ({"rule": "treatment-fixed"}, "waiver-not-allowed"),
+    ],
+)
+def test_a_waiver_that_does_not_hold_accepts_nothing_and_is_told(tmp_path, graph, change, rule):
+    waiver = {"rule": "covariate-on-collider", **WAIVER, **change}
+    config = write(tmp_path, "a.json", json.dumps({**BIASED, "accept": [waiver]}, indent=1))
+    result = pathgate(graph, config)
+    assert result.exit_code == 1
+    line = 1 + Path(config).read_text("utf-8").splitlines().index("  {")
+    assert f"warning {rule} at {config}:{line}:3: " in result.stdout
+    assert pathgate(graph, config, "--fail-on", "warning").stdout.splitlines()[-1].endswith("0 accepted.")

@@ -2,22 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
 from pathgate.cli.files import Source
 from pathgate.cli.finding import Json, problem_document
-from pathgate.criteria.deadline import Deadline
-from pathgate.graphs.errors import Fault, PathgateError
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.node_list import json_type
 from pathgate.graphs.reading import examine_graph
-from pathgate.review.config import read_config
-from pathgate.review.errors import InvalidConfig
-from pathgate.review.hinge_document import whole_document
-from pathgate.review.review import review
-from pathgate.web.problems import problem_of, refusal
+from pathgate.web.judging import judged
+from pathgate.web.problems import refusal
 from pathgate.web.settings import Settings
 
 Judge = Callable[[Any], Json]
@@ -48,28 +42,11 @@ class LocalJudge:
     hinges: bool = False
     dialect: str | None = None
 
-    def __call__(self, value: Any) -> Json:
+    def __call__(self, config: Any) -> Json:
         """The review of a config, or its problem."""
-        try:
-            return {"review": self._review(value)}
-        except InvalidConfig as error:
-            problem = refusal([fault.below(("config",)) for fault in error.faults])
-        except PathgateError as error:
-            known = problem_of(error)
-            if known is None:
-                raise
-            problem = known
-        return {"problem": problem_document(problem, self.settings)}
-
-    def _review(self, value: Any) -> Json:
-        if not isinstance(value, Mapping):
-            detail = f"a config is an object, not {json_type(value)}"
-            raise InvalidConfig([Fault("invalid-request", (), detail)])
-        if self.dialect is not None and "dialect" not in value:
-            value = {**value, "dialect": self.dialect}
-        deadline = Deadline(self.settings.time_budget_seconds)
-        answer = review(self.graph, read_config(value, self.graph), deadline)
-        return whole_document(answer, deadline, hinges=self.hinges)
+        if self.dialect is not None and isinstance(config, dict) and "dialect" not in config:
+            config = {**config, "dialect": self.dialect}
+        return judged(config, self.graph, self.settings, hinges=self.hinges)
 
 
 def read_graph(source: Source, settings: Settings) -> CausalGraph:

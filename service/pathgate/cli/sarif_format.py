@@ -14,6 +14,7 @@ from typing import Any
 from urllib.parse import quote
 
 from pathgate.cli.choices import NOT_JUDGED_MEANS, NOT_JUDGED_RULE
+from pathgate.cli.explaining import rule_text
 from pathgate.cli.run import Fault, Item, Place, Run, Weighed
 from pathgate.cli.wording import counts_text, gone_text, waiver_text
 from pathgate.cli.writing import json_bytes
@@ -48,8 +49,7 @@ def run_sarif(run: Run, root: Path | None = None) -> bytes:
 
 
 def _rule(name: str) -> Json:
-    rule = RULES[name]
-    return _described(name, rule.meaning, rule.severity)
+    return _described(name, RULES[name].meaning, RULES[name].severity)
 
 
 def _described(name: str, meaning: str, level: str) -> Json:
@@ -58,7 +58,7 @@ def _described(name: str, meaning: str, level: str) -> Json:
         "id": name,
         "name": title,
         "shortDescription": {"text": meaning},
-        "help": {"text": f"{meaning} (pathgate explain {name})"},
+        "help": {"text": rule_text(name)},
         "defaultConfiguration": {"level": level},
     }
 
