@@ -14,7 +14,7 @@ from tests.bench.adjusting import checking_a_set, first_hundred_sets, first_set_
 from tests.bench.harness import Figure, table
 from tests.bench.in_process import many_statements, single_verdicts, whole_large_request
 from tests.bench.over_http import memory_after_a_large_request, small_review
-from tests.bench.promising import smallest_for_all_pairs
+from tests.bench.promising import first_page_of_a_large_graph, smallest_for_all_pairs
 from tests.bench.reviewing import one_review
 
 BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
@@ -26,6 +26,7 @@ BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "first-set": first_set_of_very_many,
     "check-a-set": checking_a_set,
     "all-pairs": smallest_for_all_pairs,
+    "first-page": first_page_of_a_large_graph,
     "one-review": one_review,
     "memory": memory_after_a_large_request,
 }
