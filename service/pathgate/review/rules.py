@@ -1,9 +1,15 @@
-"""The rules that a review can find broken: their names, how grave each is, and what each means."""
+"""The rules that a review can find broken: their names, how grave each is, and what each means.
+
+What a reader needs beside that to act on a finding stands in ``error_texts`` and ``notice_texts``, by name.
+"""
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
+
+from pathgate.review.error_texts import ERROR_TEXTS
+from pathgate.review.notice_texts import NOTICE_TEXTS
 
 Severity = Literal["error", "warning", "note"]
 
@@ -16,17 +22,26 @@ class Rule:
         name: stable, kebab-case.
         severity: with an ``error`` the config is not sound.
         meaning: one sentence.
+        why_it_matters, example, what_to_do: see ``RuleText``; names of columns stand in backticks.
         may_be_waived: can a team accept it? Not where no number could mean anything.
     """
 
     name: str
     severity: Severity
     meaning: str
+    why_it_matters: str = ""
+    example: str = ""
+    what_to_do: str = ""
     may_be_waived: bool = True
 
 
+def _with_texts(rule: Rule) -> Rule:
+    texts = (ERROR_TEXTS if rule.severity == "error" else NOTICE_TEXTS).get(rule.name)
+    return replace(rule, **texts._asdict()) if texts else rule
+
+
 RULES: dict[str, Rule] = {
-    rule.name: rule
+    rule.name: _with_texts(rule)
     for rule in (
         Rule(
             "missing-covariate",
