@@ -91,22 +91,96 @@ def test_each_fault_is_found_at_its_place(change: dict[str, Any], faults: list[t
 
 
 @pytest.mark.parametrize(
-    "member",
+    ("change", "faults"),
     [
-        *("formula", "derived", "rows_exist_because", "missing_because", "fixed_effects", "weighted_by"),
-        *("matched_on", "outside_graph", "accept"),
+        ({"fixed_effects": "depto"}, [(("fixed_effects",), "unknown-node")]),
+        ({"weighted_by": ["weather", "wether"]}, [(("weighted_by", 1), "unknown-node")]),
+        ({"matched_on": ["depot", "site"]}, [(("matched_on", 1), "invalid-request")]),
+        ({"rows_exist_because": ["mood", "mod"]}, [(("rows_exist_because", 1), "unknown-node")]),
+        (
+            {"missing_because": {"wether": [], "weather": ["mood", "depo"]}},
+            [
+                (("missing_because", "wether"), "unknown-node"),
+                (("missing_because", "weather", 1), "unknown-node"),
+            ],
+        ),
+        ({"missing_because": ["weather"]}, [(("missing_because",), "invalid-request")]),
+        ({"measured_everywhere": ["weather", "mood"]}, [(("measured_everywhere", 1), "invalid-request")]),
+        ({"population": "whole", "asks": "direct"}, [(("population",), "invalid-request")]),
+        ({"outside_graph": ["zone", "site"]}, [(("outside_graph", 1), "invalid-request")]),
+        ({"outside_graph": "zone", "treatment": "zone"}, [(("treatment",), "unknown-node")]),
+        ({"dialect": "parcel"}, [(("dialect",), "invalid-request")]),
     ],
 )
-def test_what_is_not_built_yet_is_refused_by_name(member: str):
-    assert faults_of(GOOD | {member: []}) == {((member,), "not-supported")}
+def test_each_fault_of_what_pipelines_do_is_found_at_its_place(
+    change: dict[str, Any], faults: list[tuple[tuple, str]]
+):
+    assert faults_of(GOOD | change) == set(faults)
 
 
-def test_other_things_not_built_yet_are_refused_and_not_misread():
-    for member, said in (("dialect", "parcel"), ("population", "whole")):
-        with pytest.raises(InvalidConfig) as caught:
-            read_config(GOOD | {member: said}, GRAPH)
-        (fault,) = caught.value.faults
-        assert fault.place == (member,)
+@pytest.mark.parametrize(
+    ("derived", "change", "faults"),
+    [
+        ({"late": {"from": "depot"}}, {}, [(("derived", "late"), "invalid-request")]),
+        ({"site": {"recodes": "depot"}}, {}, [(("derived", "site"), "invalid-request")]),
+        ({"": {"from": "depot"}}, {}, [(("derived", ""), "invalid-request")]),
+        ({"a": {"from": "depo"}}, {"covariates": "a"}, [(("derived", "a", "from"), "unknown-node")]),
+        ({"a": {"recodes": "depo"}}, {}, [(("derived", "a", "recodes"), "unknown-node")]),
+        ({"a": {"from": ["depot", "site"]}}, {}, [(("derived", "a", "from", 1), "invalid-request")]),
+        ({"a": {"from": "b"}, "b": {"from": "a"}}, {}, [(("derived", "a"), "invalid-request")]),
+        ({"a": {"from": []}}, {}, [(("derived", "a", "from"), "invalid-request")]),
+        ({"a": {"from": "depot", "coarse": True}}, {}, [(("derived", "a", "coarse"), "invalid-request")]),
+        ({"a": {"from": "depot"}}, {"outside_graph": "a"}, [(("derived", "a"), "invalid-request")]),
+        (
+            {"a": {"from": ["late", "refund"]}},
+            {"treatment": "a"},
+            [(("outcome",), "invalid-request")],
+        ),
+        ({"a": {"recodes": "late"}}, {"outcome": "a"}, [(("outcome",), "invalid-request")]),
+        (
+            {"a": {"from": ["late", "depot"]}},
+            {"treatment": "a", "asks": "direct"},
+            [(("treatment",), "invalid-request")],
+        ),
+        (
+            {"a": {"recodes": "depot"}},
+            {"covariates": ["a", "depot", "a"]},
+            [(("covariates", 2), "invalid-request")],
+        ),
+    ],
+)
+def test_each_fault_of_a_derived_column_is_found_at_its_place(
+    derived: dict[str, Any], change: dict[str, Any], faults: list[tuple[tuple, str]]
+):
+    assert faults_of(GOOD | {"derived": derived} | change) == set(faults)
+
+
+def test_derived_columns_are_nodes_and_recodes_are_names_whatever_their_order():
+    derived = {
+        "score": {"from": ["log_weather", "site"]},
+        "log_weather": {"recodes": "wet"},
+        "wet": {"recodes": "weather", "coarse": True},
+        "grade": {"from": "score"},
+    }
+    config = read_config(GOOD | {"derived": derived, "covariates": ["grade", "log_weather"]}, GRAPH)
+    graph = config.columns.graph
+    assert graph.names[: GRAPH.size] == GRAPH.names
+    assert sorted(graph.names[GRAPH.size :]) == ["grade", "score"]
+    assert graph.names_of(graph.parent_masks[graph.index["score"]]) == ("weather", "depot")
+    assert graph.names_of(graph.parent_masks[graph.index["grade"]]) == ("score",)
+    assert [graph.name(named.node) for named in config.covariates] == ["grade", "weather"]
+    assert config.columns.recodes == {"wet": True, "log_weather": True}
+
+
+def test_a_treatment_computed_from_others_stands_for_them():
+    derived = {"score": {"from": ["late", "weather"]}}
+    config = read_config(GOOD | {"derived": derived, "treatment": ["score", "depot"]}, GRAPH)
+    named = [(GRAPH.name(each.node), each.place, each.written) for each in config.treatments]
+    assert named == [
+        ("late", ("treatment", 0), "score"),
+        ("weather", ("treatment", 0), "score"),
+        ("depot", ("treatment", 1), "depot"),
+    ]
 
 
 @pytest.mark.parametrize("missing", ["treatment", "outcome", "covariates"])
@@ -172,13 +246,18 @@ def test_other_names_of_a_column_mean_that_column():
     )
     assert [named.node for named in (*config.treatments, *config.covariates)] == [0, 3]
     assert [part.part.columns for part in config.rows.filter_parts] == [1 << 0, 1 << 3]
-    assert [part.part.written for part in config.rows.filter_parts] == [["deliveries.late"], {"columns": "site"}]
+    assert [part.part.written for part in config.rows.filter_parts] == [
+        ["deliveries.late"],
+        {"columns": "site"},
+    ]
 
 
 def test_bare_names_are_one_part_and_objects_are_parts_of_their_own():
     row_filter = ["weather", {"columns": "depot", "fixed": True}, "late"]
     config = read_config(GOOD | {"row_filter": row_filter}, GRAPH)
-    parts = [(GRAPH.names_of(one.part.columns), one.part.fixed, one.place) for one in config.rows.filter_parts]
+    parts = [
+        (GRAPH.names_of(one.part.columns), one.part.fixed, one.place) for one in config.rows.filter_parts
+    ]
     assert parts == [
         (("late", "weather"), False, ("row_filter",)),
         (("depot",), True, ("row_filter", 1)),

@@ -51,6 +51,7 @@ class _Cause:
         kind: a covariate, a part of the row filter, or rows that go missing without it.
         doing: what the config does with it, as the subject of a sentence.
         columns: the columns to blame.
+        about: what a sentence is about that says where on the path these are: the columns, or what they hold fixed.
         distance: arrows from the node in question down to the column that is adjusted for or filtered by;
             -1 where a part of the filter is that node itself.
         place, part: where in the config, and for a filter its condition.
@@ -59,6 +60,7 @@ class _Cause:
     kind: str
     doing: str
     columns: tuple[str, ...]
+    about: tuple[str, ...]
     distance: int
     place: Place
     part: object = None
@@ -91,7 +93,7 @@ class _Blame:
         above = listed([self._kept.graph.name(found.descends_from)])
         drawn = arrow_text(self._kept, found.causal_path, self._conditioned)
         for cause in self._causes(found.node, found.descent, found.descent.nodes):
-            which = listed(cause.columns)
+            which = listed(cause.about)
             if cause.distance == 0:
                 message = f"{which} lies on the causal path {drawn}: {cause.doing} {cause.harm}."
             else:
@@ -116,7 +118,7 @@ class _Blame:
         for descent in found.descents:
             collider = descent.nodes[0]
             for cause in self._causes(descent.nodes[-1], descent, found.trail.nodes):
-                which = listed(cause.columns)
+                which = listed(cause.about)
                 if cause.distance < 0:
                     why = f"{'it reads' if cause.kind == 'filter' else 'that depends on'} {which} together"
                 elif cause.distance == 0:
@@ -166,7 +168,8 @@ class _Blame:
         """Who conditions on ``node``, the last one of ``descent``; ``along`` tells what a part joins."""
         distance = len(descent.nodes) - 1
         for adjusting in adjustments(self._claim, self._config, node):
-            yield _Cause("covariate", adjusting.doing, adjusting.columns, distance, adjusting.place)
+            held = (self._kept.graph.name(node),)
+            yield _Cause("covariate", adjusting.doing, adjusting.columns, held, distance, adjusting.place)
         rows = self._config.rows
         for kind, filter_parts in (("filter", rows.filter_parts), ("lost-rows", rows.silent_parts)):
             for filter_part in filter_parts:
@@ -182,7 +185,7 @@ class _Blame:
             f"keeping rows by {part_text(part.written)}" if kind == "filter" else silent_text(part.written)
         )
         read = self._columns_read(node, part, descent, along)
-        return _Cause(kind, doing, read, distance, filter_part.place, part.written)
+        return _Cause(kind, doing, read, read, distance, filter_part.place, part.written)
 
     def _stands_for(self, node: int, part: Part) -> bool:
         if part.fixed:
