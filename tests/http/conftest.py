@@ -69,7 +69,12 @@ class Service:
     def _answers(self, method: str, path: str) -> Mapping[str, Any] | None:
         paths = self.document["paths"]
         steps = path.partition("?")[0].rsplit("/", 1)
-        name = {"/problems": "/problems/{slug}", "/schemas": "/schemas/{name}"}.get(steps[0], "/".join(steps))
+        known = {
+            "/problems": "/problems/{slug}",
+            "/schemas": "/schemas/{name}",
+            "/docs/rules": "/docs/rules/{name}",
+        }
+        name = known.get(steps[0], "/".join(steps))
         return paths.get(name, {}).get(method.lower(), {}).get("responses")
 
     def _resolved(self, answer: Mapping[str, Any]) -> Mapping[str, Any]:

@@ -13,6 +13,13 @@ from pathgate.review.notice_texts import NOTICE_TEXTS
 
 Severity = Literal["error", "warning", "note"]
 
+SEVERITIES: dict[Severity, str] = {
+    "error": "the number is not the effect it is read as",
+    "warning": "the number may be right and is easily misread",
+    "note": "what the review took for granted",
+}
+"""From the gravest to the lightest, with what each means."""
+
 
 @dataclass(frozen=True, slots=True)
 class Rule:
@@ -33,6 +40,11 @@ class Rule:
     example: str = ""
     what_to_do: str = ""
     may_be_waived: bool = True
+
+    @property
+    def page(self) -> str:
+        """Where the service shows all of this."""
+        return f"/docs/rules/{self.name}"
 
 
 def _with_texts(rule: Rule) -> Rule:

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import fields
 from typing import Any
 
+from pathgate.review.rules import RULES, SEVERITIES
 from pathgate.web.problem_schema import problem_response
 from pathgate.web.problems import PROBLEM_TYPES
 from pathgate.web.settings import Settings
@@ -72,6 +73,18 @@ _PROBLEM_PAGE = _object(
     }
 )
 
+_RULE_PAGE = _object(
+    {
+        "name": {"type": "string"},
+        "severity": {"enum": list(SEVERITIES)},
+        "meaning": {"type": "string"},
+        "why_it_matters": {"type": "string"},
+        "example": {"type": "string", "description": "One case of it; names of columns stand in backticks."},
+        "what_to_do": {"type": "string"},
+        "may_be_waived": {"type": "boolean", "description": "Can a config accept it, under `accept`?"},
+    }
+)
+
 
 def _named(name: str, known: list[str]) -> list[Json]:
     return [{"name": name, "in": "path", "required": True, "schema": {"enum": known}}]
@@ -83,6 +96,14 @@ def get_paths(schema_names: list[str]) -> Json:
     return {
         "/openapi.json": _get("openapi", "This document.", _json({"type": "object"})),
         "/docs": _get("docs", "The reference, as a page that loads nothing from elsewhere.", _HTML),
+        "/docs/rules": _get("rules", "All that a review can find, as a page.", _HTML),
+        "/docs/rules/{name}": _get(
+            "rule",
+            "What a rule means, why it matters, an example, and what to do about a finding.",
+            {**_HTML, **_json(_RULE_PAGE)},
+            parameters=_named("name", list(RULES)),
+            responses=missing,
+        ),
         "/problems/{slug}": _get(
             "problem",
             "What a kind of problem means and what to do about it.",

@@ -1,4 +1,4 @@
-"""What is read by GET: the reference, the pages of problems, the schemas, and the state of the service.
+"""What is read by GET: the reference, the pages of problems and rules, the schemas, the state of the service.
 
 Everything but the state is made once, when the app is; a request only picks it up.
 """
@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping, Sequence
+from dataclasses import asdict
 from typing import Any
 
 import msgspec
@@ -14,6 +15,7 @@ from flask import Flask, Response, redirect, request
 from werkzeug.exceptions import NotFound
 from werkzeug.wrappers import Response as AnyResponse
 
+from pathgate.review.rules import RULES
 from pathgate.version import VERSION
 from pathgate.web.openapi import document
 from pathgate.web.operations import Operation
@@ -32,7 +34,10 @@ def install_pages(app: Flask, operations: Sequence[Operation], settings: Setting
     described = document(operations)
     _install_state(app, settings)
     _install_documents(app, described)
-    _install_reference(app, Pages(app.jinja_env, described))
+    pages = Pages(app.jinja_env, described)
+    _install_reference(app, pages)
+    _install_problems(app, pages)
+    _install_rules(app, pages)
 
 
 def _install_state(app: Flask, settings: Settings) -> None:
@@ -65,13 +70,6 @@ def _install_documents(app: Flask, described: Mapping[str, Any]) -> None:
 
 def _install_reference(app: Flask, pages: Pages) -> None:
     reference = pages.reference()
-    problem_pages = {slug: pages.problem(each) for slug, each in PROBLEM_TYPES.items()}
-
-    def page(text: str) -> Response:
-        reply = Response(text, content_type="text/html; charset=utf-8")
-        reply.headers["Content-Security-Policy"] = pages.content_policy
-        reply.headers["Referrer-Policy"] = "no-referrer"
-        return reply
 
     @app.get("/")
     def home() -> AnyResponse:
@@ -81,16 +79,47 @@ def _install_reference(app: Flask, pages: Pages) -> None:
     def docs() -> Response:
         # The commands to copy name the server that the page came from, where its name is a plain one.
         root = request.url_root
-        return page(reference.replace(ANY_SERVER, root) if _SERVER.fullmatch(root) else reference)
+        text = reference.replace(ANY_SERVER, root) if _SERVER.fullmatch(root) else reference
+        return _page(text, pages)
+
+
+def _install_problems(app: Flask, pages: Pages) -> None:
+    problem_pages = {slug: pages.problem(each) for slug, each in PROBLEM_TYPES.items()}
 
     @app.get("/problems/<slug>")
     def problem(slug: str) -> Response:
         if slug not in PROBLEM_TYPES:
             raise NotFound
-        best = request.accept_mimetypes.best_match(["text/html", "application/json"], "text/html")
-        if best == "application/json":
+        if _is_json_wanted():
             return json_reply(_problem_document(PROBLEM_TYPES[slug]))
-        return page(problem_pages[slug])
+        return _page(problem_pages[slug], pages)
+
+
+def _install_rules(app: Flask, pages: Pages) -> None:
+    rule_pages = {name: pages.rule(each) for name, each in RULES.items()}
+    index = pages.rules()
+
+    @app.get("/docs/rules")
+    def rules() -> Response:
+        return _page(index, pages)
+
+    @app.get("/docs/rules/<name>")
+    def rule(name: str) -> Response:
+        if name not in RULES:
+            raise NotFound
+        return json_reply(asdict(RULES[name])) if _is_json_wanted() else _page(rule_pages[name], pages)
+
+
+def _page(text: str, pages: Pages) -> Response:
+    reply = Response(text, content_type="text/html; charset=utf-8")
+    reply.headers["Content-Security-Policy"] = pages.content_policy
+    reply.headers["Referrer-Policy"] = "no-referrer"
+    return reply
+
+
+def _is_json_wanted() -> bool:
+    best = request.accept_mimetypes.best_match(["text/html", "application/json"], "text/html")
+    return best == "application/json"
 
 
 def _problem_document(each: ProblemType) -> dict[str, Any]:

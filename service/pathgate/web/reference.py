@@ -1,7 +1,7 @@
-"""The reference as pages: what each operation is for, its members, examples to copy, the kinds of problems.
+"""The reference as pages: what each operation is for, its members, examples to copy, kinds of problems, rules.
 
-Made from the OpenAPI document alone, so that page and document cannot disagree. A page is one file: its style is
-in it, it needs no script, and its content policy lets it load nothing.
+Made from the OpenAPI document and the tables of problems and rules alone, so that pages and answers cannot
+disagree. A page is one file: its style is in it, it needs no script, and its content policy lets it load nothing.
 """
 
 from __future__ import annotations
@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from pathgate.review.rules import RULES, SEVERITIES, Rule
 from pathgate.web.problems import PROBLEM_TYPES, ProblemType
 from pathgate.web.schema_documents import document_name
 
@@ -90,6 +91,18 @@ class Pages:
     def problem(self, problem: ProblemType) -> str:
         """The page at ``/problems/<slug>``."""
         return self._rendered("problem.html", problem=problem)
+
+    def rule(self, rule: Rule) -> str:
+        """The page at ``/docs/rules/<rule>``."""
+        return self._rendered("rule.html", rule=rule, severity_means=SEVERITIES[rule.severity])
+
+    def rules(self) -> str:
+        """The page at ``/docs/rules``."""
+        groups = [
+            (severity, means, [rule for rule in RULES.values() if rule.severity == severity])
+            for severity, means in SEVERITIES.items()
+        ]
+        return self._rendered("rules.html", groups=groups)
 
     def _rendered(self, template: str, **context: Any) -> str:
         return self._environment.get_template(template).render(
