@@ -17,6 +17,7 @@ from pathgate.criteria import (
     total_effect,
     valid_set,
 )
+from pathgate.criteria.paths import directed_path, find_open_paths
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.graphs import CausalGraph, ancestors, descendants, from_networkx, read_graph
 from pathgate.graphs.graph import SMALL
@@ -54,6 +55,24 @@ def test_both_engines_name_the_same_kin():
         nodes, avoided = random_mask(rng, small, 0.3), rng.choice([0, random_mask(rng, small, 0.3)])
         for kin in (ancestors, descendants):
             assert kin(large, nodes, avoiding=avoided) == kin(small, nodes, avoiding=avoided), seed
+
+
+@pytest.mark.parametrize("fewest_colliders", [False, True])
+def test_both_engines_find_the_same_of_several_shortest_paths(*, fewest_colliders: bool):
+    seen: Counter[int] = Counter()
+    for seed in range(150):
+        rng = random.Random(seed)
+        small, large = both_sizes(random_graph(rng, rng.randint(5, 12), arrow=0.3, bidirected=0.15))
+        starts, ends = random_mask(rng, small, 0.2), random_mask(rng, small, 0.3)
+        conditions = Conditions(random_mask(rng, small, 0.3), ancestors(small, random_mask(rng, small, 0.2)))
+        found, expected = (
+            list(find_open_paths(graph, starts, ends, conditions, fewest_colliders=fewest_colliders))
+            for graph in (small, large)
+        )
+        assert found == expected, seed
+        seen.update(len(trail.arrows) for trail in found)
+        assert directed_path(small, starts, ends) == directed_path(large, starts, ends), seed
+    assert min(seen[1], seen[2], seen[3]) > 5, seen
 
 
 def test_both_engines_explain_a_separation_alike():

@@ -1,9 +1,10 @@
 """A shortest open path between two sets of nodes, and why each of its steps is open.
 
-Dijkstra's search (1959) over the states of ``reachability``: O((nodes + edges) log nodes). A shortest open
-walk visits no node twice: cutting a loop out of an open walk leaves an open walk (where the cut makes a
-collider, the loop held an open collider below it), so a shortest one is a path. The same holds for a walk
-with the fewest colliders, shortest among those.
+On small graphs a search by masks (``path_masks``), O(nodes + edges); on large ones Dijkstra's (1959) over the
+states of ``reachability``, O((nodes + edges) log nodes). Both break ties alike. A shortest open walk visits no
+node twice: cutting a loop out of an open walk leaves an open walk (where the cut makes a collider, the loop
+held an open collider below it), so a shortest one is a path. The same holds for a walk with the fewest
+colliders, shortest among those.
 """
 
 from __future__ import annotations
@@ -14,15 +15,12 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Literal
 
+from pathgate.criteria.path_masks import Arrow, directed_walk, open_walks
 from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.selection import Kept, Label
 from pathgate.graphs.graph import CausalGraph, Edge
 from pathgate.graphs.masks import members, unpack
 
-# Up to this many nodes, going bit by bit is quicker than setting up an array.
-_FEW = 64
-
-Arrow = Literal["forward", "backward", "both"]
 Role = Literal["chain", "fork", "collider"]
 Because = Literal["not-conditioned", "conditioned", "descendant-conditioned"]
 
@@ -79,7 +77,9 @@ def find_open_path(
 ) -> Trail | None:
     """A shortest path from ``starts`` to ``ends`` that is open, or None where there is none.
 
-    With ``fewest_colliders`` a path that needs no opened collider is preferred to any that does.
+    With ``fewest_colliders`` one with the fewest opened colliders, a shortest among those. Of several the one
+    whose end comes first in the graph's order; then, from the end backwards, the one whose node before comes
+    first (with ``fewest_colliders`` an opened collider before any other); an arrow before a bidirected edge.
     """
     return next(find_open_paths(graph, starts, ends, conditions, fewest_colliders=fewest_colliders), None)
 
@@ -88,6 +88,45 @@ def find_open_paths(
     graph: CausalGraph, starts: int, ends: int, conditions: Conditions, *, fewest_colliders: bool = False
 ) -> Iterator[Trail]:
     """The same for each of ``ends`` that there is an open path to, nearest first; one search for all."""
+    if graph.is_small:
+        walks = open_walks(graph, starts, ends, conditions, fewest_colliders=fewest_colliders)
+        return (Trail(tuple(nodes), tuple(arrows)) for nodes, arrows in walks)
+    return _by_heap(graph, starts, ends, conditions, fewest_colliders=fewest_colliders)
+
+
+def explain_path(kept: Kept, trail: Trail, openers: int) -> OpenPath:
+    """The path by names, each step with the reason why it is open given ``openers``."""
+    steps = tuple(_step(kept, node, role, openers) for node, role in trail.inner)
+    return OpenPath(tuple(map(kept.label, trail.nodes)), trail.arrows, steps)
+
+
+def directed_path(graph: CausalGraph, starts: int, ends: int, *, avoiding: int = 0) -> Trail | None:
+    """A shortest directed path from one set into another that enters nothing to be avoided, or None.
+
+    Of several the one whose first node comes first in the graph's order, then its second, and so on.
+    """
+    if graph.is_small:
+        nodes = directed_walk(graph, starts, ends, avoiding)
+    else:
+        nodes = _directed_by_queue(graph, starts, ends, avoiding)
+    if nodes is None:
+        return None
+    arrows: list[Arrow] = ["forward"] * (len(nodes) - 1)
+    return Trail(tuple(nodes), tuple(arrows))
+
+
+def opened_by(graph: CausalGraph, collider: int, openers: int) -> Trail:
+    """The shortest directed path from an open collider to the conditioned node that opens it."""
+    trail = directed_path(graph, 1 << collider, openers)
+    if trail is None:
+        message = "an open collider is conditioned on or leads into a conditioned node"
+        raise AssertionError(message)
+    return trail
+
+
+def _by_heap(
+    graph: CausalGraph, starts: int, ends: int, conditions: Conditions, *, fewest_colliders: bool
+) -> Iterator[Trail]:
     per_collider = 2 * graph.size + 1 if fewest_colliders else 0
     passes, opens = _flags(graph, ~conditions.blocking), _flags(graph, conditions.opening)
     starting, awaited = _flags(graph, starts), bytearray(_flags(graph, ends))
@@ -113,16 +152,9 @@ def find_open_paths(
                 heapq.heappush(queue, (total, reached))
 
 
-def explain_path(kept: Kept, trail: Trail, openers: int) -> OpenPath:
-    """The path by names, each step with the reason why it is open given ``openers``."""
-    steps = tuple(_step(kept, node, role, openers) for node, role in trail.inner)
-    return OpenPath(tuple(map(kept.label, trail.nodes)), trail.arrows, steps)
-
-
-def directed_path(graph: CausalGraph, starts: int, ends: int, *, avoiding: int = 0) -> Trail | None:
-    """A shortest directed path from one set into another that enters nothing to be avoided, or None."""
+def _directed_by_queue(graph: CausalGraph, starts: int, ends: int, avoiding: int) -> list[int] | None:
     came_from: dict[int, int] = {}
-    queue = deque(node for node in graph.members(starts))
+    queue = deque(members(starts))
     seen = {*members(starts), *members(avoiding)}
     ending = _flags(graph, ends)
     while queue:
@@ -131,8 +163,7 @@ def directed_path(graph: CausalGraph, starts: int, ends: int, *, avoiding: int =
             nodes = [node]
             while nodes[-1] in came_from:
                 nodes.append(came_from[nodes[-1]])
-            arrows: list[Arrow] = ["forward"] * (len(nodes) - 1)
-            return Trail(tuple(reversed(nodes)), tuple(arrows))
+            return nodes[::-1]
         for child in graph.children(node):
             if child not in seen:
                 seen.add(child)
@@ -141,19 +172,8 @@ def directed_path(graph: CausalGraph, starts: int, ends: int, *, avoiding: int =
     return None
 
 
-def opened_by(graph: CausalGraph, collider: int, openers: int) -> Trail:
-    """The shortest directed path from an open collider to the conditioned node that opens it."""
-    trail = directed_path(graph, 1 << collider, openers)
-    if trail is None:
-        message = "an open collider is conditioned on or leads into a conditioned node"
-        raise AssertionError(message)
-    return trail
-
-
 def _flags(graph: CausalGraph, mask: int) -> bytes:
     """A mask as one byte a node: looking up a bit of a wide mask would copy the mask."""
-    if graph.size <= _FEW:
-        return bytes([mask >> node & 1 for node in range(graph.size)])
     return unpack(mask & graph.everything, graph.size).tobytes()
 
 

@@ -16,7 +16,8 @@ from dataclasses import dataclass, replace
 from itertools import count, pairwise, product
 
 from pathgate.criteria.deadline import Deadline
-from pathgate.criteria.paths import Arrow, Trail
+from pathgate.criteria.path_masks import Arrow
+from pathgate.criteria.paths import Trail
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
 
