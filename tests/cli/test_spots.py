@@ -10,7 +10,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from pathgate.cli.json_spots import json_map
-from pathgate.cli.spots import Map, Region, find_part, steps_of
+from pathgate.cli.spots import Map, Region, steps_of
+from pathgate.cli.sql_spots import find_part
 from pathgate.cli.yaml_text import read_yaml_and_places
 from pathgate.graphs.errors import pointer
 
@@ -119,6 +120,9 @@ def test_steps_are_those_that_a_pointer_was_made_of(steps):
         ("\"n = 'Stra\\u00DFe'\"", "n = 'Straße'", "n = 'Stra\\u00DFe'"),
         (">-\n    c = 1\n    AND a\n      > 2", "a > 2", "a\n      > 2"),
         ('"x\\nAND y = 1"', "y = 1", "y = 1"),
+        ('"x = \\U0001F600 \\x41 AND y = 1"', "y = 1", "y = 1"),
+        ("\"x = '\\ud83d\\ude00' AND y\"", "x = '😀'", "x = '\\ud83d\\ude00'"),
+        ("'it''s = 1'", "it's = 1", "it''s = 1"),
         ("SELECT * FROM t WHERE a > 1", "a > 1", "a > 1"),
     ],
 )
