@@ -119,10 +119,10 @@ class _Paths:
     before: dict[int, int] = field(default_factory=dict)
     after: dict[int, int] = field(default_factory=dict)
     passed: int = 0
-    entered: int = 0
-    left: int = 0
-    steps: list[tuple[int, int]] = field(default_factory=list)
-    exit_from: dict[int, int] = field(default_factory=dict)
+    entered: int = field(init=False)
+    left: int = field(init=False)
+    steps: list[tuple[int, int]] = field(init=False)
+    exit_from: dict[int, int] = field(init=False)
 
     def take_short_ones(self) -> None:
         """Begin with paths of two and three nodes, which need no search; later ones reroute what is in the way."""

@@ -30,9 +30,6 @@ from pathgate.web.endpoints.shared_schemas import CURSOR, GRAPH, LIMIT, NAME_LIS
 from pathgate.web.operations import Call, Example, Json, Operation
 from pathgate.web.paging import page_at
 
-_Token = Independency | tuple[int, int]
-"""What a page counts: a statement, or a separable pair whose statement is not worked out yet."""
-
 # More minimal sets of one pair than any caller pages through; places of pairs are so far apart.
 _MOST_MINIMAL = 2**28
 
@@ -50,8 +47,8 @@ def answer(call: Call) -> Json:
     call.refuse_faults()
     pairs = Pairs(kept)
     listing = _Listing(pairs, form, call.body.get("max_given"), call.deadline)
-    found, page = page_at(call, "independencies", listing.tokens)
-    document: Json = {"independencies": [listing.document(each) for each in found], **page}
+    found, page = page_at(call, "independencies", listing.documents)
+    document: Json = {"independencies": found, **page}
     if page["complete"]:
         document["inseparable"] = [_inseparable(pairs, *pair) for pair in pairs.inseparable(call.deadline)]
     return document
@@ -70,27 +67,42 @@ def _refuse_combination(call: Call, kept: Kept, form: str) -> None:
 
 @dataclass(frozen=True, slots=True)
 class _Listing:
-    """The statements of one form; pairs are listed first and worked out only for the page that shows them."""
+    """The statements of one form, from any place on; every one is worked out when its turn comes."""
 
     pairs: Pairs
     form: str
     max_given: int | None
     deadline: Deadline
 
-    def tokens(self, start: int) -> Iterator[tuple[int, _Token]]:
-        """What the pages count, from a place on, each with its place."""
-        if self.max_given is not None:
-            return filter(self._fits, self._statements(start))
-        return self._pairs(start) if self.form in ("smallest", "basis") else self._statements(start)
+    def documents(self, start: int) -> Iterator[tuple[int, Json]]:
+        """The statements from a place on, each with its place and with what a contradiction of it would mean."""
+        for place, statement in self._statements(start):
+            self.deadline.poll()
+            if self.max_given is None or statement.given.bit_count() <= self.max_given:
+                yield place, self._document(statement)
 
     def _statements(self, start: int) -> Iterator[tuple[int, Independency]]:
-        if self.form in ("smallest", "basis"):
-            return ((place, self._of_pair(pair)) for place, pair in self._pairs(start))
-        if self.form == "every-minimal":
-            return self._minimal(start)
         graph = self.pairs.kept.graph
-        found = basis_sets(graph, self.deadline) if self.form == "basis-sets" else sequential(graph)
-        return islice(enumerate(found), start, None)
+        match self.form:
+            case "smallest" | "basis":
+                return self._one_a_pair(start)
+            case "every-minimal":
+                return self._minimal(start)
+            case "basis-sets":
+                return self._numbered(basis_sets(graph, self.deadline), start)
+            case _:
+                return self._numbered(sequential(graph), start)
+
+    def _one_a_pair(self, start: int) -> Iterator[tuple[int, Independency]]:
+        form = smallest if self.form == "smallest" else basis
+        for place, pair in self._pairs(start):
+            yield place, form(self.pairs, *pair)
+
+    def _numbered(self, found: Iterator[Independency], start: int) -> Iterator[tuple[int, Independency]]:
+        for place, statement in enumerate(found):
+            self.deadline.poll()
+            if place >= start:
+                yield place, statement
 
     def _pairs(self, start: int) -> Iterator[tuple[int, tuple[int, int]]]:
         size = max(1, self.pairs.kept.graph.size)
@@ -104,25 +116,16 @@ class _Listing:
             numbered = enumerate(found, start=place * _MOST_MINIMAL)
             yield from islice(numbered, skipped if place == begin else 0, None)
 
-    def document(self, token: _Token) -> Json:
-        """A statement with what a contradiction of it would mean."""
-        statement = token if isinstance(token, Independency) else self._of_pair(token)
-        names = self.pairs.kept.graph.names
+    def _document(self, statement: Independency) -> Json:
+        names, given = self.pairs.kept.graph.names, statement.given
         others = [names[node] for node in members(statement.y)]
         return {
             "x": names[statement.x],
             "y": others if self.form == "basis-sets" else others[0],
-            "given": [names[node] for node in members(statement.given)],
+            "given": [names[node] for node in members(given)] if given else [],
             "cheaper_exists": self._has_cheaper(statement),
             "tests_absence_of": _absent_edges(self.pairs, statement),
         }
-
-    def _of_pair(self, pair: tuple[int, int]) -> Independency:
-        self.deadline.poll()
-        return (smallest if self.form == "smallest" else basis)(self.pairs, *pair)
-
-    def _fits(self, found: tuple[int, Independency]) -> bool:
-        return self.max_given is None or found[1].given.bit_count() <= self.max_given
 
     def _has_cheaper(self, statement: Independency) -> bool:
         """Does some statement about the same pair condition on fewer columns?"""
