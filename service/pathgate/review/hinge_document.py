@@ -10,11 +10,16 @@ from pathgate.graphs.graph import CausalGraph, Edge
 from pathgate.review.document import Json, review_document
 from pathgate.review.doubtful import Doubtful, judge_doubtful
 from pathgate.review.hinges import HingesOn, hinges_of, plain_name, question
+from pathgate.review.provenance import provenance_document
 from pathgate.review.review import Review
 
 
-def whole_document(answer: Review, deadline: Deadline, *, hinges: bool) -> Json:
+def whole_document(
+    answer: Review, deadline: Deadline, *, hinges: bool, known_digest: str | None = None
+) -> Json:
     """The answer of /v1/review, with what the verdict hinges on where that is asked for.
+
+    Whoever reviews many configs against one graph hands over its digest as ``known_digest``.
 
     Raises:
         OutOfTime: the deadline came before it was known whether the doubtful edges matter at all.
@@ -26,6 +31,8 @@ def whole_document(answer: Review, deadline: Deadline, *, hinges: bool) -> Json:
         document["doubtful"] = doubtful_document(graph, found)
     if hinges:
         document["hinges_on"] = hinges_document(graph, hinges_of(answer.claim, deadline, is_sound=is_sound))
+    written = answer.config.written or {}
+    document["provenance"] = provenance_document(answer.graph, written, known_digest=known_digest)
     return document
 
 

@@ -16,14 +16,20 @@ from pathgate.review.config import read_config
 from pathgate.review.errors import InvalidConfig
 from pathgate.review.hinge_document import whole_document
 from pathgate.review.review import review
-from pathgate.web.problems import problem_of, refusal
+from pathgate.web.problems import Problem, problem_of, refusal
 from pathgate.web.settings import Settings
 
 Json = dict[str, Any]
 
 
 def judged(
-    value: Any, graph: CausalGraph, settings: Settings, *, hinges: bool, place: Place = ("config",)
+    value: Any,
+    graph: CausalGraph,
+    settings: Settings,
+    *,
+    hinges: bool,
+    place: Place = ("config",),
+    known_digest: str | None = None,
 ) -> Json:
     """The review of a config as ``{"review": …}``, or ``{"problem": …}``; each has the whole time budget.
 
@@ -33,26 +39,34 @@ def judged(
         settings: the limits.
         hinges: is it to be said what a sound verdict hinges on?
         place: where the config stands in the input, for the pointers of a problem.
+        known_digest: the graph's, where it is known.
     """
     try:
-        return {"review": _review(value, graph, settings, hinges=hinges)}
-    except InvalidConfig as error:
-        problem = refusal([fault.below(place) for fault in error.faults])
+        return {"review": _review(value, graph, settings, hinges=hinges, known_digest=known_digest)}
     except PathgateError as error:
-        known = problem_of(error)
-        if known is None:
-            raise
-        problem = known
+        return {"problem": problem_members(error, settings, place)}
+
+
+def problem_members(error: PathgateError, settings: Settings, place: Place) -> Json:
+    """The problem document of a config that stands at ``place``; an error that is no problem is raised again."""
+    if isinstance(error, InvalidConfig):
+        problem: Problem | None = refusal([fault.below(place) for fault in error.faults])
+    else:
+        problem = problem_of(error)
+    if problem is None:
+        raise error
     members = problem.members("", settings.max_errors)
     # A config among others had no request of its own.
     del members["instance"]
-    return {"problem": members}
+    return members
 
 
-def _review(value: Any, graph: CausalGraph, settings: Settings, *, hinges: bool) -> Json:
+def _review(
+    value: Any, graph: CausalGraph, settings: Settings, *, hinges: bool, known_digest: str | None
+) -> Json:
     if not isinstance(value, Mapping):
         detail = f"a config is an object, not {json_type(value)}"
         raise InvalidConfig([Fault("invalid-request", (), detail)])
     deadline = Deadline(settings.time_budget_seconds)
     answer = review(graph, read_config(value, graph), deadline)
-    return whole_document(answer, deadline, hinges=hinges)
+    return whole_document(answer, deadline, hinges=hinges, known_digest=known_digest)

@@ -21,8 +21,8 @@ Json = dict[str, Any]
 Schema = Mapping[str, Any]
 
 GRAPH_REFERENCE = {"$ref": "#/components/schemas/Graph"}
-# Stands in the schema of a list whose items are judged one by one: a faulty one is no fault of the request.
-APART = "x-judged-apart"
+# Items that are judged one by one: a faulty config is no fault of the request. The first schema takes anything at once.
+CONFIGS_APART = {"anyOf": [{}, {"$ref": "#/components/schemas/Config"}]}
 
 
 @dataclass(frozen=True, slots=True)
@@ -164,12 +164,11 @@ def open_call(operation: Operation, shape: Shape, value: Any, settings: Settings
 
 
 def _graphs_taken_out(schema: Any) -> Any:
-    """The schema with every reference to a graph, and all that is judged apart, replaced by "anything"."""
+    """The schema with every reference to a graph replaced by "anything"."""
     if _is_graph(schema):
         return True
     if isinstance(schema, Mapping):
-        held = {key: said for key, said in schema.items() if not (key == "items" and schema.get(APART))}
-        return {key: _graphs_taken_out(each) for key, each in held.items()}
+        return {key: _graphs_taken_out(each) for key, each in schema.items()}
     if isinstance(schema, list | tuple):
         return [_graphs_taken_out(each) for each in schema]
     return schema

@@ -114,6 +114,19 @@ REMEDY: dict[str, Any] = {
     "additionalProperties": False,
 }
 
+PROVENANCE: dict[str, Any] = {
+    "type": "object",
+    "description": "what the verdict was given on: digests (SHA-256 over the RFC 8785 form, defaults filled in) that"
+    " stay the same where nothing that is read differs",
+    "properties": {
+        "version": {"type": "string", "description": "of Pathgate"},
+        "graph_digest": {"type": "string", "pattern": "^sha256:[0-9a-f]{64}$"},
+        "config_digest": {"type": "string", "pattern": "^sha256:[0-9a-f]{64}$"},
+    },
+    "required": ["version", "graph_digest", "config_digest"],
+    "additionalProperties": False,
+}
+
 REVIEW: dict[str, Any] = {
     "type": "object",
     "properties": {
@@ -169,10 +182,21 @@ REVIEW: dict[str, Any] = {
         },
         "hinges_on": {"$ref": "#/components/schemas/HingesOn"},
         "doubtful": {"$ref": "#/components/schemas/Doubtful"},
+        "provenance": {"$ref": "#/components/schemas/Provenance"},
         "cautions": {"type": "array", "items": {"type": "string"}},
         "meta": {"description": "the config's own meta"},
     },
-    "required": ["name", "verdict", "summary", "findings", "columns", "coefficients", "remedies", "cautions"],
+    "required": [
+        "name",
+        "verdict",
+        "summary",
+        "findings",
+        "columns",
+        "coefficients",
+        "remedies",
+        "provenance",
+        "cautions",
+    ],
     "additionalProperties": False,
 }
 
@@ -181,6 +205,7 @@ REVIEW_COMPONENTS = {
     "Config": CONFIG_SCHEMA,
     "Finding": FINDING,
     "Coefficient": COEFFICIENT,
+    "Provenance": PROVENANCE,
     "Remedy": REMEDY,
     "Review": REVIEW,
     **HINGE_COMPONENTS,

@@ -7,11 +7,12 @@ from typing import Any
 
 from pathgate.demo import demo_configs, demo_graph
 from pathgate.graphs.graph import CausalGraph
+from pathgate.review.provenance import graph_digest
 from pathgate.web.endpoints.reading import graph_of
 from pathgate.web.endpoints.review import REVIEW_COMPONENTS
 from pathgate.web.endpoints.shared_schemas import GRAPH
 from pathgate.web.judging import judged
-from pathgate.web.operations import APART, Call, Example, Json, Operation
+from pathgate.web.operations import CONFIGS_APART, Call, Example, Json, Operation
 
 
 def answer(call: Call) -> Json:
@@ -28,10 +29,13 @@ def lines(call: Call) -> Iterator[Json]:
 
 def _judged_one_by_one(call: Call, graph: CausalGraph) -> Iterator[Json]:
     configs, hinges = call.body["configs"], call.body.get("hinges", False)
+    digest = graph_digest(graph)
     for index, config in enumerate(configs):
         name = config.get("name", "") if isinstance(config, dict) else ""
         head = {"index": index, "count": len(configs), "name": name if isinstance(name, str) else ""}
-        yield head | judged(config, graph, call.settings, hinges=hinges, place=("configs", index))
+        yield head | judged(
+            config, graph, call.settings, hinges=hinges, place=("configs", index), known_digest=digest
+        )
 
 
 LINE: dict[str, Any] = {
@@ -74,9 +78,8 @@ OPERATION = Operation(
             "configs": {
                 "type": "array",
                 "title": "a list of model configs",
-                APART: True,
-                "items": {"$ref": "#/components/schemas/Config"},
-                "description": "each judged by itself; a faulty one is no fault of the request",
+                "items": CONFIGS_APART,
+                "description": "each a Config, judged by itself: a faulty one is no fault of the request",
             },
             "hinges": {
                 "title": "true or false",
