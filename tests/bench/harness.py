@@ -56,7 +56,7 @@ def times_slower(what: str, ours: Work, peer: str, theirs: Work, *, wanted: str,
 def median_seconds(work: Work, rounds: int = 7) -> float:
     """The median of several runs, after one that is not counted."""
     work()
-    return statistics.median(_seconds(work) for _ in range(rounds))
+    return statistics.median(seconds(work) for _ in range(rounds))
 
 
 def growth_exponent(sizes: Sequence[int], seconds: Sequence[float]) -> float:
@@ -89,7 +89,7 @@ def _paired(
     what: str, ours: Work, peer: str, theirs: Work, wanted: str, rounds: int, *, is_slowdown: bool
 ) -> Figure:
     ours(), theirs()
-    pairs = [(_seconds(theirs), _seconds(ours)) for _ in range(rounds)]
+    pairs = [(seconds(theirs), seconds(ours)) for _ in range(rounds)]
     ratios = [our / their if is_slowdown else their / our for their, our in pairs]
     return Figure(
         what=what,
@@ -101,7 +101,8 @@ def _paired(
     )
 
 
-def _seconds(work: Work) -> float:
+def seconds(work: Work) -> float:
+    """How long one run takes; what was left over before it is cleared away first."""
     gc.collect()
     began = time.perf_counter()
     work()
