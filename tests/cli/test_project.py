@@ -106,6 +106,7 @@ def test_show_says_who_set_what_and_reviews_nothing(project):
 
 def test_show_without_a_project_names_the_defaults(tmp_path, monkeypatch):
     monkeypatch.chdir(tmp_path)
+    assert pathgate("--show").stdout.startswith("graph = (none)  # default\n")
     shown = pathgate("g.json", "c.json", "--show").stdout.splitlines()
     assert shown[0] == 'graph = "g.json"  # GRAPH'
     assert shown[2:] == [

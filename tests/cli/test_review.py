@@ -14,6 +14,8 @@ from pathgate.demo import demo_configs, demo_graph
 from pathgate.graphs import read_graph
 from pathgate.review import read_config, review_document
 from pathgate.review import review as review_one
+from pathgate.web.app import create_app
+from pathgate.web.settings import Settings
 from tests.cli.shelf import BIASED, GRAPH, MISNAMED, SOUND, UNANSWERABLE, WAIVER, write
 
 
@@ -65,6 +67,16 @@ def test_json_is_one_document_with_the_reviews_of_the_package(tmp_path):
     assert result.stderr == (
         "8 configs found, 8 reviewed: 1 sound, 6 biased, 1 unanswerable; 0 not judged."
         " Errors: 7 new, 0 known, 0 accepted.\n"
+    )
+
+
+def test_json_has_the_same_reviews_as_the_service(tmp_path):
+    graph = write(tmp_path, "graph.json", demo_graph())
+    request = {"graph": demo_graph(), "configs": demo_configs()}
+    answer = create_app(Settings()).test_client().post("/v1/reviews", json=request).get_json()
+    assert (
+        documents(pathgate(graph, write(tmp_path, "c.json", demo_configs()), "--format", "json"))
+        == answer["reviews"]
     )
 
 

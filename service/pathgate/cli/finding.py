@@ -47,12 +47,14 @@ class Found:
         return self.own_name or "#/".join([shown(self.file), *self.steps])
 
     def place(self, pointer: str = "#", part: object = None) -> Place:
-        """Where a value of it stands, by a pointer from ``#/config`` on."""
+        """Where a value of it stands, by a pointer from ``#/config`` or ``#/configs/3`` on."""
         if self.unreadable and self.unreadable.place:
             return Place(self.file, Region(*self.unreadable.place))
         if self.source is None:
             return Place(self.file)
-        return Place(self.file, self.source.where.region((*self.steps, *steps_of(pointer)[1:]), part))
+        steps = steps_of(pointer)
+        below = steps[2:] if steps[:1] == ("configs",) else steps[1:]
+        return Place(self.file, self.source.where.region((*self.steps, *below), part))
 
 
 def find_configs(paths: Iterable[Path], graph: Path, settings: Settings) -> Iterator[Found]:

@@ -50,6 +50,14 @@ class Plan:
         """All of them, a line each, as the project file would say them, with who set them."""
         return "\n".join(self._lines()) + "\n"
 
+    def check(self) -> None:
+        """Go on where they say all that is needed.
+
+        Raises:
+            NotPlanned: nobody said which graph, or which configs, or a document is to be written over another file.
+        """
+        _check(self.settings)
+
     def _lines(self) -> Iterator[str]:
         for name, setting in self.settings.items():
             if name == "outputs":
@@ -67,13 +75,8 @@ def make_plan(words: Mapping[str, tuple[Any, str]], project: Project, folder: Pa
         words: by name, what the call itself says and under which option; what it leaves open is not there.
         project: the project file.
         folder: the working folder.
-
-    Raises:
-        NotPlanned: nobody said which graph, or which configs, or two documents are to go into one file.
     """
-    file = project.file.name if project.file else ""
-    if project.file:
-        file = os.path.relpath(project.file)
+    file = os.path.relpath(project.file) if project.file else ""
     settings = {}
     for name, default in _DEFAULTS.items():
         said = words.get(name)
@@ -85,7 +88,6 @@ def make_plan(words: Mapping[str, tuple[Any, str]], project: Project, folder: Pa
             settings[name] = Setting(project.values[name], file)
         else:
             settings[name] = Setting(default, "default")
-    _check(settings)
     return Plan(settings, project.file.parent if project.file else folder)
 
 

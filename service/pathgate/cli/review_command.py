@@ -79,6 +79,7 @@ def review(graph: Path | None, configs: tuple[Path, ...], **options: Any) -> int
     if options["show"]:
         write_text(plan.shown())
         return 0
+    _check(plan)
     asked = _question(plan, options)
     run = _run(asked)
     _print(run, options["form"], plan.root)
@@ -87,7 +88,7 @@ def review(graph: Path | None, configs: tuple[Path, ...], **options: Any) -> int
 
 
 def _plan(graph: Path | None, configs: Sequence[Path], options: Mapping[str, Any]) -> Plan:
-    from pathgate.cli.plan import NotPlanned, make_plan  # noqa: PLC0415 - not for --help
+    from pathgate.cli.plan import make_plan  # noqa: PLC0415 - not for --help
     from pathgate.cli.project import InvalidProject, Project, find_project, read_project  # noqa: PLC0415
 
     words = {
@@ -104,6 +105,13 @@ def _plan(graph: Path | None, configs: Sequence[Path], options: Mapping[str, Any
         return make_plan({name: said for name, said in words.items() if said[0]}, project, Path.cwd())
     except InvalidProject as error:
         raise click.ClickException(str(error)) from None
+
+
+def _check(plan: Plan) -> None:
+    from pathgate.cli.plan import NotPlanned  # noqa: PLC0415 - not for --help
+
+    try:
+        plan.check()
     except NotPlanned as error:
         raise click.UsageError(str(error), click.get_current_context()) from None
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from shlex import quote
 
 import click
 
@@ -71,5 +72,7 @@ def new(folder: Path) -> None:
         written = write_starter(folder)
     except AlreadyThere as error:
         raise click.ClickException(str(error)) from None
-    step = "pathgate review" if folder.resolve() == Path.cwd() else f"cd {folder} && pathgate review"
+    step = (
+        "pathgate review" if folder.resolve() == Path.cwd() else f"cd {quote(str(folder))} && pathgate review"
+    )
     write_text("".join(f"wrote {path}\n" for path in written) + f"Next: {step}\n")
