@@ -14,6 +14,7 @@ from functools import cached_property
 
 import numpy as np
 
+from pathgate.graphs.closures import Closures
 from pathgate.graphs.errors import UnknownNode
 from pathgate.graphs.masks import IntArray, mask_of, members, unpack
 from pathgate.graphs.names import nearest_names
@@ -214,6 +215,16 @@ class CausalGraph:
         upward = _masks(self.size, self.lower_ends, self.upper_ends)
         downward = _masks(self.size, self.upper_ends, self.lower_ends)
         return [up | down for up, down in zip(upward, downward, strict=True)]
+
+    @cached_property
+    def ancestor_closures(self) -> Closures:
+        """What leads into sets of nodes (small graphs only)."""
+        return Closures(self.parent_masks)
+
+    @cached_property
+    def descendant_closures(self) -> Closures:
+        """What sets of nodes lead to (small graphs only)."""
+        return Closures(self.child_masks)
 
     @cached_property
     def child_rows(self) -> Rows:

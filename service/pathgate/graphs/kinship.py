@@ -1,11 +1,9 @@
 """Who descends from whom: ancestors and descendants of a set of nodes, the set itself included.
 
-Small graphs spread a bit mask, large ones search compressed rows; O(nodes + edges) either way.
+Small graphs work on bit masks (``closures``), large ones search compressed rows; O(nodes + edges) either way.
 """
 
 from __future__ import annotations
-
-from collections.abc import Sequence
 
 import numpy as np
 
@@ -25,7 +23,7 @@ def ancestors(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
     ('rain', 'delay')
     """
     if graph.is_small:
-        return _spread(graph.parent_masks, nodes, avoiding)
+        return graph.ancestor_closures.reached(nodes, avoiding)
     return _reach(graph.parent_rows, nodes, avoiding)
 
 
@@ -37,19 +35,8 @@ def descendants(graph: CausalGraph, nodes: int, *, avoiding: int = 0) -> int:
     ('delay', 'refund')
     """
     if graph.is_small:
-        return _spread(graph.child_masks, nodes, avoiding)
+        return graph.descendant_closures.reached(nodes, avoiding)
     return _reach(graph.child_rows, nodes, avoiding)
-
-
-def _spread(neighbours: Sequence[int], nodes: int, avoiding: int) -> int:
-    found = frontier = nodes
-    free = ~avoiding
-    while frontier:
-        lowest = frontier & -frontier
-        new = neighbours[lowest.bit_length() - 1] & free & ~found
-        found |= new
-        frontier ^= lowest | new
-    return found
 
 
 def _reach(rows: Rows, nodes: int, avoiding: int) -> int:
