@@ -127,7 +127,7 @@ class _Paths:
     def take_short_ones(self) -> None:
         """Begin with paths of two and three nodes, which need no search; later ones reroute what is in the way."""
         beside, ends, starts = self.ground.beside, self.next_to_y, self.next_to_x
-        waiting = list[tuple[int, int]]()
+        waiting: list[tuple[int, int]] = []
         while starts:
             first = starts & -starts
             starts ^= first
@@ -168,12 +168,12 @@ class _Paths:
         children, relevant, known = cliques.graph.child_masks, cliques.relevant, cliques.known
         ends = self.next_to_y & ~passed
         goals = (self.ground.beside(ends) | ends) & ~passed
-        self.steps = steps = list[tuple[int, int]]()
-        self.exit_from = {}
+        steps: list[tuple[int, int]] = []
+        self.steps, self.exit_from = steps, {}
         origin, new = _X, self.next_to_x
-        entered, left, leaving, opened = self.closed, 0, 0, 0
+        unentered, left, leaving, opened = relevant & ~self.closed, 0, 0, 0
         while True:
-            entered |= new
+            unentered ^= new
             steps.append((origin, new))
             occupied = new & passed
             new ^= occupied | new & fixed
@@ -184,7 +184,7 @@ class _Paths:
             if new & goals:
                 return self._arrive(new & goals, ends)
             new = 0
-            while leaving and not new:
+            while leaving and unentered and not new:
                 lowest = leaving & -leaving
                 leaving ^= lowest
                 origin = lowest.bit_length() - 1
@@ -192,12 +192,12 @@ class _Paths:
                 near = known.get(heads)
                 if near is None:
                     near, opened = cliques.look_at(heads, opened)
-                new = near & ~entered
+                new = near & unentered
             if not new:
-                self.entered, self.left = entered, left
+                self.entered, self.left = relevant & ~unentered, left
                 return None
             if new & fixed:
-                new = (new | self.ground.past(new & fixed)) & ~entered
+                new = (new | self.ground.past(new & fixed)) & unentered
 
     def _taken_back(self, occupied: int, left: int) -> int:
         """The exits reached for the first time by entering nodes on paths.
