@@ -15,6 +15,7 @@ from pathgate.graphs.kinship import descendants
 from pathgate.graphs.masks import members
 from pathgate.review import read_config, review
 from pathgate.review.hinge_document import whole_document
+from pathgate.review.provenance import graph_digest
 from tests.bench.harness import Figure, times_slower
 from tests.bench.worlds import graph_value, peer_graph, random_pairs
 
@@ -26,7 +27,7 @@ def one_review() -> Iterator[Figure]:
     """Configs of a team, the config read and the answer made into its document, against separation tests.
 
     A third adjusts for the treatment's causes, a third for some of them, a third for random columns; half of them
-    filter rows. The graph is read before, as it is once for a folder of configs.
+    filter rows. The graph is read and its digest taken before, as it is once for a folder of configs.
     """
     pairs = random_pairs(NODES, ARROWS)
     graph, peer = read_graph(graph_value(NODES, pairs)), peer_graph(NODES, pairs)
@@ -71,9 +72,12 @@ def _configs(graph: CausalGraph) -> Iterator[dict[str, Any]]:
 
 
 def _reviewing(graph: CausalGraph, configs: list[dict[str, Any]], *, hinges: bool) -> Callable[[], None]:
+    digest = graph_digest(graph)
+
     def run() -> None:
         for config in configs:
-            whole_document(review(graph, read_config(config, graph)), Deadline.never(), hinges=hinges)
+            answer = review(graph, read_config(config, graph))
+            whole_document(answer, Deadline.never(), hinges=hinges, known_digest=digest)
 
     return run
 

@@ -9,6 +9,7 @@ proper causal path. Rows kept count as conditioned on. O(nodes + edges) a questi
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 from pathgate.criteria.selection import Kept
 from pathgate.criteria.separators import Separators
@@ -27,8 +28,6 @@ class Effect:
         on_causal_paths: the nodes other than treatments on proper causal paths, those that meet no treatment
             after their first node; the outcomes they lead to included.
         forbidden: these and their descendants, less the treatments: never to be conditioned on.
-        back_door_graph: the graph without the first arrow of every proper causal path (for a direct effect:
-            without the arrow).
     """
 
     kept: Kept
@@ -36,7 +35,11 @@ class Effect:
     outcomes: int
     on_causal_paths: int
     forbidden: int
-    back_door_graph: CausalGraph
+
+    @cached_property
+    def back_door_graph(self) -> CausalGraph:
+        """The graph without the first arrow of every proper causal path (for a direct effect: without the arrow)."""
+        return self.kept.graph.without_arrows(self.treatments, self.on_causal_paths)
 
     @property
     def usable(self) -> int:
@@ -51,8 +54,7 @@ def total_effect(kept: Kept, treatments: int, outcomes: int) -> Effect:
     # A causal path keeps to what is downstream, so nothing else need be searched upstream.
     on_causal_paths = ancestors(graph, outcomes & downstream, avoiding=graph.everything & ~downstream)
     forbidden = descendants(graph, on_causal_paths) & ~treatments
-    back_door_graph = graph.without_arrows(treatments, on_causal_paths)
-    return Effect(kept, treatments, outcomes, on_causal_paths, forbidden, back_door_graph)
+    return Effect(kept, treatments, outcomes, on_causal_paths, forbidden)
 
 
 def direct_effect(kept: Kept, treatment: int, outcome: int) -> Effect:
@@ -63,10 +65,15 @@ def direct_effect(kept: Kept, treatment: int, outcome: int) -> Effect:
     1998; Spirtes et al. 1998). The arrow is then the one causal path. Treatment and outcome are one node each.
     """
     graph = kept.graph
-    without_arrow = graph.without_arrows(treatment, outcome)
-    has_arrow = without_arrow is not graph
+    has_arrow = _has_arrow(graph, treatment.bit_length() - 1, outcome.bit_length() - 1)
     forbidden = descendants(graph, outcome) & ~treatment if has_arrow else 0
-    return Effect(kept, treatment, outcome, outcome if has_arrow else 0, forbidden, without_arrow)
+    return Effect(kept, treatment, outcome, outcome if has_arrow else 0, forbidden)
+
+
+def _has_arrow(graph: CausalGraph, source: int, target: int) -> bool:
+    if graph.is_small:
+        return bool(graph.child_masks[source] >> target & 1)
+    return target in graph.children(source)
 
 
 def is_valid(effect: Effect, covariates: int) -> bool:

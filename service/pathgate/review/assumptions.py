@@ -21,12 +21,16 @@ _RULES = {
 def assumption_findings(claim: Claim, config: Config) -> Iterator[Finding]:
     """A note for each thing assumed about the rows kept."""
     for assumed in config.rows.assumed:
-        if assumed.kind == "outside":
-            continue  # told of with all other names outside the graph
+        if assumed.kind == "outside" or (assumed.kind == "join" and _says_why_rows_exist(config)):
+            continue  # told of with all other names outside the graph, or said by the config
         columns = (*claim.graph.names_of(assumed.columns), *assumed.names)
         yield Finding(
             _RULES[assumed.kind], columns, _message(assumed, columns), assumed.place, assumed.written
         )
+
+
+def _says_why_rows_exist(config: Config) -> bool:
+    return bool(config.written and "rows_exist_because" in config.written)
 
 
 def _message(assumed: Assumed, columns: tuple[str, ...]) -> str:
