@@ -20,6 +20,7 @@ from pathgate.cli.main import main
 from pathgate.cli.rendering import rendered
 from pathgate.cli.reviewing import Question, review_files
 from pathgate.cli.run import Run
+from pathgate.demo import demo_configs, demo_graph
 from pathgate.review.rules import RULES
 from pathgate.web.settings import Settings
 from tests.cli.shelf import BIASED, FILTERED_YAML, GRAPH, MISNAMED, SOUND, UNANSWERABLE, WAIVER, write
@@ -322,3 +323,21 @@ def test_an_output_that_cannot_be_written_is_no_pass(here):
     assert result.exit_code == 2
     assert result.stdout.startswith("SOUND")
     assert len(result.stderr.splitlines()) == 1
+
+
+@pytest.mark.parametrize("name", ["demo.json", "demo.yaml"])
+def test_every_place_points_at_a_value_that_the_finding_is_about(here, name):
+    write(here, "graph.json", demo_graph())
+    # What JSON with line breaks says, YAML says too.
+    text = json.dumps(demo_configs(), indent=1)
+    write(here, name, text)
+    lines = text.splitlines()
+    run = review_files(asking(name), Settings())
+    pointed = 0
+    for each in (finding for item in run.items for finding in item.findings):
+        region = each.place.region
+        if region.end_line is not None:
+            value = json.loads(lines[region.line - 1][region.column - 1 : region.end_column - 1])
+            assert value in (*each.columns, *each.document.get("open_path", {}).get("nodes", []))
+            pointed += 1
+    assert pointed >= 5

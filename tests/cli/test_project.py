@@ -133,6 +133,7 @@ def test_show_without_a_project_names_the_defaults(tmp_path, monkeypatch):
         ('[outputs]\nsarrif = "x"', '(did you mean "sarif"?)'),
         ("graph = ", "no TOML"),
         ('graph = "a"\ngraph = "b"', "no TOML"),
+        ('"\\u001b[31m" = 1', r"\u001b[31m: no such setting"),
         ("graph = 3\nconfigs = 4", "graph: a path is wanted, in quotes; configs: "),
     ],
 )
@@ -142,6 +143,7 @@ def test_what_means_nothing_is_refused_in_one_line(project, text, words):
     assert (result.exit_code, result.stdout) == (2, "")
     assert words in result.stderr
     assert len(result.stderr.splitlines()) == 1
+    assert result.stderr[:-1].isprintable()
 
 
 def test_a_faulty_pyproject_that_means_us_is_refused_and_another_one_is_not_ours(project):

@@ -67,6 +67,7 @@ def new(folder: Path) -> None:
     Nothing is overwritten.
     """
     from pathgate.cli.starting import AlreadyThere, write_starter
+    from pathgate.review.visible import visible
 
     try:
         written = write_starter(folder)
@@ -75,4 +76,5 @@ def new(folder: Path) -> None:
     step = (
         "pathgate review" if folder.resolve() == Path.cwd() else f"cd {quote(str(folder))} && pathgate review"
     )
-    write_text("".join(f"wrote {path}\n" for path in written) + f"Next: {step}\n")
+    lines = [*(f"wrote {path}" for path in written), f"Next: {step}"]
+    write_text("".join(f"{visible(line)}\n" for line in lines))

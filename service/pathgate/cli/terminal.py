@@ -16,8 +16,13 @@ _NARROWEST, _WIDEST = 40, 110
 
 
 def say(text: str) -> None:
-    """One line on standard error, under the command's name."""
-    click.echo(f"pathgate: {' '.join(text.split())}", err=True)
+    """One line on standard error, under the command's name; nothing in it can steer a terminal."""
+    line = " ".join(text.split())
+    if not line.isprintable():
+        from pathgate.review.visible import visible  # noqa: PLC0415 - its package is heavy, and this is rare
+
+        line = visible(line)
+    click.echo(f"pathgate: {line}", err=True)
 
 
 def write(content: bytes) -> None:
