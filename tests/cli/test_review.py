@@ -10,10 +10,12 @@ import pytest
 from click.testing import CliRunner, Result
 
 from pathgate.cli.main import main
+from pathgate.criteria.deadline import Deadline
 from pathgate.demo import demo_configs, demo_graph
 from pathgate.graphs import read_graph
-from pathgate.review import read_config, review_document
+from pathgate.review import read_config
 from pathgate.review import review as review_one
+from pathgate.review.hinge_document import whole_document
 from pathgate.web.app import create_app
 from pathgate.web.settings import Settings
 from tests.cli.shelf import BIASED, GRAPH, MISNAMED, SOUND, UNANSWERABLE, WAIVER, write
@@ -61,7 +63,8 @@ def test_json_is_one_document_with_the_reviews_of_the_package(tmp_path):
     result = pathgate(graph, write(tmp_path, "configs.json", demo_configs()), "--format", "json")
     judged = read_graph(demo_graph())
     for index, (item, config) in enumerate(zip(documents(result), demo_configs(), strict=True)):
-        expected = review_document(review_one(judged, read_config(config, judged)))
+        answer = review_one(judged, read_config(config, judged))
+        expected = whole_document(answer, Deadline.never(), hinges=False)
         assert item == {"index": index, "count": 8, "name": config["name"], "review": expected}
     assert result.stdout.endswith("}\n")
     assert result.stderr == (

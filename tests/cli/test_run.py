@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from pathlib import Path
 from typing import Any
 
@@ -18,7 +19,7 @@ def weighed(severity: str, *, accepted: bool, known: bool, fail_on: Any, verdict
     found = Found(Path("c.json"), {"name": "one"})
     finding = {"rule": "r", "severity": severity, "columns": ["a"], "message": "m", "pointer": "#/config"}
     finding |= {"accepted": WAIVER} if accepted else {}
-    baseline = Baseline(Path("base.json"), Scales("error").left)
+    baseline = Baseline(Path("base.json"), Counter())
     if known:
         baseline.known[baseline.entry(found.file, "one", "r", ["a"])] = 1
     return Scales(fail_on, baseline).item(found, {"review": {"verdict": verdict, "findings": [finding]}})

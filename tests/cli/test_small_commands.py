@@ -9,6 +9,7 @@ from pathlib import Path
 import pytest
 from click.testing import CliRunner, Result
 
+from pathgate.cli.explaining import broken_at, rule_text
 from pathgate.cli.main import main
 from pathgate.review.rules import RULES
 from pathgate.web.app import create_app
@@ -134,6 +135,15 @@ def test_every_rule_is_explained_with_all_that_is_known_of_it(name):
         said = getattr(rule, each.name)
         for text in [said] if isinstance(said, str) else said if isinstance(said, tuple) else []:
             assert text.strip() in explained.stdout
+
+
+@pytest.mark.parametrize("name", RULES)
+def test_on_a_terminal_its_lines_are_broken_and_no_word_is_lost(name):
+    text = rule_text(name)
+    broken = broken_at(text, 60)
+    assert max(map(len, broken.splitlines())) <= 60
+    assert broken.split() == text.split()
+    assert broken.count("\n\n") == text.count("\n\n")
 
 
 def test_a_misspelt_rule_is_refused_with_the_nearest():

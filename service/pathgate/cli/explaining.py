@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Iterator
 from dataclasses import fields
 
@@ -29,6 +30,13 @@ def rule_text(name: str) -> str:
             f"no rule is called {name!r}{did_you_mean(name, list(RULES))}; pathgate explain lists them"
         )
     return "\n\n".join(_paragraphs(RULES[name])) + "\n"
+
+
+def broken_at(text: str, width: int | None) -> str:
+    """The text with its lines broken at a width; None breaks none."""
+    if width is None:
+        return text
+    return "".join(f"{textwrap.fill(line, width, break_on_hyphens=False)}\n" for line in text.splitlines())
 
 
 def rules_text() -> str:

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 from pathgate.cli.files import Source
 from pathgate.cli.finding import Json, problem_document
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.reading import examine_graph
+from pathgate.review.provenance import graph_digest
 from pathgate.web.judging import judged
 from pathgate.web.problems import refusal
 from pathgate.web.settings import Settings
@@ -26,7 +28,7 @@ class Unjudgeable(Exception):
         self.problem = problem
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class LocalJudge:
     """Judges in this process.
 
@@ -46,7 +48,11 @@ class LocalJudge:
         """The review of a config, or its problem."""
         if self.dialect is not None and isinstance(config, dict) and "dialect" not in config:
             config = {**config, "dialect": self.dialect}
-        return judged(config, self.graph, self.settings, hinges=self.hinges)
+        return judged(config, self.graph, self.settings, hinges=self.hinges, known_digest=self._graph_digest)
+
+    @cached_property
+    def _graph_digest(self) -> str:
+        return graph_digest(self.graph)
 
 
 def read_graph(source: Source, settings: Settings) -> CausalGraph:

@@ -23,7 +23,7 @@ from pathgate.cli.finding import (
     unreadable_problem,
 )
 from pathgate.cli.judging import Judge, LocalJudge, Unjudgeable, read_graph
-from pathgate.cli.run import Fault, Item, Place, Run
+from pathgate.cli.run import Fault, Item, Run
 from pathgate.cli.weighing import Scales, gone_entries, to_be_known
 from pathgate.web.settings import Settings
 
@@ -166,13 +166,15 @@ def _noting_down(asked: Question, founds: Sequence[Found], answers: Sequence[Jso
 
 
 def _all_skipped(asked: Question, founds: Sequence[Found], stopped: Stopped) -> Run:
-    problem = plain_problem("Skipped", f"skipped, since nothing could be judged: {stopped.problem['detail']}")
-    items = []
-    for found in founds:
-        if found.unreadable is not None:
-            items.append(Scales(asked.fail_on).item(found, _answer(found, dict)))
-        else:
-            place = found.place()
-            fault = Fault(problem["detail"], Place(place.file, place.region))
-            items.append(Item(found.name, place, problem=problem, faults=(fault,), is_skipped=True))
-    return Run(tuple(items), stopped.problem, stopped.faults, asked.fail_on, asked.baseline)
+    items = tuple(_skipped(found, stopped.problem) for found in founds)
+    return Run(items, stopped.problem, stopped.faults, asked.fail_on, asked.baseline)
+
+
+def _skipped(found: Found, cause: Json) -> Item:
+    """A config left alone; where it cannot be read in the first place, that is what is wrong with it."""
+    if found.unreadable is not None:
+        problem = unreadable_problem(found.file, found.unreadable)
+        return Item(found.name, found.place(), problem=problem, faults=faults_of(problem, found))
+    problem = plain_problem("Skipped", f"skipped, since nothing could be judged: {cause['detail']}")
+    fault = Fault(problem["detail"], found.place())
+    return Item(found.name, found.place(), problem=problem, faults=(fault,), is_skipped=True)

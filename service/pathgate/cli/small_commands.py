@@ -7,7 +7,7 @@ from shlex import quote
 
 import click
 
-from pathgate.cli.terminal import say, settings_in_force, write, write_text
+from pathgate.cli.terminal import say, settings_in_force, text_width, write, write_text
 
 # Only what a command needs is imported, and only when it runs, so that --help answers at once.
 # ruff: noqa: PLC0415
@@ -51,10 +51,10 @@ def check(graph: Path, form: str) -> int:
 @click.argument("rule", metavar="[RULE]", required=False)
 def explain(rule: str | None) -> None:
     """Say what a rule means and what to do where it is broken; without RULE, list them all."""
-    from pathgate.cli.explaining import NoSuchRule, rule_text, rules_text
+    from pathgate.cli.explaining import NoSuchRule, broken_at, rule_text, rules_text
 
     try:
-        write_text(rules_text() if rule is None else rule_text(rule))
+        write_text(rules_text() if rule is None else broken_at(rule_text(rule), text_width()))
     except NoSuchRule as error:
         raise click.ClickException(str(error)) from None
 
