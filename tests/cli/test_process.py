@@ -64,6 +64,19 @@ def test_help_is_answered_without_the_weight_of_the_checks(words):
     assert done.stderr == "[]\n"
 
 
+def test_a_small_review_loads_nothing_that_only_others_need(tmp_path):
+    needless = ["flask", "werkzeug", "gunicorn", "networkx", "pandas", "formulaic", "rich", "xml"]
+    words = ["review", write(tmp_path, "g.json", GRAPH), write(tmp_path, "c.json", SOUND)]
+    program = (
+        "import sys\nfrom pathgate.cli.main import main\n"
+        f"main({words!r}, standalone_mode=False)\n"
+        f"print([name for name in {needless!r} if name in sys.modules], file=sys.stderr)"
+    )
+    done = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True)
+    assert done.stdout.startswith("SOUND")
+    assert done.stderr == "[]\n"
+
+
 def test_every_command_is_in_the_help():
     listed = CliRunner().invoke(main, ["--help"]).output.split("Commands:")[1]
     assert sorted(line.split()[0] for line in listed.strip().splitlines()) == sorted(COMMANDS)
