@@ -8,7 +8,7 @@ every probability and every counterfactual exactly: no sampling, up to about sev
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import product
 from typing import Any
 
@@ -90,6 +90,22 @@ def draw_discrete_world(
         else Mechanism(name, (), np.arange(values), _shares(rng, values))
         for name in order
     )
+    return _world_of(mechanisms, values)
+
+
+def without_chance(world: DiscreteWorld, nodes: Names) -> DiscreteWorld:
+    """The same world but for some nodes that follow the first of their tables always: functions of their parents."""
+    certain = as_set(nodes)
+    return _world_of(
+        tuple(
+            replace(each, table=each.table[:1], shares=np.ones(1)) if each.node in certain else each
+            for each in world.mechanisms
+        ),
+        world.values,
+    )
+
+
+def _world_of(mechanisms: tuple[Mechanism, ...], values: int) -> DiscreteWorld:
     grid = np.indices([len(mechanism.shares) for mechanism in mechanisms]).reshape(len(mechanisms), -1)
     weights = [mechanism.shares[noise] for mechanism, noise in zip(mechanisms, grid, strict=True)]
     return DiscreteWorld(mechanisms, values, tuple(grid), np.prod(weights, axis=0))
