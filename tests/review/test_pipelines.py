@@ -140,3 +140,30 @@ def test_a_filter_that_holds_a_value_computed_from_the_treatment_leaves_it_no_va
     assert (error.rule, error.columns, error.place) == ("no-variation-left", ("score",), ("row_filter", 0))
     # Either the filter or the covariate may go.
     assert [remedy.changes for remedy in answer.remedies] == [1, 1]
+
+
+def test_a_thousand_columns_computed_one_from_the_next_are_judged():
+    # late → refund, weather → late, weather → refund; score0 is computed from weather, and so on
+    value = graph_of(("weather", "late"), ("weather", "refund"), ("late", "refund"))
+    derived = {f"score{k}": {"from": [f"score{k - 1}", "weather"] if k else ["weather"]} for k in range(1000)}
+    config = {"treatment": "late", "outcome": "refund", "covariates": ["score999"], "derived": derived}
+    _, answer = review_of(value, config)
+    assert answer.verdict == "biased"
+    assert answer.claim.graph.names_of(answer.remedies[0].add) == ("weather",)
+    treated = config | {"treatment": "score999", "covariates": []}
+    assert [each.reads_as for each in review_of(value, treated)[1].coefficients] == ["total"]
+
+
+def test_columns_that_share_their_inputs_over_and_over_are_judged():
+    # each level of two columns is computed from both of the level before: 2 ** 200 ways down to late and weather
+    value = graph_of(("weather", "late"), ("weather", "refund"), ("late", "refund"))
+    derived, before = {}, ["late", "weather"]
+    for level in range(200):
+        derived |= {f"{side}{level}": {"from": before} for side in ("left", "right")}
+        before = [f"left{level}", f"right{level}"]
+    config = {"treatment": before[0], "outcome": "refund", "covariates": [], "derived": derived}
+    _, answer = review_of(value, config)
+    assert answer.verdict == "sound"
+    assert [
+        finding.columns for finding in answer.findings if finding.rule == "treatment-of-several-columns"
+    ] == [("weather", "late")]

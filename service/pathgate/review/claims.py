@@ -213,13 +213,15 @@ class Claim:
 
     def only_varied_by(self, columns: int, held: int) -> int:
         """The computed columns held fixed that only these columns can make vary, once the others are held."""
-        found = 0
-        for node in self.inputs:
+        found, known = 0, held
+        known_with = held | columns
+        # Inputs stand before what uses them, so that what a column is determined by is settled when it comes.
+        for node, made_of in self.inputs.items():
+            is_determined, is_with = not made_of & ~known, not made_of & ~known_with
             if held >> node & 1:
-                others = held & ~(1 << node)
-                determined = determined_by(others | columns, self.inputs) >> node & 1
-                if determined and not determined_by(others, self.inputs) >> node & 1:
-                    found |= 1 << node
+                found |= (is_with and not is_determined) << node
+            known |= is_determined << node
+            known_with |= is_with << node
         return found
 
     def is_carried_by(self, choice: Choice) -> bool:

@@ -15,7 +15,7 @@ from pathgate.criteria.adjustment import Effect, direct_effect, is_valid, total_
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import find_open_path
 from pathgate.criteria.reachability import Conditions
-from pathgate.graphs.masks import mask_of, members
+from pathgate.graphs.masks import mask_of
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.determined import determined_by
@@ -58,6 +58,7 @@ class _Reading:
 
     def __init__(self, claim: Claim, config: Config) -> None:
         self._claim = claim
+        self._columns = config.columns
         self._graph = claim.graph
         self._kept = claim.effect.kept
         self._terms = claim.usable.covariates | mask_of(named.node for named in config.treated)
@@ -94,7 +95,7 @@ class _Reading:
     def _column(self, node: int) -> tuple[ReadsAs, str]:
         if self._unfit:
             return "neither", self._unfit
-        causes = self._bases(node)
+        causes = self._columns.bases(node)
         if (1 << node | causes) & ~self._graph.measured or self._claim.outcomes & (1 << node | causes):
             return "neither", "the platform does not hold it, or it is the outcome itself"
         others = self._terms & ~(1 << node) | self._absorbed
@@ -108,12 +109,6 @@ class _Reading:
         if direct is not None and is_valid(direct, others):
             return "direct", self._direct_words(total, direct, others)
         return "neither", self._neither(total, direct, others)
-
-    def _bases(self, node: int) -> int:
-        made_of, bases = self._claim.inputs.get(node, 0), 0
-        for each in members(made_of):
-            bases |= self._bases(each)
-        return bases or 1 << node
 
     def _direct(self, causes: int) -> Effect | None:
         outcomes = self._claim.outcomes

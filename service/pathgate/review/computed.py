@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
-from pathgate.review.determined import determined_by
+from pathgate.review.determined import determined_by_others
 from pathgate.review.findings import Finding
 from pathgate.review.names import Named
 from pathgate.review.wording import listed
@@ -46,9 +46,9 @@ def _coarse(claim: Claim, config: Config) -> Iterator[Finding]:
 
 
 def _redundant(claim: Claim, config: Config) -> Iterator[Finding]:
+    redundant = determined_by_others(claim.adjusted_for, claim.inputs)
     for named in config.adjusted_for:
-        others = claim.adjusted_for & ~(1 << named.node)
-        if named.node in claim.inputs and determined_by(others, claim.inputs) >> named.node & 1:
+        if redundant >> named.node & 1:
             yield _told_redundant(claim, named, claim.graph.names_of(claim.inputs[named.node]))
     whole = {named.node for named in config.adjusted_for if not config.columns.recodes.get(named.written)}
     # Of two buckets of a column neither determines the other.

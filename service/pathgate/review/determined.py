@@ -19,3 +19,18 @@ def determined_by(known: int, inputs: Mapping[int, int]) -> int:
         if not made_of & ~known:
             known |= 1 << node
     return known
+
+
+def determined_by_others(known: int, inputs: Mapping[int, int]) -> int:
+    """Those of some columns that the others among them determine.
+
+    >>> bin(determined_by_others(0b1011, {2: 0b011, 3: 0b100}))
+    '0b1000'
+    """
+    found, settled = 0, known
+    # Inputs stand before what uses them, so that what a column is determined by is settled when it comes.
+    for node, made_of in inputs.items():
+        if not made_of & ~settled:
+            found |= known & 1 << node
+            settled |= 1 << node
+    return found
