@@ -1,13 +1,12 @@
-"""A real service for the tests of the client, and surroundings in which no time passes unless somebody sleeps."""
+"""A real service for the tests of the client, and surroundings in which no time passes."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, field
 
 import pytest
 
-from pathgate.client import Client, Surroundings
+from tests.client.fakes import Fakes
 from tests.client.loopback import serving
 
 
@@ -15,22 +14,6 @@ from tests.client.loopback import serving
 def service_url() -> Iterator[str]:
     with serving() as url:
         yield url
-
-
-@dataclass
-class Fakes:
-    """A clock that only sleeping moves; chance is always the same."""
-
-    clock: float = 1_000.0
-    slept: list[float] = field(default_factory=list)
-
-    def sleep(self, seconds: float) -> None:
-        self.slept.append(seconds)
-        self.clock += seconds
-
-    def client(self, url: str, **others: object) -> Client:
-        around = Surroundings(lambda: self.clock, lambda: self.clock, self.sleep, lambda: 0.5)
-        return Client(url, surroundings=around, **{"timeout": 30.0, **others})
 
 
 @pytest.fixture

@@ -10,6 +10,8 @@ FORMS: tuple[Form, ...] = get_args(Form)
 FailOn = Literal["error", "warning"]
 FAIL_ON: tuple[FailOn, ...] = get_args(FailOn)
 
+IF_UNREACHABLE = ("fail", "pass")
+
 NOT_JUDGED_RULE = "config-not-judged"
 NOT_JUDGED_MEANS = (
     "The config could not be judged, so nothing is known of it: the message says what is in the way."

@@ -40,6 +40,7 @@ def _gate(run: Run) -> Json:
             **counts.verdicts,
             "not_judged": counts.not_judged,
             "skipped": counts.skipped,
+            "let_pass": counts.let_pass,
             "new": counts.new,
             "known": counts.known,
             "accepted": counts.accepted,
@@ -60,6 +61,7 @@ def _config(item: Item, index: int) -> Json:
     return {
         "index": index,
         "outcome": item.outcome,
+        "let_pass": item.is_let_pass,
         "falls_short": item.falls_short,
         **_place(item.place),
         "findings": findings,

@@ -1,10 +1,9 @@
-"""What does the service say of one config? Asked in this process; a judge of another kind answers alike."""
+"""What does the service say of each config? Asked in this process; a judge of another kind answers alike."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
-from functools import cached_property
 from typing import Any
 
 from pathgate.cli.files import Source
@@ -16,8 +15,11 @@ from pathgate.web.judging import judged
 from pathgate.web.problems import refusal
 from pathgate.web.settings import Settings
 
-Judge = Callable[[Any], Json]
-"""From a config's value to ``{"review": …}`` or ``{"problem": …}``, as a line of /v1/reviews has it."""
+Judge = Callable[[Sequence[Any]], Iterator[Json]]
+"""From the values of configs to ``{"review": …}`` or ``{"problem": …}`` for each, in order, as /v1/reviews has it.
+
+Beside a problem, ``let_pass`` says that the config is to pass although nobody judged it.
+"""
 
 
 class Unjudgeable(Exception):
@@ -28,7 +30,7 @@ class Unjudgeable(Exception):
         self.problem = problem
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, slots=True)
 class LocalJudge:
     """Judges in this process.
 
@@ -44,15 +46,19 @@ class LocalJudge:
     hinges: bool = False
     dialect: str | None = None
 
-    def __call__(self, config: Any) -> Json:
-        """The review of a config, or its problem."""
-        if self.dialect is not None and isinstance(config, dict) and "dialect" not in config:
-            config = {**config, "dialect": self.dialect}
-        return judged(config, self.graph, self.settings, hinges=self.hinges, known_digest=self._graph_digest)
+    def __call__(self, configs: Sequence[Any]) -> Iterator[Json]:
+        """The review of each config, or its problem."""
+        digest = graph_digest(self.graph)
+        for config in configs:
+            asked = with_dialect(config, self.dialect)
+            yield judged(asked, self.graph, self.settings, hinges=self.hinges, known_digest=digest)
 
-    @cached_property
-    def _graph_digest(self) -> str:
-        return graph_digest(self.graph)
+
+def with_dialect(config: Any, dialect: str | None) -> Any:
+    """A config that names the dialect of its SQL, where one is given and it names none."""
+    if dialect is None or not isinstance(config, dict) or "dialect" in config:
+        return config
+    return {**config, "dialect": dialect}
 
 
 def read_graph(source: Source, settings: Settings) -> CausalGraph:

@@ -1,7 +1,7 @@
 """A run as a JUnit report, which build servers show as tests: a case for each config, a suite for each file.
 
 A config that falls short is a failure, one that could not be judged an error, one that was left alone because of
-something else is skipped; what else was found stands in the output of its case.
+something else, or let pass unjudged, is skipped; what else was found stands in the output of its case.
 """
 
 from __future__ import annotations
@@ -50,7 +50,8 @@ def _case(item: Item) -> Xml.Element:
     said |= {"file": said["classname"], **({"line": str(region.line)} if region else {})}
     case = Xml.Element("testcase", said)
     if item.review is None:
-        _add(case, "skipped" if item.is_skipped else "error", "not judged", _fault_texts(item.faults))
+        tag = "skipped" if item.is_skipped or item.is_let_pass else "error"
+        _add(case, tag, "not judged", _fault_texts(item.faults))
         return case
     short = [finding for finding in item.findings if finding.standing == "new"]
     others = [finding for finding in item.findings if finding.standing != "new"]

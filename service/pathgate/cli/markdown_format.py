@@ -9,14 +9,9 @@ import re
 from collections.abc import Iterator
 
 from pathgate.cli.run import Item, Run
-from pathgate.cli.wording import counts_text, fault_lines, finding_line, gone_text
+from pathgate.cli.wording import counts_text, fault_lines, finding_line, gone_text, outcome_text
 from pathgate.review.visible import visible
 
-_HEADINGS = {
-    0: "Pathgate: no config falls short",
-    1: "Pathgate: some config falls short",
-    2: "Pathgate: something could not be judged",
-}
 _SPECIAL = re.compile(r"[\\`*_{}\[\]<>#|~@&$^!]")
 # What begins a list, a line or a heading where it opens a line, and what begins a link of itself anywhere.
 _OPENING = re.compile(r"^(\s*[0-9]*)([-+=.)])")
@@ -29,7 +24,7 @@ def run_markdown(run: Run) -> bytes:
 
 
 def _blocks(run: Run) -> Iterator[str]:
-    yield f"## {_HEADINGS[run.exit_status]}"
+    yield f"## Pathgate: {outcome_text(run)}"
     yield escaped(counts_text(run))
     if run.faults:
         yield "\n".join(f"- {escaped(line)}" for line in fault_lines(run.faults))
@@ -49,7 +44,8 @@ def _blocks(run: Run) -> Iterator[str]:
 def _row(item: Item) -> str:
     standings = [each.standing for each in item.findings]
     numbers = [str(standings.count(standing)) for standing in ("new", "known", "accepted")]
-    short = "not judged" if item.review is None else "yes" if item.falls_short else "no"
+    unjudged = "let pass" if item.is_let_pass else "not judged"
+    short = unjudged if item.review is None else "yes" if item.falls_short else "no"
     cells = [escaped(item.name), item.outcome, short, *numbers, escaped(str(item.place))]
     return f"| {' | '.join(cells)} |"
 

@@ -10,13 +10,16 @@ from typing import TYPE_CHECKING, Any, cast
 
 import click
 
-from pathgate.cli.choices import FAIL_ON, FORMS, Form
+from pathgate.cli.choices import FAIL_ON, FORMS, IF_UNREACHABLE, Form
 from pathgate.cli.terminal import say, settings_in_force, takes_colour, text_width, write, write_text
 
 if TYPE_CHECKING:
     from pathgate.cli.plan import Plan
-    from pathgate.cli.reviewing import Question
+    from pathgate.cli.reviewing import Judging, Question
     from pathgate.cli.run import Run
+
+# For all configs together, where a service judges.
+PATIENCE_SECONDS = 300.0
 
 _PATH = click.Path(path_type=Path)
 
@@ -60,15 +63,27 @@ class _Output(click.ParamType):  # type: ignore[type-arg]
 )
 @click.option("--prune-baseline", is_flag=True, help="Take out of the baseline what no longer occurs.")
 @click.option("--hinges", is_flag=True, help="In JSON too, say what sound verdicts hinge on.")
+@click.option("--url", help="Have the service at this address judge, instead of this process.")
+@click.option(
+    "--timeout",
+    type=click.FloatRange(min=0, min_open=True, max=86_400),
+    metavar="SECONDS",
+    help="How long the service may take for everything, retries included.  [default: 300]",
+)
+@click.option(
+    "--if-unreachable",
+    type=click.Choice(IF_UNREACHABLE),
+    help="What becomes of configs for which the service is out of reach; pass is told in every form.  [default: fail]",
+)
 @click.option("--project", type=_PATH, metavar="FILE", help="The project file, instead of the nearest one.")
 @click.option("--show", is_flag=True, help="Show each setting and who set it, and review nothing.")
 def review(graph: Path | None, configs: tuple[Path, ...], **options: Any) -> int:
-    """Review model configs against a causal graph, in this process.
+    """Review model configs against a causal graph, in this process or by a running service.
 
     GRAPH is a JSON or YAML file. Each CONFIG is such a file with one config or a list of them, a folder of such files
     (GRAPH itself left out), or a pattern such as "teams/**/*.yaml". What is left out here is taken from pathgate.toml
     (or the table tool.pathgate of pyproject.toml) in this folder or above: graph, configs, outputs, dialect, fail_on,
-    baseline.
+    baseline. A service that asks for a token is given the one in PATHGATE_TOKEN.
 
     \b
     Exit status: 0 no config falls short: sound, or every error accepted or known
@@ -81,7 +96,7 @@ def review(graph: Path | None, configs: tuple[Path, ...], **options: Any) -> int
         return 0
     _check(plan)
     asked = _question(plan, options)
-    run = _run(asked)
+    run = _run(asked, _judging(options))
     _print(run, options["form"], plan.root)
     _write_outputs(run, plan)
     return run.exit_status
@@ -146,13 +161,29 @@ def _question(plan: Plan, options: Mapping[str, Any]) -> Question:
     )
 
 
-def _run(asked: Question) -> Run:
+def _judging(options: Mapping[str, Any]) -> Judging:
+    from pathgate.cli.reviewing import local_judge  # noqa: PLC0415 - not for --help
+
+    if options["url"] is None:
+        for name in ("timeout", "if_unreachable"):
+            if options[name] is not None:
+                word = f"--{name.replace('_', '-')}"
+                raise click.UsageError(f"{word} needs a --url", click.get_current_context())
+        return local_judge
+    from pathgate.cli.asking import make_client  # noqa: PLC0415
+    from pathgate.cli.remote import remote_judge  # noqa: PLC0415
+
+    client = make_client(options["url"], options["timeout"] or PATIENCE_SECONDS)
+    return remote_judge(client, lets_pass=options["if_unreachable"] == "pass")
+
+
+def _run(asked: Question, judging: Judging) -> Run:
     from pathgate.cli.progress import progress_bar  # noqa: PLC0415 - not for --help
     from pathgate.cli.reviewing import review_files  # noqa: PLC0415
 
     settings = settings_in_force()
     with progress_bar() as tell:
-        return review_files(asked, settings, tell)
+        return review_files(asked, settings, tell, judging)
 
 
 def _print(run: Run, form: Form, root: Path) -> None:

@@ -7,13 +7,13 @@ too, and never the end of the others; where the graph or the baseline is of no u
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
 from pathgate.cli.baseline import Baseline, read_baseline
 from pathgate.cli.choices import FailOn
-from pathgate.cli.files import Unreadable, read_file
+from pathgate.cli.files import Source, Unreadable, read_file
 from pathgate.cli.finding import (
     Found,
     Json,
@@ -25,6 +25,7 @@ from pathgate.cli.finding import (
 from pathgate.cli.judging import Judge, LocalJudge, Unjudgeable, read_graph
 from pathgate.cli.run import Fault, Item, Run
 from pathgate.cli.weighing import Scales, gone_entries, to_be_known
+from pathgate.cli.wording import let_pass_text
 from pathgate.web.settings import Settings
 
 Tick = Callable[[int, int], None]
@@ -58,7 +59,7 @@ class Question:
 
 
 Judging = Callable[[Question, Settings], Judge]
-"""Who is to judge what is asked; raises ``Stopped`` where nobody can."""
+"""Who is to judge what is asked; raises ``Stopped`` where nobody can, and so does what it returns."""
 
 
 class Stopped(Exception):
@@ -76,15 +77,24 @@ def local_judge(asked: Question, settings: Settings) -> Judge:
     Raises:
         Stopped: that graph cannot be used.
     """
-    try:
-        source = read_file(asked.graph, settings)
-    except Unreadable as error:
-        raise Stopped(unreadable_problem(asked.graph, error), Found(asked.graph, unreadable=error)) from None
+    source = read_graph_file(asked.graph, settings)
     try:
         graph = read_graph(source, settings)
     except Unjudgeable as error:
         raise Stopped(error.problem, Found(asked.graph, source.value, source)) from None
     return LocalJudge(graph, settings, hinges=asked.hinges, dialect=asked.dialect)
+
+
+def read_graph_file(file: Path, settings: Settings) -> Source:
+    """What the file of the graph holds, graph or not.
+
+    Raises:
+        Stopped: it cannot be read.
+    """
+    try:
+        return read_file(file, settings)
+    except Unreadable as error:
+        raise Stopped(unreadable_problem(file, error), Found(file, unreadable=error)) from None
 
 
 def review_files(
@@ -106,15 +116,15 @@ def review_files(
     try:
         judge = judging(asked, settings)
         baseline = _baseline(asked, settings)
+        answers = list(_answers(founds, judge, tick))
     except Stopped as stopped:
         return _all_skipped(asked, founds, stopped)
-    answers = []
-    for done, found in enumerate(founds):
-        tick(done, len(founds))
-        answers.append(_answer(found, judge))
     if asked.write_baseline is not None:
-        return _noting_down(asked, founds, answers, Baseline(asked.write_baseline, Counter()))
-    return _weighed(asked, founds, answers, baseline)
+        run = _noting_down(asked, founds, answers, Baseline(asked.write_baseline, Counter()))
+    else:
+        run = _weighed(asked, founds, answers, baseline)
+    note = let_pass_text(run)
+    return replace(run, notes=(*run.notes, note)) if note else run
 
 
 def _baseline(asked: Question, settings: Settings) -> Baseline | None:
@@ -127,10 +137,14 @@ def _baseline(asked: Question, settings: Settings) -> Baseline | None:
         raise Stopped(problem, Found(asked.baseline, unreadable=error)) from None
 
 
-def _answer(found: Found, judge: Judge) -> Json:
-    if found.unreadable is not None:
-        return {"problem": unreadable_problem(found.file, found.unreadable)}
-    return judge(found.config)
+def _answers(founds: Sequence[Found], judge: Judge, tick: Tick) -> Iterator[Json]:
+    judged = judge([found.config for found in founds if found.unreadable is None])
+    for done, found in enumerate(founds):
+        tick(done, len(founds))
+        if found.unreadable is None:
+            yield next(judged)
+        else:
+            yield {"problem": unreadable_problem(found.file, found.unreadable)}
 
 
 def _weighed(

@@ -100,6 +100,7 @@ class Item:
         findings: those of the review, in its order.
         faults: what the problem is, at least one.
         is_skipped: was it left alone because of something else (the graph, the baseline)?
+        is_let_pass: does it pass although nobody judged it, because the caller wanted that?
     """
 
     name: str
@@ -109,6 +110,7 @@ class Item:
     findings: tuple[Weighed, ...] = ()
     faults: tuple[Fault, ...] = ()
     is_skipped: bool = False
+    is_let_pass: bool = False
 
     @property
     def outcome(self) -> str:
@@ -129,13 +131,17 @@ class Item:
 
 @dataclass(frozen=True, slots=True)
 class Counts:
-    """How many configs were found and how they ended; and how many findings that count are what."""
+    """How many configs were found and how they ended; and how many findings that count are what.
+
+    Those skipped and those let pass are among those not judged.
+    """
 
     found: int
     reviewed: int
     verdicts: Counter[str]
     not_judged: int
     skipped: int
+    let_pass: int
     new: int
     known: int
     accepted: int
@@ -177,6 +183,7 @@ class Run:
             verdicts=Counter(judged),
             not_judged=outcomes["not judged"] + outcomes["skipped"],
             skipped=outcomes["skipped"],
+            let_pass=sum(item.is_let_pass for item in self.items),
             new=standings["new"],
             known=standings["known"],
             accepted=standings["accepted"],
@@ -185,6 +192,6 @@ class Run:
     @property
     def exit_status(self) -> int:
         """What the command ends with."""
-        if self.problem or not self.items or self.counts.reviewed < len(self.items):
+        if self.problem or not self.items or self.counts.reviewed + self.counts.let_pass < len(self.items):
             return NOT_JUDGED
         return FALLS_SHORT if any(item.falls_short for item in self.items) else NOTHING_SHORT

@@ -15,8 +15,8 @@ from urllib.parse import quote
 
 from pathgate.cli.choices import NOT_JUDGED_MEANS, NOT_JUDGED_RULE
 from pathgate.cli.explaining import rule_text
-from pathgate.cli.run import Fault, Item, Place, Run, Weighed
-from pathgate.cli.wording import counts_text, gone_text, waiver_text
+from pathgate.cli.run import NOT_JUDGED, Fault, Item, Place, Run, Weighed
+from pathgate.cli.wording import counts_text, gone_text, outcome_text, waiver_text
 from pathgate.cli.writing import json_bytes
 from pathgate.review.rules import RULES
 from pathgate.review.visible import visible
@@ -26,7 +26,6 @@ Json = dict[str, Any]
 
 SCHEMA = "https://docs.oasis-open.org/sarif/sarif/v2.1.0/errata01/os/schemas/sarif-schema-2.1.0.json"
 _ROOT = "ROOT"
-_MEANINGS = {0: "no config falls short", 1: "some config falls short", 2: "something could not be judged"}
 
 
 def run_sarif(run: Run, root: Path | None = None) -> bytes:
@@ -66,9 +65,9 @@ def _described(name: str, meaning: str, level: str) -> Json:
 def _invocation(run: Run, base: Path) -> Json:
     notes = [*run.notes, *map(gone_text, run.gone)]
     return {
-        "executionSuccessful": run.exit_status < 2,
+        "executionSuccessful": run.exit_status < NOT_JUDGED and not run.counts.let_pass,
         "exitCode": run.exit_status,
-        "exitCodeDescription": _MEANINGS[run.exit_status],
+        "exitCodeDescription": outcome_text(run),
         "toolExecutionNotifications": [
             *(_notification(fault.message, "error", _locations(fault.place, base)) for fault in run.faults),
             *(_notification(note, "note", []) for note in [*notes, counts_text(run)]),
@@ -99,7 +98,7 @@ def _results(item: Item, base: Path) -> Iterator[Json]:
 def _not_judged(item: Item, fault: Fault, base: Path) -> Json:
     return {
         "ruleId": NOT_JUDGED_RULE,
-        "level": "error",
+        "level": "warning" if item.is_let_pass else "error",
         "message": {"text": visible(f"{item.name}: {fault.message}")},
         "locations": _locations(fault.place, base, item.name),
         "suppressions": [],

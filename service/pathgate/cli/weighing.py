@@ -35,7 +35,9 @@ class Scales:
         """A config with its findings weighed, or with its problem."""
         problem = answer.get("problem")
         if problem is not None:
-            return Item(found.name, found.place(), problem=problem, faults=faults_of(problem, found))
+            faults = faults_of(problem, found)
+            is_let_pass = answer.get("let_pass", False)
+            return Item(found.name, found.place(), problem=problem, faults=faults, is_let_pass=is_let_pass)
         review = answer["review"]
         weighed = tuple(
             Weighed(each, found.place(each["pointer"], each.get("part")), self._standing(found, each))

@@ -6,11 +6,17 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from pathgate.cli.baseline import Entry
-from pathgate.cli.run import VERDICTS, Fault, Run, Weighed
+from pathgate.cli.run import FALLS_SHORT, NOT_JUDGED, NOTHING_SHORT, VERDICTS, Fault, Run, Weighed
 from pathgate.review.visible import visible
 
 # Faults of one config that are listed; more are counted.
 _MOST_FAULTS = 10
+
+_OUTCOMES = {
+    NOTHING_SHORT: "no config falls short",
+    FALLS_SHORT: "some config falls short",
+    NOT_JUDGED: "something could not be judged",
+}
 
 
 def counts_text(run: Run) -> str:
@@ -22,12 +28,32 @@ def counts_text(run: Run) -> str:
     counts = run.counts
     verdicts = ", ".join(f"{counts.verdicts[verdict]} {verdict}" for verdict in VERDICTS)
     configs = "1 config" if counts.found == 1 else f"{counts.found} configs"
-    skipped = f" ({counts.skipped} skipped)" if counts.skipped else ""
+    aside = ((counts.skipped, "skipped"), (counts.let_pass, "let pass"))
+    how = ", ".join(f"{number} {word}" for number, word in aside if number)
+    of_these = f" ({how})" if how else ""
     counted = "Errors" if run.fail_on == "error" else "Errors and warnings"
     return (
-        f"{configs} found, {counts.reviewed} reviewed: {verdicts}; {counts.not_judged} not judged{skipped}."
+        f"{configs} found, {counts.reviewed} reviewed: {verdicts}; {counts.not_judged} not judged{of_these}."
         f" {counted}: {counts.new} new, {counts.known} known, {counts.accepted} accepted."
     )
+
+
+def outcome_text(run: Run) -> str:
+    """What the exit status says, in a few words.
+
+    >>> outcome_text(Run())
+    'something could not be judged'
+    """
+    if run.exit_status == NOTHING_SHORT and run.counts.let_pass:
+        return f"no config that was judged falls short, and {run.counts.let_pass:,} let pass were not judged"
+    return _OUTCOMES[run.exit_status]
+
+
+def let_pass_text(run: Run) -> str:
+    """That configs pass which nobody judged; empty where none do."""
+    if not run.counts.let_pass:
+        return ""
+    return f"Not judged and let pass, since the service is out of reach and the call says so: {run.counts.let_pass:,}."
 
 
 def fault_lines(faults: Sequence[Fault]) -> list[str]:
