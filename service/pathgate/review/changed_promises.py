@@ -1,9 +1,9 @@
 """Which independencies does one graph promise and another not?
 
 The statements of a graph's basis (one for each separable pair of columns) are held against the other graph; one that
-names a node which that graph lacks or does not measure cannot be kept there. Whether two nodes are separated depends
-on what lies above them and on what is given, so only statements about something at or below a change are looked at
-at all; those of one column go through the other graph together (``criteria.batch``).
+names a node which that graph lacks or does not measure cannot be kept there. A statement breaks only by an edge more
+or a column less, and only above what it is about, so the others are not looked at; many go through the other graph
+together (``criteria.batch``).
 """
 
 from __future__ import annotations
@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import islice
 
 from pathgate.criteria.batch import Statement, separated_each
 from pathgate.criteria.deadline import Deadline
@@ -20,7 +21,10 @@ from pathgate.criteria.separable import Pairs
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import descendants
 from pathgate.graphs.masks import mask_of, members
-from pathgate.review.graph_difference import Difference
+from pathgate.review.graph_difference import Difference, NamedEdge
+
+# Statements that go through the other graph together: many cost little more than one, and the first should come soon.
+_TOGETHER = 512
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,18 +66,25 @@ class BrokenPromises:
         >>> list(BrokenPromises(old, new, Difference(old, new)).statements(Deadline.never()))
         [(2, Promise(x='rain', y='refund', given=('delay',)))]
         """
-        pairs = Pairs(keep_rows(self.promising))
         size = max(1, self.promising.size)
-        first, second = divmod(start, size)
+        waiting = self._about_changes(divmod(start, size), deadline)
+        while chunk := list(islice(waiting, _TOGETHER)):
+            for each in self._not_kept(chunk, deadline):
+                yield each.x * size + each.y.bit_length() - 1, self._named(each)
+
+    def _about_changes(self, start: tuple[int, int], deadline: Deadline) -> Iterator[Independency]:
+        """The statements of the basis about something at or below a change, from a pair on."""
+        affected = self._affected
+        if not affected:
+            return
+        pairs = Pairs(keep_rows(self.promising))
+        first, second = start
         for node in members(pairs.columns >> first << first):
             deadline.poll()
-            wanted = -1 if self._affected >> node & 1 else self._affected
+            others = pairs.separable(node, deadline) & (-1 if affected >> node & 1 else affected)
             if node == first:
-                wanted = wanted >> second << second
-            others = pairs.separable(node, deadline) & wanted if self._affected else 0
-            listed = [basis(pairs, node, other) for other in members(others)]
-            for each in self._not_kept(listed, deadline):
-                yield node * size + each.y.bit_length() - 1, self._named(each)
+                others = others >> second << second
+            yield from (basis(pairs, node, other) for other in members(others))
 
     def _not_kept(self, listed: list[Independency], deadline: Deadline) -> list[Independency]:
         asked = [(each, self._in_other(each)) for each in listed]
@@ -104,19 +115,23 @@ class BrokenPromises:
 
     @cached_property
     def _affected(self) -> int:
-        """The nodes at or below a change in either graph: a statement about none of them is kept."""
-        touched = _touched(self.difference)
-        below = set[str]()
-        for graph in (self.promising, self.other):
-            ends = mask_of(graph.index[name] for name in touched if name in graph.index)
-            below.update(graph.names_of(descendants(graph, ends)))
-        return mask_of(self.promising.index[name] for name in below if name in self.promising.index)
+        """The columns one of which a statement must be about for it not to be kept.
 
+        On a path that is open in the other graph alone, or on the way down from one of its colliders, lies an edge
+        that only that graph has. What this leads to lies above x, y or something given there, and what is given lies
+        above x or y here; so does a given column that is none there.
+        """
+        mine, other = self.promising, self.other
+        joined = set[str]()
+        for kind, first, second in self._new_there:
+            joined.update((first, second) if kind == "bidirected" else (second,))
+        below = other.names_of(descendants(other, mask_of(other.index[name] for name in joined)))
+        lost = (node for node, place in enumerate(self._columns_of_other) if place is None)
+        known = (mine.index[name] for name in below if name in mine.index)
+        return descendants(mine, mask_of(known) | mask_of(lost) & mine.measured)
 
-def _touched(difference: Difference) -> set[str]:
-    """The nodes whose own edges or presence among the columns changed; of an arrow only the end it leads to."""
-    touched = {*difference.added_nodes, *difference.removed_nodes}
-    touched.update(each.node for each in difference.changed_nodes if "measured" in each.members)
-    for kind, source, target in (*difference.added_edges, *difference.removed_edges):
-        touched.update((source, target) if kind == "bidirected" else (target,))
-    return touched
+    @property
+    def _new_there(self) -> tuple[NamedEdge, ...]:
+        """The edges that only the other graph has."""
+        found = self.difference
+        return found.added_edges if self.other is found.new else found.removed_edges

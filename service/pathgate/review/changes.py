@@ -17,12 +17,13 @@ from pathgate.criteria.errors import OutOfTime
 from pathgate.graphs.errors import PathgateError
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
+from pathgate.review.claims import Claim
 from pathgate.review.config import read_config
 from pathgate.review.culprits import Culprits, least_changes
 from pathgate.review.errors import InvalidConfig
 from pathgate.review.findings import Finding
 from pathgate.review.graph_difference import Change, Difference
-from pathgate.review.review import Verdict, review
+from pathgate.review.review import Verdict, verdict_and_findings
 
 Outcome = Literal["broken", "mended", "same", "other-reason"]
 
@@ -76,11 +77,11 @@ class ConfigChange:
 def judge(value: object, graph: CausalGraph, deadline: Deadline) -> Judgement:
     """What a graph makes of a config that was parsed from JSON or YAML; raises nothing that is the config's fault."""
     try:
-        answer = review(graph, read_config(value, graph), deadline)
+        config = read_config(value, graph)
+        verdict, findings = verdict_and_findings(Claim.of(config), config, deadline)
     except (InvalidConfig, OutOfTime) as error:
         return Judgement(problem=error)
-    errors = tuple(finding for finding in answer.findings if finding.severity == "error")
-    return Judgement(answer.verdict, errors)
+    return Judgement(verdict, tuple(finding for finding in findings if finding.severity == "error"))
 
 
 def change_of(

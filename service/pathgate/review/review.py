@@ -95,19 +95,7 @@ def review(
     """
     deadline = deadline or Deadline.never()
     claim = Claim.of(config)
-    findings = [
-        *degenerate_findings(claim, config),
-        *breaking_findings(claim, config, deadline),
-        *population_findings(claim, config),
-        *warning_findings(claim, config, deadline),
-        *timing_findings(claim, config),
-        *term_findings(claim, config),
-        *computed_findings(claim, config),
-        *assumption_findings(claim, config),
-    ]
-    findings = accept(findings, config.accepted, today)
-    findings.sort(key=lambda finding: _GRAVITY[finding.severity])
-    verdict = _verdict(claim, findings)
+    verdict, findings = verdict_and_findings(claim, config, deadline, today)
     remedies = find_remedies(claim, deadline) if verdict == "biased" else ()
     columns = claim.graph.measured if all_columns else 0
     columns |= _columns_in_question(claim, findings, remedies)
@@ -124,6 +112,29 @@ def review(
         summary=summarise(claim, verdict, findings, first),
         measure_next=_measure_next(claim, deadline) if verdict == "unanswerable" else None,
     )
+
+
+def verdict_and_findings(
+    claim: Claim, config: Config, deadline: Deadline, today: date | None = None
+) -> tuple[Verdict, list[Finding]]:
+    """The part of a review that the verdict rests on; errors first.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    findings = [
+        *degenerate_findings(claim, config),
+        *breaking_findings(claim, config, deadline),
+        *population_findings(claim, config),
+        *warning_findings(claim, config, deadline),
+        *timing_findings(claim, config),
+        *term_findings(claim, config),
+        *computed_findings(claim, config),
+        *assumption_findings(claim, config),
+    ]
+    findings = accept(findings, config.accepted, today)
+    findings.sort(key=lambda finding: _GRAVITY[finding.severity])
+    return _verdict(claim, findings), findings
 
 
 def _verdict(claim: Claim, findings: list[Finding]) -> Verdict:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from pathgate.web.endpoints import (
     adjustment,
+    changes,
     colliders,
     constraints,
     equivalence,
@@ -18,6 +19,7 @@ from pathgate.web.operations import Operation
 OPERATIONS: tuple[Operation, ...] = (
     review.OPERATION,
     reviews.OPERATION,
+    changes.OPERATION,
     adjustment.OPERATION,
     separation.OPERATION,
     colliders.OPERATION,
