@@ -16,8 +16,6 @@ from math import lcm
 
 import numpy as np
 import numpy.typing as npt
-from scipy.sparse import csr_array
-from scipy.sparse.csgraph import breadth_first_order, maximum_flow
 
 from pathgate.criteria.hubs import Hubs
 from pathgate.graphs.masks import BoolArray, mask_of, members
@@ -77,6 +75,9 @@ class _Network:
 
     def reached(self, *, from_sink: bool) -> BoolArray:
         """The states that a maximum flow leaves within reach of the source, or from which it leaves the sink so."""
+        from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and many questions do without
+        from scipy.sparse.csgraph import breadth_first_order, maximum_flow  # noqa: PLC0415
+
         starts, ends, capacities = self.steps.T
         network = csr_array((capacities, (starts, ends)), shape=(self.sink + 1, self.sink + 1))
         left = csr_array(network - maximum_flow(network, self.source, self.sink).flow) > 0

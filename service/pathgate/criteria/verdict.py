@@ -9,8 +9,6 @@ stands for the clique of itself and its parents. One search without states, O(no
 from __future__ import annotations
 
 import numpy as np
-from scipy.sparse import csr_array
-from scipy.sparse.csgraph import connected_components
 
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors
@@ -53,6 +51,9 @@ def _are_apart_by_masks(graph: CausalGraph, xs: int, ys: int, given: int, releva
 
 
 def _are_apart_by_arrays(graph: CausalGraph, xs: int, ys: int, given: int, relevant: int) -> bool:
+    from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and small graphs do without
+    from scipy.sparse.csgraph import connected_components  # noqa: PLC0415
+
     size = graph.size
     inside, leaves = unpack(relevant, size), ~unpack(given, size)
     # An arrow into a relevant node comes from one.

@@ -9,8 +9,6 @@ from __future__ import annotations
 from collections import deque
 
 import numpy as np
-from scipy.sparse import csr_array
-from scipy.sparse.csgraph import connected_components
 
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import members
@@ -23,6 +21,9 @@ def cycles(graph: CausalGraph) -> tuple[tuple[str, ...], ...]:
     """
     if not len(graph.sources) or (graph.is_small and _is_sorted_out(graph)):
         return ()
+    from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and only cycles need it
+    from scipy.sparse.csgraph import connected_components  # noqa: PLC0415
+
     steps = csr_array((np.ones(len(graph.sources)), (graph.sources, graph.targets)), shape=(graph.size,) * 2)
     count, labels = connected_components(steps, directed=True, connection="strong")
     if count == graph.size:

@@ -9,8 +9,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy.sparse import csr_array
-from scipy.sparse.csgraph import breadth_first_order
 
 from pathgate.graphs.masks import BoolArray, IntArray
 
@@ -32,6 +30,9 @@ class Rows:
 
     def reached_from(self, seeds: IntArray) -> BoolArray:
         """Which states some chain of steps reaches from the seeds, these included."""
+        from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and small graphs do without
+        from scipy.sparse.csgraph import breadth_first_order  # noqa: PLC0415
+
         # One more state that steps to every seed makes several seeds a single start.
         ends = np.concatenate([self.ends, seeds.astype(np.int32)])
         begins = np.append(self.begins, np.int32(len(ends)))

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from pathgate.review.assumed import Assumed
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.findings import Finding
-from pathgate.review.sql_names import Assumed
 from pathgate.review.wording import listed, part_text
 
 _RULES = {

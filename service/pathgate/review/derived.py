@@ -19,7 +19,6 @@ from pathgate.graphs.masks import mask_of, members
 from pathgate.graphs.names import quoted
 from pathgate.review.names import NameReader
 from pathgate.review.schema import STANDARD_DIALECT
-from pathgate.review.sql_names import names_in_expression, read_sql_expression
 
 MOST_NAME_CHARACTERS = 200
 
@@ -135,6 +134,8 @@ class _Deriving:
     def _mentioned(self, said: Mapping[str, Any]) -> Iterator[tuple[str, str]]:
         """Member and name of each column that a declaration names."""
         if "sql" in said:
+            from pathgate.review.sql_names import names_in_expression  # noqa: PLC0415 - as in rows_kept
+
             yield from (("sql", name) for name in names_in_expression(said["sql"], self._dialect))
         if "recodes" in said:
             yield "recodes", said["recodes"]
@@ -157,6 +158,8 @@ class _Deriving:
                 self._columns = self._columns.grown([(name, inputs)], {})
 
     def _add_expression(self, name: str, text: str) -> None:
+        from pathgate.review.sql_names import read_sql_expression  # noqa: PLC0415 - as in rows_kept
+
         columns = self._columns
         coarse = frozenset(each for each, is_coarse in columns.recodes.items() if is_coarse)
         place: Place = ("derived", name, "sql")

@@ -10,10 +10,10 @@ from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import quoted
+from pathgate.review.assumed import Assumed, SqlFilter
 from pathgate.review.names import Named, NameReader
 from pathgate.review.parts import FilterPart, read_parts
 from pathgate.review.schema import STANDARD_DIALECT
-from pathgate.review.sql_names import Assumed, SqlFilter, read_sql_filter
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,6 +42,9 @@ def understand_rows(said: Mapping[str, Any], names: NameReader, modelled: Sequen
         return RowsKept(read_parts(row_filter, names, place), silent)
     if any(fault.place == ("dialect",) for fault in names.faults):
         return RowsKept((), silent)
+    # The SQL parser takes long to load, and many configs have none for it.
+    from pathgate.review.sql_names import read_sql_filter  # noqa: PLC0415
+
     dialect = said.get("dialect", STANDARD_DIALECT)
     found: SqlFilter = read_sql_filter(
         row_filter,

@@ -15,46 +15,11 @@ from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import quoted
+from pathgate.review.assumed import Assumed, SqlFilter
 from pathgate.review.sql_bounds import SqlRefused
 from pathgate.review.sql_columns import ColumnFinder, Reads
 from pathgate.review.sql_expression import Keeps, read_expression
 from pathgate.review.sql_filter import Condition, Conditions, sql_conditions
-
-
-@dataclass(frozen=True, slots=True)
-class Assumed:
-    """What a row filter leaves unsaid, and a review takes for granted.
-
-    Attributes:
-        kind: what the matter is.
-        columns: mask of the nodes it is about.
-        tables: the tables it is about.
-        written: the part it is about, where it is about one.
-        place: the row filter's.
-        names: the names it is about that the config declares as outside the graph.
-    """
-
-    kind: str
-    columns: int
-    place: Place
-    tables: tuple[str, ...] = ()
-    written: str | None = None
-    names: tuple[str, ...] = ()
-
-
-@dataclass(frozen=True, slots=True)
-class SqlFilter:
-    """A row filter in SQL against a graph.
-
-    Attributes:
-        parts: what it selects on.
-        assumed: what is taken for granted about it.
-        emptied: mask of the columns of which it keeps nothing but nulls.
-    """
-
-    parts: tuple[Part, ...] = ()
-    assumed: tuple[Assumed, ...] = ()
-    emptied: int = 0
 
 
 def read_sql_filter(  # noqa: PLR0913 - what may be said of names beside the graph, each by its keyword
