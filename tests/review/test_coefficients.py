@@ -28,6 +28,9 @@ def read_by_definition(question: Question, term: str) -> str:
         return "neither"
     if question.results & (columns.bases(node) | {node}):
         return "neither"
+    # Rows of one value of the outcome, or of the column itself, leave nothing to compare.
+    if pinned(question) & (question.results | columns.bases(node) | {node}):
+        return "neither"
     usable = question.measured - question.ends
     held = columns.nodes([*question.covariates, *question.weighted_by, *question.matched_on]) & usable
     held |= columns.nodes(question.treatments)
@@ -45,6 +48,16 @@ def read_by_definition(question: Question, term: str) -> str:
         return "total"
     is_single = len(alone.treated) == 1 and len(alone.results) == 1
     return "direct" if is_single and reviews_as_sound(replace(alone, asks="direct")) else "neither"
+
+
+def pinned(question: Question) -> set:
+    """The columns that the filter holds at one value."""
+    fixed = [
+        part
+        for part in question.parts
+        if part.get("fixed") and not set(question.columns.coarse) & set(part["columns"])
+    ]
+    return {node for part in fixed for node in question.columns.nodes(part["columns"])}
 
 
 def judged_parts(question: Question) -> Iterator[dict]:
@@ -88,3 +101,28 @@ def test_the_verdict_of_the_treatment_does_not_carry_over_to_a_confounder():
     told = review_document(review(graph, read_config(config, graph)))["coefficients"]
     assert [(each["term"], each["reads_as"]) for each in told] == [("late", "total"), ("weather", "neither")]
     assert "region" in told[1]["why"]
+
+
+@pytest.mark.parametrize(
+    ("config", "why"),
+    [
+        (
+            {"row_filter": "refund = TRUE"},
+            'the rows kept have one value of "refund", so nothing is left to explain',
+        ),
+        (
+            {"row_filter": "late = TRUE"},
+            "the rows kept have one value of it, so nothing of it is left to vary",
+        ),
+        (
+            {"covariates": ["claims"], "derived": {"claims": {"from": ["refund", "weather"]}}},
+            'it is computed from the outcome "refund"',
+        ),
+    ],
+)
+def test_where_nothing_is_left_to_compare_no_coefficient_is_an_effect(config: dict, why: str):
+    graph = CausalGraph.of(("late", "refund"), ("weather", "refund"))
+    asked = {"treatment": "late", "outcome": "refund", "covariates": ["weather"], **config}
+    told = review_document(review(graph, read_config(asked, graph)))["coefficients"]
+    assert ("neither", why) in {(each["reads_as"], each["why"]) for each in told}
+    assert told[0]["reads_as"] == "neither"

@@ -15,7 +15,7 @@ from pathgate.criteria.adjustment import Effect, direct_effect, is_valid, total_
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import find_open_path
 from pathgate.criteria.reachability import Conditions
-from pathgate.graphs.masks import mask_of
+from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.determined import determined_by
@@ -65,10 +65,8 @@ class _Reading:
         absorbing = claim.usable.fixed_effects
         self._absorbed = absorbing | claim.absorbed(absorbing)
         self._outcomes = listed(self._graph.names_of(claim.outcomes))
-        missing = self._graph.names_of(claim.ends & ~self._graph.measured)
-        self._unfit = (
-            f"the platform does not hold {listed(missing)}, so no such model can be fitted" if missing else ""
-        )
+        self._pinned = mask_of(node for part in claim.parts if part.fixed for node in members(part.columns))
+        self._unfit = self._why_unfit()
 
     def read(self, term: ModelTerm) -> tuple[ReadsAs, str]:
         """How one term reads, and why."""
@@ -84,6 +82,17 @@ class _Reading:
             return "neither", "several terms together describe this column: none of them is its effect alone"
         return self._column(term.node)
 
+    def _why_unfit(self) -> str:
+        """Why no coefficient of this model means anything; empty where some may."""
+        missing = self._graph.names_of(self._claim.ends & ~self._graph.measured)
+        if missing:
+            return f"the platform does not hold {listed(missing)}, so no such model can be fitted"
+        for fixed, what in ((self._pinned, "rows kept have"), (self._absorbed, "fixed effects leave")):
+            names = self._graph.names_of(self._claim.outcomes & fixed)
+            if names:
+                return f"the {what} one value of {listed(names)}, so nothing is left to explain"
+        return ""
+
     def _product(self, term: ModelTerm) -> str:
         columns = self._graph.names_of(term.crossed)
         if not columns:
@@ -96,8 +105,9 @@ class _Reading:
         if self._unfit:
             return "neither", self._unfit
         causes = self._columns.bases(node)
-        if (1 << node | causes) & ~self._graph.measured or self._claim.outcomes & (1 << node | causes):
-            return "neither", "the platform does not hold it, or it is the outcome itself"
+        unfit = self._why_no_cause(node, causes)
+        if unfit:
+            return "neither", unfit
         others = self._terms & ~(1 << node) | self._absorbed
         stuck = self._without_variation(node, causes, others)
         if stuck:
@@ -109,6 +119,24 @@ class _Reading:
         if direct is not None and is_valid(direct, others):
             return "direct", self._direct_words(total, direct, others)
         return "neither", self._neither(total, direct, others)
+
+    def _why_no_cause(self, node: int, causes: int) -> str:
+        """Why the column itself can have no effect here; empty where it can."""
+        own, outcomes = 1 << node, self._claim.outcomes
+        missing = self._graph.names_of((own | causes) & ~self._graph.measured)
+        if missing:
+            of_it = "it" if own & ~self._graph.measured else f"{listed(missing)}, which it is computed from"
+            return f"the platform does not hold {of_it}"
+        if outcomes & own:
+            return "it is the outcome itself"
+        if outcomes & causes:
+            return f"it is computed from the outcome {listed(self._graph.names_of(outcomes & causes))}"
+        if self._pinned & own:
+            return "the rows kept have one value of it, so nothing of it is left to vary"
+        pinned = self._graph.names_of(self._pinned & causes)
+        if pinned:
+            return f"it is computed from {listed(pinned)}, of which the rows kept have one value"
+        return ""
 
     def _direct(self, causes: int) -> Effect | None:
         outcomes = self._claim.outcomes
@@ -130,7 +158,8 @@ class _Reading:
         stuck = self._claim.only_varied_by(causes, held)
         if stuck:
             names = listed(self._graph.names_of(stuck))
-            return f"{names} is computed from it and held fixed, so nothing of it is left to vary"
+            are = "are" if stuck.bit_count() > 1 else "is"
+            return f"{names} {are} computed from it and held fixed, so nothing of it is left to vary"
         return ""
 
     def _total(self, effect: Effect) -> str:
