@@ -11,6 +11,7 @@ from typing import Any
 
 import click
 
+from pathgate.cli.change_command import changes
 from pathgate.cli.doctor_command import doctor
 from pathgate.cli.review_command import review
 from pathgate.cli.small_commands import check, explain, new
@@ -92,5 +93,5 @@ def _show_version(context: click.Context) -> None:
     context.exit()
 
 
-for command in (review, check, doctor, explain, new):
+for command in (review, changes, check, doctor, explain, new):
     main.add_command(command)

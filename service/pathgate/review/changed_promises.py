@@ -12,6 +12,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import islice
+from typing import Literal
 
 from pathgate.criteria.batch import Statement, separated_each
 from pathgate.criteria.deadline import Deadline
@@ -25,6 +26,9 @@ from pathgate.review.graph_difference import Difference, NamedEdge
 
 # Statements that go through the other graph together: many cost little more than one, and the first should come soon.
 _TOGETHER = 512
+
+
+Side = Literal["lost", "gained"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -135,3 +139,19 @@ class BrokenPromises:
         """The edges that only the other graph has."""
         found = self.difference
         return found.added_edges if self.other is found.new else found.removed_edges
+
+
+def lost_and_gained(
+    difference: Difference, deadline: Deadline, start: int = 0
+) -> Iterator[tuple[int, tuple[Side, Promise]]]:
+    """The promises lost, then those gained, from a place on, each with its place.
+
+    Raises:
+        OutOfTime: the deadline came first.
+    """
+    lost = BrokenPromises(difference.old, difference.new, difference)
+    for place, each in lost.statements(deadline, start):
+        yield place, ("lost", each)
+    gained = BrokenPromises(difference.new, difference.old, difference)
+    for place, each in gained.statements(deadline, max(0, start - lost.places)):
+        yield lost.places + place, ("gained", each)

@@ -2,11 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
 from pathgate.criteria.deadline import Deadline
 from pathgate.demo import demo_configs, demo_graph
-from pathgate.review.changed_promises import BrokenPromises, Promise
+from pathgate.review.changed_promises import lost_and_gained
 from pathgate.review.culprits import MOST_TRIALS
 from pathgate.review.graph_difference import Difference
 from pathgate.web.changing import config_entry, difference_document, promise_document
@@ -34,22 +32,6 @@ def answer(call: Call) -> Json:
         },
         **page,
     }
-
-
-def lost_and_gained(
-    difference: Difference, deadline: Deadline, start: int = 0
-) -> Iterator[tuple[int, tuple[str, Promise]]]:
-    """The promises lost, then those gained, from a place on, each with its place.
-
-    Raises:
-        OutOfTime: the deadline came first.
-    """
-    lost = BrokenPromises(difference.old, difference.new, difference)
-    for place, each in lost.statements(deadline, start):
-        yield place, ("lost", each)
-    gained = BrokenPromises(difference.new, difference.old, difference)
-    for place, each in gained.statements(deadline, max(0, start - lost.places)):
-        yield lost.places + place, ("gained", each)
 
 
 def _entries(call: Call, difference: Difference) -> list[Json]:
