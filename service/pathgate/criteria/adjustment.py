@@ -41,6 +41,13 @@ class Effect:
         """The graph without the first arrow of every proper causal path (for a direct effect: without the arrow)."""
         return self.kept.graph.without_arrows(self.treatments, self.on_causal_paths)
 
+    @cached_property
+    def some_valid_set(self) -> int | None:
+        """A minimal valid set of measured columns, or None where none is valid."""
+        found = valid_sets(self)
+        minimal = None if found is None else found.minimal()
+        return None if minimal is None else covariates_in(self, minimal)
+
     @property
     def usable(self) -> int:
         """The measured columns that are neither treatment, outcome nor forbidden."""
@@ -93,6 +100,8 @@ def valid_set(effect: Effect, *, required: int = 0, allowed: int = -1) -> int | 
 
     Minimal among the valid sets that hold ``required``; see ``separators`` for the method and its cost.
     """
+    if not required and allowed == -1:
+        return effect.some_valid_set
     found = valid_sets(effect, required=required, allowed=allowed)
     minimal = None if found is None else found.minimal()
     return None if minimal is None else covariates_in(effect, minimal, required)

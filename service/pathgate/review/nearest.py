@@ -11,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
-from pathgate.criteria.adjustment import Effect, is_valid
+from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import Trail, find_open_path
 from pathgate.criteria.reachability import Conditions
@@ -70,42 +70,43 @@ def nearest_sound(claim: Claim, start: Choice, deadline: Deadline, most: int) ->
         judged += len(level)
         if judged > most:
             return []
-        sound = []
+        sound: list[Choice] = []
         following: dict[Key, _Step] = {}
         for step in level.values():
             deadline.poll()
-            if claim.is_carried_by(step.choice):
+            # Once one is sound no further change is looked for, and to judge is cheaper than to find a path.
+            closing = None if sound else _closing(claim, step)
+            if closing is not None:
+                following.update((key_of(claim, nearer.choice), nearer) for nearer in closing)
+            elif claim.is_carried_by(step.choice):
                 sound.append(step.choice)
             elif not sound:
-                for nearer in _closing(claim, step):
-                    following.setdefault(key_of(claim, nearer.choice), nearer)
+                # Only who is kept stands in the way: no path tells which columns could undo that.
+                following.update((key_of(claim, nearer.choice), nearer) for nearer in _any(claim, step))
         if sound:
             return sound
         level = following
     return []
 
 
-def _closing(claim: Claim, step: _Step) -> Iterator[_Step]:
-    """Changes one of which is part of whatever mends this choice."""
+def _closing(claim: Claim, step: _Step) -> list[_Step] | None:
+    """Changes one of which is part of whatever mends this choice; None where no path is open in it."""
     choice = step.choice
     stuck = claim.leaves_no_variation(choice)
     if stuck:
-        yield from _freeing(claim, step, stuck)
-        return
+        return list(_freeing(claim, step, stuck))
     effect = claim.effect_among(choice.parts)
     held = claim.held_fixed(choice)
-    if is_valid(effect, held):
-        # Only who is kept stands in the way: no path tells which columns could undo that.
-        yield from _any(claim, step, effect)
-        return
     graph = effect.back_door_graph
-    conditioned = held | effect.kept.conditioned
-    trail = find_open_path(graph, effect.treatments, effect.outcomes, Conditions.on(graph, conditioned))
-    if trail is not None:
-        yield from _blocking(effect, step, trail, held)
-        for node, role in trail.inner:
-            if role == "collider":
-                yield from _letting_go(claim, step, effect, node, held)
+    conditions = Conditions.on(graph, held | effect.kept.conditioned)
+    trail = find_open_path(graph, effect.treatments, effect.outcomes, conditions)
+    if trail is None:
+        return None
+    nearer = list(_blocking(effect, step, trail, held))
+    for node, role in trail.inner:
+        if role == "collider":
+            nearer += _letting_go(claim, step, effect, node, held)
+    return nearer
 
 
 def _blocking(effect: Effect, step: _Step, trail: Trail, held: int) -> Iterator[_Step]:
@@ -162,9 +163,11 @@ def _made_of(claim: Claim, node: int) -> int:
     return found
 
 
-def _any(claim: Claim, step: _Step, effect: Effect) -> Iterator[_Step]:
+def _any(claim: Claim, step: _Step) -> Iterator[_Step]:
     """Every change: only an ancestor of what is in question can block anything."""
-    choice, kept = step.choice, effect.kept
+    choice = step.choice
+    effect = claim.effect_among(choice.parts)
+    kept = effect.kept
     ends = effect.treatments | effect.outcomes
     relevant = ancestors(effect.back_door_graph, ends | claim.held_fixed(choice) | kept.conditioned)
     held = claim.held_fixed(choice) | kept.conditioned | step.dropped
