@@ -10,7 +10,7 @@ from pathgate.review.graph_difference import Difference
 from pathgate.web.changing import config_entry, difference_document, promise_document
 from pathgate.web.endpoints.change_schema import CHANGES, CONFIG_CHANGE
 from pathgate.web.endpoints.reading import graph_of
-from pathgate.web.endpoints.review import REVIEW_COMPONENTS
+from pathgate.web.endpoints.review_schema import REVIEW_COMPONENTS
 from pathgate.web.endpoints.shared_schemas import CURSOR, GRAPH, LIMIT
 from pathgate.web.operations import CONFIGS_APART, Call, Example, Json, Operation
 from pathgate.web.paging import page_at
@@ -22,7 +22,12 @@ def answer(call: Call) -> Json:
     call.refuse_faults()
     difference = Difference(graph, other)
     # Before the configs, which have time budgets of their own, may have used up the call's.
-    found, page = page_at(call, "changes", lambda start: lost_and_gained(difference, call.deadline, start))
+    found, page = page_at(
+        call,
+        "changes",
+        lambda start: lost_and_gained(difference, call.deadline, start),
+        first_may_be_empty=True,
+    )
     return {
         "configs": _entries(call, difference),
         **difference_document(difference),

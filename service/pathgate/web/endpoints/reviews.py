@@ -9,7 +9,7 @@ from pathgate.demo import demo_configs, demo_graph
 from pathgate.graphs.graph import CausalGraph
 from pathgate.review.provenance import graph_digest
 from pathgate.web.endpoints.reading import graph_of
-from pathgate.web.endpoints.review import REVIEW_COMPONENTS
+from pathgate.web.endpoints.review_schema import REVIEW_COMPONENTS
 from pathgate.web.endpoints.shared_schemas import GRAPH
 from pathgate.web.judging import judged
 from pathgate.web.operations import CONFIGS_APART, Call, Example, Json, Operation
