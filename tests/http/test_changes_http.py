@@ -8,13 +8,14 @@ from typing import Any
 
 import pytest
 
-from pathgate.criteria import Deadline
+from pathgate.criteria import Deadline, OutOfTime
 from pathgate.demo import demo_configs, demo_graph
 from pathgate.graphs import read_graph
 from pathgate.review.graph_difference import Difference
 from pathgate.web.changing import config_entry
 from pathgate.web.endpoints import OPERATIONS
 from pathgate.web.endpoints.changes import OPERATION
+from pathgate.web.operations import envelope_shape, open_call
 from pathgate.web.settings import Settings
 from tests.http.conftest import service_with
 from tests.values import Graph, arrows_of, graph_of, node_names
@@ -261,3 +262,29 @@ def test_a_config_that_takes_too_long_says_so_and_is_not_sound():
     for member in ("problem_before", "problem"):
         assert entry[member]["type"] == "/problems/too-costly"
         assert "instance" not in entry[member]
+
+
+class Clock:
+    """A second passes with each look at it."""
+
+    looks = 0
+
+    def __call__(self) -> float:
+        self.looks += 1
+        return float(self.looks)
+
+
+def test_promises_that_take_too_long_do_not_take_the_verdicts_with_them():
+    request = OPERATION.examples[0].request
+    shape = envelope_shape(OPERATION)
+    # One look for either graph, and one for the first node whose promises are looked at.
+    call = open_call(OPERATION, shape, request, Settings(), Deadline(2.5, Clock()))
+    answer = OPERATION.answer(call)
+    assert answer["configs"][0]["change"] == "broken"
+    assert answer["independencies"] == {"lost": [], "gained": []}
+    assert answer["complete"] is False
+    body = {**request, "cursor": answer["cursor"]}
+    rest = OPERATION.answer(open_call(OPERATION, shape, body, Settings(), Deadline.never()))
+    assert rest == OPERATION.answer(open_call(OPERATION, shape, request, Settings(), Deadline.never()))
+    with pytest.raises(OutOfTime):
+        OPERATION.answer(open_call(OPERATION, shape, body, Settings(), Deadline(2.5, Clock())))

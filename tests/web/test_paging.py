@@ -68,3 +68,17 @@ def test_a_listing_that_is_cut_short_goes_on_after_the_last_item_given():
     first, page = page_at(call_of(looking(1)), "trial", listing)
     second, last = page_at(call_of(Deadline.never(), cursor=page["cursor"]), "trial", listing)
     assert (first, second, last, starts) == ([0, 20], [40], {"complete": True}, [0, 21])
+
+
+def test_a_first_page_may_be_empty_where_the_rest_of_the_answer_should_not_be_lost():
+    def listing(_start: int) -> Iterator[tuple[int, int]]:
+        raise OutOfTime(1)
+        yield 0, 0
+
+    found, page = page_at(call_of(Deadline.never()), "trial", listing, first_may_be_empty=True)
+    assert (found, page["complete"]) == ([], False)
+    again = call_of(Deadline.never(), cursor=page["cursor"])
+    with pytest.raises(OutOfTime):
+        page_at(again, "trial", listing, first_may_be_empty=True)
+    found, page = page_at(again, "trial", lambda start: [(start, "first")], first_may_be_empty=True)
+    assert (found, page) == (["first"], {"complete": True})

@@ -38,7 +38,11 @@ def page_of(call: Call, operation: str, items: Iterable[Item]) -> tuple[list[Ite
 
 
 def page_at(
-    call: Call, operation: str, listing: Callable[[int], Iterable[tuple[int, Item]]]
+    call: Call,
+    operation: str,
+    listing: Callable[[int], Iterable[tuple[int, Item]]],
+    *,
+    first_may_be_empty: bool = False,
 ) -> tuple[list[Item], dict[str, Any]]:
     """As ``page_of``, for a listing that can go on at a place without making what comes before.
 
@@ -46,6 +50,8 @@ def page_at(
         call: the request.
         operation: what it asks.
         listing: the items from a place on, each with its place; places rise, and 0 comes before all of them.
+        first_may_be_empty: where the time runs out before the first item of all, is that an empty page? So that
+            other members of the answer are not lost. Whoever goes on from there, and has no more luck, is refused.
 
     Raises:
         Failed: the cursor was not made for this request.
@@ -64,7 +70,7 @@ def page_at(
             after = place + 1
             call.deadline.poll()
     except OutOfTime:
-        if not found:
+        if not found and not (first_may_be_empty and "cursor" not in call.body):
             raise
         return found, {"complete": False, "cursor": _cursor(after, request)}
     return found, {"complete": True}

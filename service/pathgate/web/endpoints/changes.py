@@ -69,7 +69,9 @@ OPERATION = Operation(
         " config, carries its `problem`, counts as not sound there, and is never the end of the others.\n\n"
         "`nodes` and `edges` of the answer list all that differs, and `independencies` the statements of each graph's"
         " basis that the other does not keep, page by page: one that names a node which the other graph lacks or does"
-        " not measure is lost. Arrows come in the order of the nodes of `other`, then of those that only `graph` has."
+        " not measure is lost. Where time runs out before the first of them, the page is empty and not complete, and"
+        " the rest of the answer stands. Arrows come in the order of the nodes of `other`, then of those that only"
+        " `graph` has."
     ),
     request_schema={
         "type": "object",
