@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 from collections.abc import Iterable
+from itertools import count
 from typing import Any
 
 from pathgate.review.graph_difference import Change, EdgeChange
@@ -136,7 +137,7 @@ def _node_changed(rng: random.Random, graph: Graph) -> Graph:
 
 
 def _node_added(rng: random.Random, graph: Graph) -> Graph | None:
-    name = next(name for name in ("new", "newer", "newest", "last") if name not in node_names(graph))
+    name = next(name for place in count() if (name := f"new{place}") not in node_names(graph))
     chosen = rng.sample(node_names(graph), min(2, len(graph["nodes"])))
     added = [
         {"source": name, "target": other} if rng.random() < 0.7 else {"source": other, "target": name}

@@ -100,7 +100,7 @@ def test_outcomes_are_those_of_reviewing_both_and_culprits_are_least(block):
 
 def test_every_kind_of_change_turns_up_as_a_culprit():
     kinds = Counter[tuple[type, str]]()
-    for seed in SEEDS:
+    for seed in SEEDS[:150]:
         old, new, config = case(seed)
         kinds.update(
             (type(each), each.change) for each in change_of(config, difference_of(old, new)).culprits
@@ -109,7 +109,7 @@ def test_every_kind_of_change_turns_up_as_a_culprit():
 
 
 def test_all_changes_together_make_the_new_graph_and_none_the_old_one():
-    for seed in SEEDS:
+    for seed in SEEDS[:150]:
         old, new, _config = case(seed)
         difference = difference_of(old, new)
         told = graph_with(old, new, difference.changes)
