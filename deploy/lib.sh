@@ -6,7 +6,7 @@ unset CDPATH PYTHONHOME PYTHONPATH PIP_USER PIP_TARGET PIP_PREFIX PIP_REQUIRE_VI
 root=$(cd "$(dirname "${BASH_SOURCE[0]}")/.." && pwd -P)
 venv=$root/.venv
 cache=$root/.cache
-lock_files=(deploy/requirements.txt deploy/requirements-build.txt deploy/requirements-test.txt)
+lock_files=(deploy/requirements.txt deploy/requirements-build.txt deploy/requirements-test.txt deploy/requirements-spark.txt)
 oldest_minor=11
 
 say() { printf '%s\n' "$*"; }
@@ -93,13 +93,28 @@ install_locked() { # names of lock files
   run_pip --require-hashes --only-binary :all: "${options[@]}"
 }
 
-refresh_environment() { # level: run or test
+# Spark comes as a source archive alone; the setuptools that builds it is the locked one.
+install_spark() {
+  run_pip --require-hashes --no-deps --only-binary :all: --no-binary pyspark --no-build-isolation \
+    -r "$root/deploy/requirements-spark.txt"
+}
+
+# The higher of two levels, so that what is there for one command is kept by another that needs less.
+higher_level() {
+  case " $1 $2 " in
+    *" full "*) say full ;;
+    *" test "*) say test ;;
+    *) say run ;;
+  esac
+}
+
+refresh_environment() { # level: run, test or full (test, and Spark)
   local wanted=$1 packages project had_packages="" had_level="" had_project="" stamp=$venv/stamp level
   read -r packages project <<<"$(digests)"
   [ ! -f "$stamp" ] || read -r had_packages had_level had_project <"$stamp"
   level=$wanted
   if [ "$had_packages" = "$packages" ] && [ -x "$venv/bin/python" ]; then
-    [ "$had_level" != "test" ] || level="test"
+    level=$(higher_level "$wanted" "$had_level")
     [ "$had_level $had_project" != "$level $project" ] || return 0
   else
     say "Making .venv with $("$base_python" --version 2>&1) and installing the locked packages (once, about a minute)"
@@ -108,17 +123,17 @@ refresh_environment() { # level: run or test
   fi
   rm -f "$stamp"
   if [ "$had_level" != "$level" ]; then
-    if [ "$level" = test ]; then
-      install_locked deploy/requirements-test.txt
-    else
-      install_locked deploy/requirements.txt deploy/requirements-build.txt
-    fi
+    case $level in
+      run) install_locked deploy/requirements.txt deploy/requirements-build.txt ;;
+      *) install_locked deploy/requirements-test.txt ;;
+    esac
+    [ "$level" != full ] || install_spark
   fi
   run_pip --no-deps --no-build-isolation -e "$root"
   printf '%s %s %s\n' "$packages" "$level" "$project" >"$stamp"
 }
 
-# Makes .venv fit for a level ("run" or "test"), one command at a time where flock is to be had.
+# Makes .venv fit for a level ("run", "test" or "full"), one command at a time where flock is to be had.
 ensure_environment() {
   find_python
   mkdir -p "$cache"

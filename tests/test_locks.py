@@ -13,6 +13,7 @@ from packaging.utils import canonicalize_name
 
 ROOT = Path(__file__).resolve().parents[1]
 RUNTIME, BUILD, TEST = "requirements.txt", "requirements-build.txt", "requirements-test.txt"
+SPARK = "requirements-spark.txt"
 PYTHONS = ("3.11", "3.12", "3.13", "3.14")
 
 
@@ -38,10 +39,11 @@ def asked_for() -> dict[str, list[str]]:
     """Lock file → the requirements that pyproject.toml states for it."""
     project = tomllib.loads((ROOT / "pyproject.toml").read_text())
     runtime, build = project["project"]["dependencies"], project["build-system"]["requires"]
-    return {RUNTIME: runtime, BUILD: build, TEST: runtime + build + project["dependency-groups"]["test"]}
+    groups = project["dependency-groups"]
+    return {RUNTIME: runtime, BUILD: build, TEST: runtime + build + groups["test"], SPARK: groups["spark"]}
 
 
-@pytest.mark.parametrize("lock", [RUNTIME, BUILD, TEST])
+@pytest.mark.parametrize("lock", [RUNTIME, BUILD, TEST, SPARK])
 def test_every_entry_is_one_version_with_hashes_and_nothing_else(lock: str):
     assert entries(lock)
     for entry in entries(lock):
@@ -50,7 +52,7 @@ def test_every_entry_is_one_version_with_hashes_and_nothing_else(lock: str):
         )
 
 
-@pytest.mark.parametrize("lock", [RUNTIME, BUILD, TEST])
+@pytest.mark.parametrize("lock", [RUNTIME, BUILD, TEST, SPARK])
 @pytest.mark.parametrize("python", PYTHONS)
 def test_what_the_project_asks_for_is_locked_within_its_bounds(lock: str, python: str):
     locked = pins(lock, python)
@@ -65,3 +67,8 @@ def test_the_tests_run_on_the_very_versions_that_are_served(python: str):
     tested = pins(TEST, python).items()
     assert pins(RUNTIME, python).items() <= tested
     assert pins(BUILD, python).items() <= tested
+
+
+@pytest.mark.parametrize("python", PYTHONS)
+def test_spark_s_packages_are_beside_those_of_the_tests_and_change_none(python: str):
+    assert not pins(SPARK, python).keys() & pins(TEST, python).keys()

@@ -11,9 +11,15 @@ import sys
 from collections.abc import Callable, Iterator
 
 from tests.bench.adjusting import checking_a_set, first_hundred_sets, first_set_of_very_many
+from tests.bench.changing import change_of_graph
 from tests.bench.harness import Figure, table
 from tests.bench.in_process import many_statements, single_verdicts, whole_large_request
-from tests.bench.over_http import memory_after_a_large_request, small_review
+from tests.bench.over_http import (
+    batch_of_reviews,
+    memory_after_a_large_request,
+    memory_of_a_long_stream,
+    small_review,
+)
 from tests.bench.promising import first_page_of_a_large_graph, smallest_for_all_pairs
 from tests.bench.reviewing import one_review
 
@@ -28,6 +34,9 @@ BENCHES: dict[str, Callable[[], Iterator[Figure]]] = {
     "all-pairs": smallest_for_all_pairs,
     "first-page": first_page_of_a_large_graph,
     "one-review": one_review,
+    "change": change_of_graph,
+    "batch": batch_of_reviews,
+    "stream": memory_of_a_long_stream,
     "memory": memory_after_a_large_request,
 }
 

@@ -3,19 +3,23 @@
 from __future__ import annotations
 
 import http.client
+import json
 import multiprocessing
 import os
 import socket
 import statistics
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from itertools import islice
 from pathlib import Path
 from typing import Any
 
 from pathgate.demo import demo_configs, demo_graph
+from pathgate.graphs import read_graph
 from tests.bench.harness import Figure, times_slower
-from tests.bench.worlds import body_of, graph_value, random_pairs, random_statements
+from tests.bench.reviewing import ARROWS, NODES, random_configs, separation_tests
+from tests.bench.worlds import body_of, graph_value, peer_graph, random_pairs, random_statements
 
 REQUESTS_A_ROUND = 200
 
@@ -72,20 +76,79 @@ def memory_after_a_large_request() -> Iterator[Figure]:
     )
 
 
+BATCH = 1_000
+
+
+def batch_of_reviews() -> Iterator[Figure]:
+    """1,000 configs against a 100-node graph over HTTP, line by line, against networkx separation tests there."""
+    pairs = random_pairs(NODES, ARROWS)
+    graph, peer = read_graph(graph_value(NODES, pairs)), peer_graph(NODES, pairs)
+    configs = list(islice(random_configs(graph), BATCH))
+    body = body_of({"graph": graph_value(NODES, pairs), "configs": configs})
+    with _server(_serve_pathgate, {}) as port:
+        caller = _Caller(port, "/v1/reviews", body, accept="application/x-ndjson")
+        yield times_slower(
+            f"{BATCH:,} configs in one /v1/reviews over HTTP, 100 nodes",
+            caller.ask,
+            "networkx separation tests",
+            separation_tests(peer, configs),
+            wanted="<= 10",
+            rounds=5,
+        )
+
+
+def memory_of_a_long_stream() -> Iterator[Figure]:
+    """What a worker holds while 10,000 configs stream, against what it holds while 1,000 do."""
+    pairs = random_pairs(NODES, ARROWS)
+    graph = read_graph(graph_value(NODES, pairs))
+    configs = list(islice(random_configs(graph), BATCH))
+    with _server(_serve_pathgate, {}) as port:
+        peaks = []
+        for times in (1, 10):
+            body = body_of({"graph": graph_value(NODES, pairs), "configs": configs * times})
+            caller = _Caller(port, "/v1/reviews", body, accept="application/x-ndjson")
+            peaks.append(max(caller.watched(lambda: _worker_memory(port))))
+    yield Figure(
+        what="peak memory of a worker while 10,000 configs stream",
+        peer="while 1,000 do",
+        seen=peaks[1] / peaks[0],
+        wanted="<= 1.2",
+        ours=peaks[1] / 1e6,
+        theirs=peaks[0] / 1e6,
+        unit="MB",
+    )
+
+
 class _Caller:
     """Sends the same request over one kept connection."""
 
-    def __init__(self, port: int, path: str, body: bytes) -> None:
+    def __init__(self, port: int, path: str, body: bytes, *, accept: str = "application/json") -> None:
+        self._headers = {"Content-Type": "application/json", "Accept": accept}
         self._connection = http.client.HTTPConnection("127.0.0.1", port, timeout=120)
         self._path = path
         self._body = body
 
     def ask(self) -> None:
-        self._connection.request("POST", self._path, self._body, {"Content-Type": "application/json"})
+        self._connection.request("POST", self._path, self._body, self._headers)
         answer = self._connection.getresponse()
         content = answer.read()
         if answer.status != 200:
             raise RuntimeError(f"{self._path} answered {answer.status}: {content[:300]!r}")
+
+    def watched(self, look: Callable[[], float]) -> list[float]:
+        """What is seen at ten places of the answer while it arrives line by line."""
+        self._connection.request("POST", self._path, self._body, self._headers)
+        answer = self._connection.getresponse()
+        lines = 0
+        seen = []
+        while line := answer.readline():
+            lines += 1
+            count = json.loads(line)["count"]
+            if lines % (count // 10) == 0:
+                seen.append(look())
+        if not lines or lines != count:
+            raise RuntimeError(f"the stream of {self._path} broke off after {lines} lines")
+        return seen
 
     def round(self) -> None:
         # The server ends a connection that was idle for long; each round opens its own.

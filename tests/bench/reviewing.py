@@ -31,7 +31,7 @@ def one_review() -> Iterator[Figure]:
     """
     pairs = random_pairs(NODES, ARROWS)
     graph, peer = read_graph(graph_value(NODES, pairs)), peer_graph(NODES, pairs)
-    configs = list(islice(_configs(graph), CONFIGS))
+    configs = list(islice(random_configs(graph), CONFIGS))
     verdicts = [review(graph, read_config(config, graph)).verdict for config in configs]
     shown = ", ".join(f"{verdicts.count(verdict)} {verdict}" for verdict in sorted(set(verdicts)))
     for what, hinges, wanted in (
@@ -42,12 +42,13 @@ def one_review() -> Iterator[Figure]:
             what,
             _reviewing(graph, configs, hinges=hinges),
             "networkx separation tests",
-            _separating(peer, configs),
+            separation_tests(peer, configs),
             wanted=wanted,
         )
 
 
-def _configs(graph: CausalGraph) -> Iterator[dict[str, Any]]:
+def random_configs(graph: CausalGraph) -> Iterator[dict[str, Any]]:
+    """Configs without end, the same ones each time."""
     rng = random.Random(11)
     columns = list(graph.names)
     while True:
@@ -82,7 +83,9 @@ def _reviewing(graph: CausalGraph, configs: list[dict[str, Any]], *, hinges: boo
     return run
 
 
-def _separating(peer: nx.DiGraph, configs: list[dict[str, Any]]) -> Callable[[], None]:
+def separation_tests(peer: nx.DiGraph, configs: list[dict[str, Any]]) -> Callable[[], None]:
+    """One of networkx's separation tests for each config: treatment and outcome given the covariates."""
+
     def run() -> None:
         for config in configs:
             nx.is_d_separator(peer, {config["treatment"]}, {config["outcome"]}, set(config["covariates"]))

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 from types import MappingProxyType
 from typing import Literal
 
@@ -101,28 +102,34 @@ def column_roles(
 
 
 class _Roles:
-    """The sets that decide roles, computed once for all columns."""
+    """The sets that decide roles, each computed once for all columns, and only where one gets that far."""
 
     def __init__(self, effect: Effect) -> None:
         graph = effect.kept.graph
         self._effect = effect
-        self._apart = valid_set(effect) or 0
-        self._ends = effect.treatments | effect.outcomes
-        to_treatment = ancestors(graph, effect.treatments)
-        to_outcome = ancestors(graph, effect.outcomes, avoiding=effect.treatments)
+        self._to_treatment = ancestors(graph, effect.treatments)
+        self._to_outcome = ancestors(graph, effect.outcomes, avoiding=effect.treatments)
         self._sets: tuple[tuple[Role, int], ...] = (
             ("treatment", effect.treatments),
             ("outcome", effect.outcomes),
             ("mediator", effect.on_causal_paths),
             ("descendant-of-outcome", descendants(graph, effect.outcomes & effect.on_causal_paths)),
             ("descendant-of-mediator", effect.forbidden),
-            ("confounder", to_treatment & to_outcome),
+            ("confounder", self._to_treatment & self._to_outcome),
         )
-        self._later: tuple[tuple[Role, int], ...] = (
-            ("cause-of-treatment", to_treatment),
-            ("cause-of-outcome", to_outcome),
+
+    @cached_property
+    def _apart(self) -> int:
+        return valid_set(self._effect) or 0
+
+    @cached_property
+    def _later(self) -> tuple[tuple[Role, int], ...]:
+        graph, effect = self._effect.kept.graph, self._effect
+        return (
+            ("cause-of-treatment", self._to_treatment),
+            ("cause-of-outcome", self._to_outcome),
             ("descendant-of-treatment", descendants(graph, effect.treatments)),
-            ("proxy", connected(graph, self._ends, Conditions())),
+            ("proxy", connected(graph, effect.treatments | effect.outcomes, Conditions())),
         )
 
     def of(self, node: int) -> Role:
