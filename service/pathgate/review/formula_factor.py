@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from pathgate.review.formula_bounds import Piece
 from pathgate.review.formula_calls import column_named, is_attribute
 from pathgate.review.formula_columns import columns_of
-from pathgate.review.formula_keeps import Keeps, keeps_of
+from pathgate.review.formula_keeps import Keeps, is_sum_of_columns, keeps_of
 from pathgate.review.formula_python import parsed
 
 
@@ -23,11 +23,13 @@ class Factor:
         written: as the formula writes it first, backquotes and braces included.
         names: the columns that it reads, none twice, in the order of its text.
         keeps: how much of its one column it keeps, or ``computed`` of several.
+        is_sum: is it a sum of several columns, each times a number?
     """
 
     written: str
     names: tuple[str, ...]
     keeps: Keeps
+    is_sum: bool = False
 
 
 def factor_of(piece: Piece) -> tuple[tuple[str, ...], Factor]:
@@ -40,7 +42,9 @@ def factor_of(piece: Piece) -> tuple[tuple[str, ...], Factor]:
         return ("column", piece.text), Factor(piece.written, (piece.text,), "column")
     expression = parsed(piece.text, piece.written)
     columns = columns_of(expression)
-    factor = Factor(piece.written, tuple(dict.fromkeys(columns)), keeps_of(expression, columns))
+    keeps = keeps_of(expression, columns)
+    is_sum = keeps == "computed" and is_sum_of_columns(expression)
+    factor = Factor(piece.written, tuple(dict.fromkeys(columns)), keeps, is_sum)
     name = column_named(expression.tree, expression.names)
     return (("expression", *expression.key) if name is None else ("column", name)), factor
 

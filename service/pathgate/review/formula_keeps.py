@@ -59,6 +59,28 @@ def keeps_of(expression: Expression, columns: Sequence[str]) -> Keeps:
     return "one-to-one" if len(columns) == 1 and reading.keeps_all(expression.tree) else "coarse"
 
 
+def is_sum_of_columns(expression: Expression) -> bool:
+    """Is it a sum of columns, each perhaps times a number, and of numbers?"""
+    reading = _Steps(expression.names)
+    waiting = [expression.tree]
+    while waiting:
+        match waiting.pop():
+            case ast.Call(func=ast.Name(id="I"), args=[inner], keywords=[]):
+                waiting.append(inner)
+            case ast.UnaryOp(op=ast.UAdd() | ast.USub(), operand=inner):
+                waiting.append(inner)
+            case ast.BinOp(left=left, op=ast.Add() | ast.Sub(), right=right):
+                waiting += [left, right]
+            case ast.BinOp(left=left, op=ast.Mult() | ast.Div(), right=right) if _number(right) is not None:
+                waiting.append(left)
+            case ast.BinOp(left=left, op=ast.Mult(), right=right) if _number(left) is not None:
+                waiting.append(right)
+            case other:
+                if _number(other) is None and not reading.is_column(other):
+                    return False
+    return True
+
+
 class _Steps:
     def __init__(self, names: Mapping[str, str]) -> None:
         self.names = names

@@ -70,6 +70,7 @@ class _Understanding:
         self._passed_over: list[tuple[str, Place]] = []
         # What is computed by the formula itself stands after everything else.
         self._first = columns.graph.size
+        self._sums = 0
 
     def formula(self, formula: Formula) -> ModelFormula | None:
         before = len(self._faults)
@@ -78,9 +79,9 @@ class _Understanding:
         if len(self._faults) > before:
             return None
         treated = self._treated()
-        self._refuse_without(treated, read)
         single = mask_of(nodes[0].node for _term, nodes in read if len(nodes) == 1)
         plain = treated | mask_of(node for node in members(single) if node < self._first)
+        self._refuse_without(treated, read, plain)
         adjusted = self._adjusted(read, plain)
         terms = tuple(self._term(term, nodes, read, plain) for term, nodes in read)
         covariates = tuple(named for named in adjusted.values() if not treated >> named.node & 1)
@@ -105,6 +106,7 @@ class _Understanding:
             return None
         if factor.keeps == "computed" and len(found) > 1:
             self._columns = self._columns.grown([(factor.written, nodes)], {})
+            self._sums |= factor.is_sum << graph.size
             return Named(graph.size, _PLACE, factor.written)
         node = found[0].node
         if factor.keeps != "column":
@@ -131,14 +133,31 @@ class _Understanding:
         reader = NameReader(self._columns.graph, [], recodes=self._columns.recodes)
         return reader.mask(names, ("treatment",))
 
-    def _refuse_without(self, treated: int, read: Sequence[_Read]) -> None:
-        seen = mask_of(named.node for _term, nodes in read for named in nodes)
-        for node in members(seen):
-            seen |= self._columns.inputs.get(node, 0)
-        missing = self._columns.graph.names_of(treated & ~seen)
-        if missing:
-            detail = f"the formula has no term of the treatment {listed(missing)}"
-            self._faults.append(Fault("invalid-request", ("treatment",), detail, missing))
+    def _refuse_without(self, treated: int, read: Sequence[_Read], plain: int) -> None:
+        """A fault for each treatment that is no term, nor multiplied with what is one."""
+        seen, part_of = 0, dict[int, str]()
+        for term, nodes in read:
+            if len(nodes) == 1:
+                seen |= 1 << nodes[0].node
+            if self._is_product(nodes, plain):
+                seen |= self._columns_of(nodes)
+            for node in members(self._made_of(nodes) & treated):
+                part_of.setdefault(node, term.written)
+        for node in members(treated & ~seen):
+            name = self._columns.graph.name(node)
+            detail = f"the formula has no term of the treatment {listed([name])}"
+            if node in part_of:
+                shown = listed([part_of[node]])
+                detail += f" by itself, only {shown}: add a term for it, or make {shown} the treatment"
+            self._faults.append(Fault("invalid-request", ("treatment",), detail, (name,)))
+
+    def _made_of(self, nodes: Sequence[Named]) -> int:
+        """Some columns with all that they are computed from, step by step."""
+        made_of = mask_of(named.node for named in nodes)
+        for node in sorted(self._columns.inputs, reverse=True):
+            if made_of >> node & 1:
+                made_of |= self._columns.inputs[node]
+        return made_of
 
     def _adjusted(self, read: Sequence[_Read], plain: int) -> dict[int, Named]:
         """What the terms adjust for, by node: of several functions of one column the one that keeps most."""
@@ -153,8 +172,8 @@ class _Understanding:
         return adjusted
 
     def _is_product(self, nodes: Sequence[Named], plain: int) -> bool:
-        """Is it made of columns each of which stands alone in the model as well?"""
-        if len(nodes) == 1 and (nodes[0].node < self._first or plain >> nodes[0].node & 1):
+        """Is it made of columns each of which stands alone in the model as well? A sum of them multiplies none."""
+        if len(nodes) == 1 and (nodes[0].node < self._first or (plain | self._sums) >> nodes[0].node & 1):
             return False
         return not self._columns_of(nodes) & ~plain
 
