@@ -31,6 +31,9 @@ def read_by_definition(question: Question, term: str) -> str:
     # Rows of one value of the outcome, or of the column itself, leave nothing to compare.
     if pinned(question) & (question.results | columns.bases(node) | {node}):
         return "neither"
+    adjusted = [*question.covariates, *question.weighted_by, *question.matched_on, *question.fixed_effects]
+    if question.results & columns.nodes(adjusted):
+        return "neither"
     usable = question.measured - question.ends
     held = columns.nodes([*question.covariates, *question.weighted_by, *question.matched_on]) & usable
     held |= columns.nodes(question.treatments)
@@ -113,6 +116,10 @@ def test_the_verdict_of_the_treatment_does_not_carry_over_to_a_confounder():
         (
             {"row_filter": "late = TRUE"},
             "the rows kept have one value of it, so nothing of it is left to vary",
+        ),
+        (
+            {"covariates": ["refund"]},
+            'the model adjusts for the outcome "refund" itself, so nothing is left to explain',
         ),
         (
             {"covariates": ["claims"], "derived": {"claims": {"from": ["refund", "weather"]}}},

@@ -87,6 +87,11 @@ class _Reading:
         missing = self._graph.names_of(self._claim.ends & ~self._graph.measured)
         if missing:
             return f"the platform does not hold {listed(missing)}, so no such model can be fitted"
+        adjusted = self._graph.names_of(self._claim.adjusted_for & self._claim.outcomes)
+        if adjusted:
+            return (
+                f"the model adjusts for the outcome {listed(adjusted)} itself, so nothing is left to explain"
+            )
         for fixed, what in ((self._pinned, "rows kept have"), (self._absorbed, "fixed effects leave")):
             names = self._graph.names_of(self._claim.outcomes & fixed)
             if names:
