@@ -38,7 +38,7 @@ HEAVY = [
     "pandas",
     "xml",
 ]
-COMMANDS = ["review", "changes", "check", "doctor", "explain", "new", "serve"]
+COMMANDS = ["review", "changes", "check", "doctor", "explain", "new", "schema", "serve"]
 
 
 def run(*words: str, **environment: str) -> subprocess.CompletedProcess[str]:

@@ -14,6 +14,7 @@ import click
 from pathgate.cli.change_command import changes
 from pathgate.cli.doctor_command import doctor
 from pathgate.cli.review_command import review
+from pathgate.cli.schemas import schema
 from pathgate.cli.small_commands import check, explain, new
 from pathgate.cli.terminal import say, settings_in_force
 
@@ -93,5 +94,5 @@ def _show_version(context: click.Context) -> None:
     context.exit()
 
 
-for command in (review, changes, check, doctor, explain, new):
+for command in (review, changes, check, doctor, explain, new, schema):
     main.add_command(command)
