@@ -16,7 +16,7 @@ from pathgate.graphs import InvalidGraph, read_graph
 from pathgate.review import InvalidConfig, read_config, review
 from pathgate.review.change_words import change_sentence
 from pathgate.review.changed_promises import BrokenPromises
-from pathgate.review.changes import ConfigChange, change_of, judge
+from pathgate.review.changes import MOST_CULPRITS, ConfigChange, change_of, judge
 from pathgate.review.culprits import least_changes
 from pathgate.review.graph_difference import Difference, NodeChange
 from tests.brute import ancestors, separated
@@ -260,6 +260,15 @@ def test_the_search_ends_after_as_many_sets_as_it_may_look_at():
     assert (big.changes, big.is_least) == (1 << 17 | 1 << 300, True)
 
 
+def test_of_very_many_culprits_only_so_many_are_told():
+    causes = [f"c{number}" for number in range(MOST_CULPRITS + 1)]
+    drawn = [("late", "refund"), *((cause, "refund") for cause in causes)]
+    old = graph_of(*drawn, *((cause, "late") for cause in causes))
+    found = change_of({**CONFIG, "covariates": []}, difference_of(old, graph_of(*drawn)))
+    assert found.outcome == "mended"
+    assert (len(found.culprits), found.is_complete) == (MOST_CULPRITS, False)
+
+
 def promises(old: Graph, new: Graph) -> list[tuple[str, str, tuple[str, ...]]]:
     difference = difference_of(old, new)
     found = BrokenPromises(difference.old, difference.new, difference)
@@ -338,6 +347,11 @@ def test_a_sentence_says_what_became_of_a_config_and_why():
     assert sentence(CONFIG, PARCELS, hidden).startswith(
         "uplift: sound before, unanswerable after: weather no longer measured ("
     )
+    drawn = [("weather", "ticket"), ("ticket", "refund"), ("promo", "late")]
+    several = sentence(
+        {**CONFIG, "covariates": []}, graph_of(("late", "refund")), graph_of(*arrows_of(PARCELS), *drawn)
+    )
+    assert several.startswith("uplift: sound before, biased after: the new node weather (weather → late, ")
     everywhere = graph_of(*arrows_of(PARCELS), *(("storms", name) for name in node_names(PARCELS)))
     assert "the new node storms (storms → weather, storms → late, storms → refund, 1 more edge)" in sentence(
         CONFIG, PARCELS, everywhere

@@ -89,4 +89,6 @@ def _enumerated(items: list[str], what: str, joined: str = " and ") -> str:
     if len(items) > _MOST:
         more = len(items) - _MOST
         shown.append(f"{more:,} more {what}" + ("" if more == 1 else "s"))
+    if joined == " and " and len(shown) > 2:
+        shown = [", ".join(shown[:-1]), shown[-1]]
     return joined.join(shown)

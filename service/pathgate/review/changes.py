@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from itertools import islice
 from typing import Literal
 
 from pathgate.criteria.deadline import Deadline
@@ -24,6 +25,9 @@ from pathgate.review.errors import InvalidConfig
 from pathgate.review.findings import Finding
 from pathgate.review.graph_difference import Change, Difference
 from pathgate.review.review import Verdict, verdict_and_findings
+
+# Of a set of changes that could not be made smaller than that, no more are told.
+MOST_CULPRITS = 100
 
 Outcome = Literal["broken", "mended", "same", "other-reason"]
 
@@ -64,7 +68,7 @@ class ConfigChange:
         before, after: what the old and the new graph make of it.
         outcome: how the two compare.
         culprits: a set of changes that does it, in their order; empty where the outcome is ``same``.
-        is_complete: is it known that no proper subset does it?
+        is_complete: is it known that no proper subset does it, and is none left out past ``MOST_CULPRITS``?
     """
 
     before: Judgement
@@ -112,8 +116,10 @@ def change_of(
     if outcome == "same":
         return ConfigChange(before, after, outcome)
     found = _culprits(value, difference, before, after, search_until or deadline)
-    culprits = tuple(difference.changes[place] for place in members(found.changes))
-    return ConfigChange(before, after, outcome, culprits, found.is_least)
+    places = islice(members(found.changes), MOST_CULPRITS)
+    culprits = tuple(difference.changes[place] for place in places)
+    is_complete = found.is_least and found.changes.bit_count() <= MOST_CULPRITS
+    return ConfigChange(before, after, outcome, culprits, is_complete)
 
 
 def _outcome(before: Judgement, after: Judgement) -> Outcome:

@@ -13,7 +13,7 @@ from dataclasses import dataclass, field
 from itertools import combinations
 
 from pathgate.criteria.errors import OutOfTime
-from pathgate.graphs.masks import members
+from pathgate.graphs.masks import mask_of, members
 
 MOST_TRIALS = 256
 
@@ -82,14 +82,14 @@ class _Search:
 
     def _drop_each(self, size: int) -> bool:
         """Go once through all parts of a size; did any go?"""
-        return sum(self.drop(part) for part in list(_parts(self.left, size))) > 0
+        return sum(self.drop(part) for part in _parts(self.left, size)) > 0
 
     def look_below(self) -> None:
         """Go on to a smaller set, if any proper subset has the outcome."""
         count = self.left.bit_count()
         for size in range(1, count - 1):
             for chosen in combinations(members(self.left), size):
-                subset = sum(1 << place for place in chosen)
+                subset = mask_of(chosen)
                 if self._has(subset):
                     # All smaller sets, those below this one among them, have been looked at.
                     self.left = subset
@@ -111,4 +111,4 @@ def _parts(mask: int, size: int) -> Iterator[int]:
     """The changes in groups of ``size``, in their order."""
     places = list(members(mask))
     for start in range(0, len(places), size):
-        yield sum(1 << place for place in places[start : start + size])
+        yield mask_of(places[start : start + size])

@@ -8,7 +8,7 @@ column costs, notes and doubts change no verdict, and count as no difference. O(
 from __future__ import annotations
 
 from collections import OrderedDict
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Mapping
 from collections.abc import Set as AbstractSet
 from dataclasses import dataclass, field
 from functools import cached_property
@@ -24,8 +24,9 @@ NamedEdge = tuple[str, str, str]
 
 Json = dict[str, Any]
 
-# Graphs with only some of the changes that are held at a time, for all configs that are asked about.
+# Graphs with only some of the changes that are held at a time, and their nodes, for all configs that are asked about.
 MOST_GRAPHS = 64
+MOST_NODES_DRAWN = 50_000
 
 
 @dataclass(frozen=True, slots=True)
@@ -142,8 +143,7 @@ class Difference:
 
     def edges_at(self, node: str) -> tuple[NamedEdge, ...]:
         """The edges with which a node came or went."""
-        edges = self.added_edges if node in self.new.index else self.removed_edges
-        return tuple(edge for edge in edges if node in edge[1:])
+        return self._edges_at.get(node, ())
 
     def graph_with(self, chosen: int) -> CausalGraph | None:
         """The old graph with some of the changes, in the new one's order; None where that is no causal graph.
@@ -159,7 +159,7 @@ class Difference:
         examined = examine_graph(self._value(chosen))
         graph = None if examined.faults else examined.graph
         self._drawn[chosen] = graph
-        if len(self._drawn) > MOST_GRAPHS:
+        if len(self._drawn) > max(2, min(MOST_GRAPHS, MOST_NODES_DRAWN // max(1, self.new.size))):
             self._drawn.popitem(last=False)
         return graph
 
@@ -190,6 +190,15 @@ class Difference:
     def _said(self, name: str, *, is_renewed: bool) -> Json:
         """What is said of a node: by the old graph unless it is new or its change is among those chosen."""
         return self._facts_of[is_renewed or name not in self.old.index][name]
+
+    @cached_property
+    def _edges_at(self) -> Mapping[str, tuple[NamedEdge, ...]]:
+        found: dict[str, list[NamedEdge]] = {name: [] for name in (*self.added_nodes, *self.removed_nodes)}
+        for edge in (*self.added_edges, *self.removed_edges):
+            for end in edge[1:]:
+                if end in found:
+                    found[end].append(edge)
+        return {name: tuple(edges) for name, edges in found.items()}
 
     @cached_property
     def _facts_of(self) -> tuple[dict[str, Json], dict[str, Json]]:

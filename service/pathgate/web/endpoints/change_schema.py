@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+from pathgate.review.changes import MOST_CULPRITS
 from pathgate.web.endpoints.reviews import LINE
 from pathgate.web.endpoints.shared_schemas import NAME_LIST, NEXT_PAGE
 
@@ -82,7 +83,10 @@ CONFIG_CHANGE: Schema = {
         "nodes": _list(_CULPRIT_NODE, "the nodes among those changes"),
         "complete": {
             "type": "boolean",
-            "description": "false where time or trials ran out before it was known that no proper subset does it",
+            "description": (
+                "false where time or trials ran out before it was known that no proper subset does it; more than"
+                f" {MOST_CULPRITS} changes are not listed then"
+            ),
         },
         "summary": {"type": "string", "description": "the whole in one sentence"},
         "problem_before": {
