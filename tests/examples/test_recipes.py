@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import os
+import re
 import runpy
 import shutil
 import socket
@@ -39,6 +41,14 @@ def run(*words, cwd, environment):
         check=False,
         timeout=120,
     )
+
+
+def test_the_readme_lists_every_recipe_and_the_shell_s_can_be_run():
+    readme = (EXAMPLES.parents[1] / "README.md").read_text("utf-8")
+    section = readme[readme.index("## In a pipeline") :].split("\n## ")[0]
+    listed = re.findall(r"^\| `([^`]+)` \|", section, re.MULTILINE)
+    assert sorted(listed) == sorted(path.name for path in EXAMPLES.iterdir() if path.is_file())
+    assert all(os.access(EXAMPLES / name, os.X_OK) for name in ("ci.sh", "pre-commit"))
 
 
 # --- the step of a load
@@ -269,6 +279,31 @@ def test_a_task_waits_for_a_graph_that_is_not_there_yet(task, parcels, environme
     command = [shutil.which("pathgate", path=environment["PATH"]), "review", graph, parcels / SOUND]
     task["gate"]([str(word) for word in command], pause=lambda _seconds: later.rename(graph))
     assert graph.exists()
+
+
+@pytest.mark.parametrize(("config", "falls_short"), [(SOUND, False), (BIASED, True)])
+def test_a_task_waits_for_a_service_that_is_not_there_yet(
+    task, parcels, environment, service_url, config, falls_short
+):
+    pathgate = shutil.which("pathgate", path=environment["PATH"])
+    with socket.create_server(("127.0.0.1", 0)) as server:
+        nowhere = f"http://127.0.0.1:{server.getsockname()[1]}"
+    # The address is read from a file, as where a service is found by its name.
+    address = parcels / "address"
+    address.write_text(nowhere)
+    script = f'exec {pathgate} review --timeout 20 --url "$(cat {address})" {parcels / "graph.yaml"} {parcels / config}'
+    pauses = []
+
+    def pause(seconds):
+        pauses.append(seconds)
+        address.write_text(service_url)
+
+    if falls_short:
+        with pytest.raises(task["FallsShort"], match="filter-on-collider"):
+            task["gate"](["sh", "-c", script], pause=pause)
+    else:
+        task["gate"](["sh", "-c", script], pause=pause)
+    assert pauses == [5]
 
 
 @pytest.mark.parametrize(("config", "status"), [(SOUND, 0), (BIASED, 1)])

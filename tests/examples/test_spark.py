@@ -15,6 +15,7 @@ import msgspec
 import pytest
 
 from pathgate.cli.yaml_text import read_yaml
+from pathgate.client import Client
 from pathgate.graphs import read_graph
 from pathgate.web.judging import judged
 from pathgate.web.settings import Settings
@@ -99,16 +100,38 @@ def test_over_http_and_in_process_the_verdicts_are_the_same_bytes(service_url):
     assert verdicts == {"sound", "biased", None}
 
 
-def test_at_the_shell_the_verdicts_are_those_bytes_too(environment, tmp_path):
+@pytest.mark.parametrize("is_asked", [False, True], ids=["in process", "from the service"])
+def test_at_the_shell_the_verdicts_are_those_bytes_too(environment, tmp_path, service_url, is_asked):
     asked = [config for config in configs() if isinstance(config, dict) and "name" in config]
     (tmp_path / "configs.json").write_text(json.dumps(asked))
     words = ["pathgate", "review", GRAPH_FILE, tmp_path / "configs.json", "--format", "json"]
-    done = subprocess.run(words, env=environment, cwd=tmp_path, capture_output=True, check=False, timeout=120)
+    done = subprocess.run(
+        [*words, *(["--url", service_url] if is_asked else [])],
+        env=environment,
+        cwd=tmp_path,
+        capture_output=True,
+        check=False,
+        timeout=120,
+    )
     lines = msgspec.json.decode(done.stdout)["reviews"]
+    answers = [{key: line[key] for key in ("review", "problem") if key in line} for line in lines]
+    check_same_reviews(answers, in_process(asked))
+
+
+def test_the_client_s_verdicts_are_those_bytes_too(service_url):
+    asked = configs()
+    lines = Client(service_url).reviews(GRAPH, asked)
+    answers = [{key: line[key] for key in ("review", "problem") if key in line} for line in lines]
+    check_same_reviews(answers, in_process(asked))
+
+
+def check_same_reviews(answers: list[Any], ours: list[bytes]) -> None:
+    """What was decoded, encoded again, is the same bytes wherever it is a review."""
     reviewed = 0
-    for line, ours in zip(lines, in_process(asked), strict=True):
-        if "review" in line:
-            assert msgspec.json.encode({"review": line["review"]}) == ours
+    for theirs, here in zip(answers, ours, strict=True):
+        assert ("review" in theirs) == here.startswith(b'{"review"')
+        if "review" in theirs:
+            assert msgspec.json.encode(theirs) == here
             reviewed += 1
     assert reviewed > 60
 
