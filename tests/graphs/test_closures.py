@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+from dataclasses import replace
 
 from pathgate.graphs import ancestors, descendants, read_graph
 from pathgate.graphs.closures import Closures
@@ -66,3 +67,24 @@ def test_each_node_next_to_a_hub_is_looked_at_once():
     for _question in range(10):
         assert hub.reached(1) == everything
     assert nodes.looked_up < 4 * size
+
+
+def test_leaves_are_reached_as_in_the_same_graph_made_anew():
+    for seed in range(300):
+        rng = random.Random(seed)
+        graph = read_graph(random_graph(rng, rng.randint(1, 8), arrow=0.3, bidirected=0.1))
+        sets = [rng.getrandbits(graph.size) for _leaf in range(rng.randint(1, 3))]
+        grown = graph.with_leaves(sets).with_leaves([rng.getrandbits(graph.size)])
+        # A copy knows nothing of what was carried over.
+        anew = replace(grown)
+        assert (grown.child_masks, grown.parent_masks) == (anew.child_masks, anew.parent_masks)
+        assert grown.spouse_masks == anew.spouse_masks
+        for _question in range(12):
+            nodes = rng.getrandbits(grown.size)
+            avoiding = rng.getrandbits(grown.size) & rng.getrandbits(grown.size) if rng.random() < 0.5 else 0
+            assert ancestors(grown, nodes, avoiding=avoiding) == ancestors(anew, nodes, avoiding=avoiding), (
+                seed
+            )
+            assert descendants(grown, nodes, avoiding=avoiding) == descendants(
+                anew, nodes, avoiding=avoiding
+            ), seed

@@ -13,7 +13,7 @@ from functools import cached_property
 
 from pathgate.criteria.selection import Kept
 from pathgate.criteria.separators import Separators
-from pathgate.criteria.verdict import are_separated
+from pathgate.criteria.verdict import are_apart
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.kinship import ancestors, descendants
 
@@ -92,7 +92,9 @@ def is_valid(effect: Effect, covariates: int) -> bool:
     conditioned = covariates | effect.kept.conditioned
     if conditioned & effect.forbidden or conditioned & (effect.treatments | effect.outcomes):
         return False
-    return are_separated(effect.back_door_graph, effect.treatments, effect.outcomes, conditioned)
+    # What leads to a set with the treatments in it does so without an arrow out of a treatment as well.
+    relevant = ancestors(effect.kept.graph, effect.treatments | effect.outcomes | conditioned)
+    return are_apart(effect.back_door_graph, effect.treatments, effect.outcomes, conditioned, relevant)
 
 
 def valid_set(effect: Effect, *, required: int = 0, allowed: int = -1) -> int | None:

@@ -67,3 +67,38 @@ class Closures:
             else:
                 known[node] = found
         return known[node]
+
+
+class LeafClosures:
+    """The same for a graph with leaves added: answered by the closures of the graph without them.
+
+    >>> grown = LeafClosures(Closures([0b10, 0b00]), 2, [0b10], upward=False)
+    >>> bin(grown.reached(0b001))
+    '0b111'
+    """
+
+    __slots__ = ("_below", "_inside", "_leaves", "_size", "_upward")
+
+    def __init__(
+        self, inside: Closures | LeafClosures, size: int, parents: Sequence[int], *, upward: bool
+    ) -> None:
+        self._inside = inside
+        self._size = size
+        self._leaves = [(1 << size + place, mask) for place, mask in enumerate(parents)]
+        self._below = (1 << size) - 1
+        self._upward = upward
+
+    def reached(self, nodes: int, avoiding: int = 0) -> int:
+        """``nodes`` and all they lead to by ways that enter nothing to be avoided."""
+        starts = nodes & self._below
+        if self._upward:
+            for leaf, parents in self._leaves:
+                if nodes & leaf:
+                    starts |= parents & ~avoiding
+            return self._inside.reached(starts, avoiding & self._below) | nodes
+        found = self._inside.reached(starts, avoiding & self._below)
+        met = nodes
+        for leaf, parents in self._leaves:
+            if parents & found and not avoiding & leaf:
+                met |= leaf
+        return found | met

@@ -14,7 +14,7 @@ from functools import cached_property
 
 import numpy as np
 
-from pathgate.graphs.closures import Closures
+from pathgate.graphs.closures import Closures, LeafClosures
 from pathgate.graphs.errors import UnknownNode
 from pathgate.graphs.masks import IntArray, mask_of, members, unpack
 from pathgate.graphs.names import nearest_names
@@ -294,7 +294,24 @@ class CausalGraph:
         targets = np.concatenate([self.targets, added[:, 1]])
         order = np.lexsort((targets, sources))
         names = self.names + ("",) * len(sets)
-        return replace(self, names=names, sources=sources[order], targets=targets[order])
+        grown = replace(self, names=names, sources=sources[order], targets=targets[order])
+        if grown.is_small and not any(mask >> self.size for mask in sets):
+            vars(grown).update(self._with_leaf_masks(sets))
+        return grown
+
+    def _with_leaf_masks(self, sets: list[int]) -> dict[str, object]:
+        """What is known of this graph, carried over to the one with leaves: cheaper than to make it anew."""
+        children = [*self.child_masks, *(0 for _ in sets)]
+        for place, parents in enumerate(sets):
+            for node in members(parents):
+                children[node] |= 1 << self.size + place
+        return {
+            "child_masks": children,
+            "parent_masks": [*self.parent_masks, *sets],
+            "spouse_masks": [*self.spouse_masks, *(0 for _ in sets)],
+            "ancestor_closures": LeafClosures(self.ancestor_closures, self.size, sets, upward=True),
+            "descendant_closures": LeafClosures(self.descendant_closures, self.size, sets, upward=False),
+        }
 
     def with_columns(self, columns: Iterable[tuple[str, int]], aliases: Mapping[str, int]) -> CausalGraph:
         """The same graph with further columns at the end, each with its name and its parents, and further aliases.
