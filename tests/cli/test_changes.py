@@ -179,6 +179,21 @@ def test_a_dialect_is_taken_by_configs_that_name_none(here):
     assert (plain.exit_code, spoken.exit_code) == (2, 1)
 
 
+def test_what_the_call_leaves_open_the_project_file_says(here):
+    (here / "configs").mkdir()
+    write(here / "configs", "c.json", {**SOUND, "row_filter": "`weather` > 3"})
+    assert pathgate("old.json", "new.json").exit_code == 2
+    assert pathgate("old.json", "new.json").stderr.startswith("pathgate: no CONFIG: ")
+    write(here, "pathgate.toml", 'configs = "configs"\ndialect = "mysql"\n')
+    assert pathgate("old.json", "new.json").exit_code == 1
+    assert pathgate("old.json", "new.json", "configs").exit_code == 1
+    assert pathgate("old.json", "new.json", "--dialect", "duckdb").exit_code == 2
+    write(here, "pathgate.toml", "dialects = 3\n")
+    refused = pathgate("old.json", "new.json", "configs")
+    assert (refused.exit_code, refused.stdout) == (2, "")
+    assert "no such setting" in refused.stderr
+
+
 def test_names_cannot_steer_the_terminal(here):
     write(here, "c.json", SOUND | {"name": "up\x1b[31m\nlift"})
     result = pathgate("old.json", "new.json", "c.json")

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import sys
+from collections.abc import Mapping
 from pathlib import Path
+from typing import Any
 
 import click
 
@@ -18,7 +20,7 @@ _PATH = click.Path(path_type=Path)
 @click.command()
 @click.argument("old", metavar="OLD", type=_PATH)
 @click.argument("new", metavar="NEW", type=_PATH)
-@click.argument("configs", metavar="CONFIG...", nargs=-1, required=True, type=_PATH)
+@click.argument("configs", metavar="[CONFIG...]", nargs=-1, type=_PATH)
 @click.option(
     "--format",
     "form",
@@ -32,7 +34,8 @@ def changes(old: Path, new: Path, configs: tuple[Path, ...], form: str, dialect:
     """Say what replacing the graph OLD by NEW does to model configs, and which of the changes did it.
 
     OLD and NEW are JSON or YAML files. Each CONFIG is such a file with one config or a list of them, a folder of such
-    files (the graphs left out), or a pattern such as "teams/**/*.yaml".
+    files (the graphs left out), or a pattern such as "teams/**/*.yaml". Configs and dialect that are left out here are
+    taken from pathgate.toml (or the table tool.pathgate of pyproject.toml) in this folder or above.
 
     \b
     Exit status: 0 no config is broken: none that was sound is anything else now
@@ -43,7 +46,12 @@ def changes(old: Path, new: Path, configs: tuple[Path, ...], form: str, dialect:
     from pathgate.cli.changes import compare
     from pathgate.cli.wording import fault_lines
 
-    run = compare(old, new, configs, settings_in_force(), dialect)
+    said = {} if configs and dialect is not None else _project_values()
+    named, spoken = configs or said.get("configs", ()), dialect or said.get("dialect")
+    if not named:
+        message = "no CONFIG: name it, or set configs in pathgate.toml (pathgate new writes one)"
+        raise click.ClickException(message)
+    run = compare(old, new, named, settings_in_force(), spoken)
     for place, line in enumerate(fault_lines(run.faults)):
         say(line) if place == 0 else click.echo(f"  {line}", err=True)
     if form == "text":
@@ -52,3 +60,14 @@ def changes(old: Path, new: Path, configs: tuple[Path, ...], form: str, dialect:
         write(change_json(run) if form == "json" else change_markdown(run))
         click.echo(change_counts(run), err=True)
     return run.exit_status
+
+
+def _project_values() -> Mapping[str, Any]:
+    """What the project file sets, where there is one."""
+    from pathgate.cli.project import InvalidProject, find_project, read_project
+
+    try:
+        file = find_project(Path.cwd())
+        return read_project(file).values if file else {}
+    except InvalidProject as error:
+        raise click.ClickException(str(error)) from None
