@@ -7,7 +7,6 @@ are configs let pass, and only where the service could not be reached or gave no
 from __future__ import annotations
 
 import json
-import time
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, TypeGuard
@@ -50,7 +49,7 @@ class RemoteJudge:
         Raises:
             Stopped: the service refuses the graph or the call, or gave no answer at all.
         """
-        budget = Budget(self.client.timeout, time.monotonic)
+        budget = Budget(self.client.timeout, self.client.surroundings.clock)
         answered = 0
         try:
             for batch in batches([with_dialect(config, self.dialect) for config in configs]):

@@ -120,7 +120,8 @@ class Client:
         """A line of /v1/reviews for each config, in order, as soon as it is there: its review or its problem.
 
         A stream that ends early raises, after the lines that came; so the caller has them all only once the
-        iterator ends by itself. Leaving it early ends the connection, and with it the service's work.
+        iterator ends by itself. Leaving it early ends the connection, and with it the service's work. The timeout
+        covers all of it, what the caller does between two lines included.
 
         Raises:
             ClientError: there is no answer, or it ended early.
