@@ -91,13 +91,15 @@ def diagnose(client: Client, clock: Clock = time.perf_counter) -> Diagnosis:
 
 def diagnosis_text(diagnosis: Diagnosis) -> str:
     """A line for each step with its milliseconds, and one for all of them."""
-    lines = [
-        f"{step.outcome:<10}{step.name:<10}{1_000 * step.seconds:>8,.1f} ms  {visible(step.seen.text)}"
-        for step in diagnosis.steps
-    ]
+    lines = [_line(step) for step in diagnosis.steps]
     end = "can be relied on" if not diagnosis.failed else "cannot be relied on"
     ended = len(lines) - diagnosis.failed
     return "\n".join([*lines, f"{diagnosis.url} {end}: {ended} of {len(lines)} steps ended well.", ""])
+
+
+def _line(step: Step) -> str:
+    lasted = "" if step.outcome == "not tried" else f"{1_000 * step.seconds:,.1f} ms"
+    return f"{step.outcome:<10}{step.name:<10}{lasted:>11}  {visible(step.seen.text)}"
 
 
 def diagnosis_document(diagnosis: Diagnosis) -> Json:

@@ -63,7 +63,7 @@ class _Output(click.ParamType):  # type: ignore[type-arg]
 )
 @click.option("--prune-baseline", is_flag=True, help="Take out of the baseline what no longer occurs.")
 @click.option("--hinges", is_flag=True, help="In JSON too, say what sound verdicts hinge on.")
-@click.option("--url", help="Have the service at this address judge, instead of this process.")
+@click.option("--url", metavar="URL", help="Have the service at this address judge, instead of this process.")
 @click.option(
     "--timeout",
     type=click.FloatRange(min=0, min_open=True, max=86_400),
