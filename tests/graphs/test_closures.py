@@ -88,3 +88,10 @@ def test_leaves_are_reached_as_in_the_same_graph_made_anew():
             assert descendants(grown, nodes, avoiding=avoiding) == descendants(
                 anew, nodes, avoiding=avoiding
             ), seed
+
+
+def test_a_cycle_ends_no_search():
+    # 0 → 1 → 2 → 0, 2 → 3
+    circle = Closures([0b0010, 0b0100, 0b1001, 0b0000])
+    for _question in range(4):
+        assert [circle.reached(1 << node) for node in range(4)] == [0b1111, 0b1111, 0b1111, 0b1000]

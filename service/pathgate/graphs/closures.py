@@ -51,15 +51,22 @@ class Closures:
         return found & ~avoiding | nodes
 
     def _note(self, node: int) -> int:
-        """What a node leads to, noted for it and for all nodes on the way; deepest first, without recursion."""
-        next_nodes, known = self._next, self._known
+        """What a node leads to, noted for it and for all nodes on the way; deepest first, without recursion.
+
+        On a cycle nothing is noted: what its nodes lead to is searched for each time.
+        """
+        start, next_nodes, known = node, self._next, self._known
         # Of each node being worked out: what it leads to as far as known, and the next nodes still to be added.
         waiting = [(node, 1 << node, next_nodes[node])]
+        begun = 1 << node
         while waiting:
             node, found, rest = waiting.pop()
             while rest:
                 below = rest.bit_length() - 1
                 if not known[below]:
+                    if begun >> below & 1:
+                        return self._spread(1 << start, 0)
+                    begun |= 1 << below
                     waiting += (node, found, rest), (below, 1 << below, next_nodes[below])
                     break
                 found |= known[below]

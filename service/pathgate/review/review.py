@@ -25,6 +25,7 @@ from pathgate.review.crossing import term_findings
 from pathgate.review.degenerate import degenerate_findings
 from pathgate.review.everybody import population_findings
 from pathgate.review.findings import Finding
+from pathgate.review.measuring import measure_next_for
 from pathgate.review.remedies import Remedy, find_remedies
 from pathgate.review.roles import ColumnRole, column_roles
 from pathgate.review.summary import summarise
@@ -110,7 +111,7 @@ def review(
         coefficients=tuple(coefficients(claim, config, deadline)),
         remedies=remedies,
         summary=summarise(claim, verdict, findings, first),
-        measure_next=_measure_next(claim, deadline) if verdict == "unanswerable" else None,
+        measure_next=measure_next_for(claim, deadline) if verdict == "unanswerable" else None,
     )
 
 
@@ -141,14 +142,6 @@ def _verdict(claim: Claim, findings: list[Finding]) -> Verdict:
     if not any(finding.severity == "error" for finding in findings):
         return "sound"
     return "biased" if claim.can_be_carried else "unanswerable"
-
-
-def _measure_next(claim: Claim, deadline: Deadline) -> MeasureNext | None:
-    parts = claim.undroppable
-    if claim.ends & ~claim.graph.measured or not all(map(claim.can_filter_by, parts)):
-        return None
-    population = claim.population_of(claim.effect_among(parts))
-    return population.measure_next(deadline, required=0, allowed=-1)
 
 
 def _columns_in_question(claim: Claim, findings: list[Finding], remedies: tuple[Remedy, ...]) -> int:
