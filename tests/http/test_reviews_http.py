@@ -9,6 +9,8 @@ import pytest
 
 from pathgate.demo import demo_configs, demo_graph
 from pathgate.web.app import create_app
+from pathgate.web.endpoints import reviews
+from pathgate.web.judging import judged
 from pathgate.web.settings import Settings
 
 LINES = "application/x-ndjson"
@@ -115,3 +117,22 @@ def test_a_gate_lets_sound_and_accepted_configs_through(service):
     waiver = {"rule": "missing-covariate", "why": "a pilot run"}
     reply = service.post("/v1/review", gate(accept=[waiver]))
     assert (reply.status_code, reply.json["verdict"]) == (200, "biased")
+
+
+def test_a_client_that_goes_away_ends_the_work(service, monkeypatch):
+    judged_so_far: list[Any] = []
+
+    def counting(config: Any, *more: Any, **said: Any) -> dict[str, Any]:
+        judged_so_far.append(config)
+        return judged(config, *more, **said)
+
+    monkeypatch.setattr(reviews, "judged", counting)
+    body = batch(*demo_configs() * 50)
+    reply = service.unchecked.post("/v1/reviews", json=body, headers={"Accept": LINES}, buffered=False)
+    lines = iter(reply.response)
+    next(lines)
+    next(lines)
+    reply.close()
+    with pytest.raises((StopIteration, ValueError)):
+        next(lines)
+    assert len(judged_so_far) == 2
