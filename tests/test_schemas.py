@@ -150,6 +150,16 @@ def test_what_is_misspelt_is_marked_in_an_editor(validators):
     )
 
 
+def test_a_graph_or_config_in_json_may_name_its_schema_to_editors(validators, client):
+    graph = {"$schema": "schemas/graph.json", **demo_graph()}
+    config = {"$schema": "schemas/config.json", **demo_configs()[0]}
+    validators["graph"].validate(graph)
+    validators["config"].validate(config)
+    named = client.post("/v1/review", json={"graph": graph, "config": config})
+    plain = client.post("/v1/review", json={"graph": demo_graph(), "config": demo_configs()[0]})
+    assert (named.status_code, named.data) == (200, plain.data)
+
+
 def commented(file: Path) -> str:
     """Where the comment for editors says that the schema is."""
     comment, address = file.read_text("utf-8").splitlines()[0].split("$schema=")

@@ -17,6 +17,7 @@ from pathgate.graphs.schema import EDGE_SCHEMA, GRAPH_SCHEMA, NODE_SCHEMA
 
 JUDGE = Draft202012Validator(GRAPH_SCHEMA)
 GRAPH: dict[str, Any] = {
+    "$schema": "schemas/graph.json",
     "directed": True,
     "multigraph": False,
     "graph": {},

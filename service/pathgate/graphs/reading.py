@@ -17,7 +17,7 @@ from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.names import did_you_mean, quoted
 from pathgate.graphs.node_list import NodeList, read_nodes
 
-GRAPH_MEMBERS = ("nodes", "edges", "directed", "multigraph", "graph")
+GRAPH_MEMBERS = ("$schema", "nodes", "edges", "directed", "multigraph", "graph")
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,6 +95,8 @@ def _check_members(value: Mapping[object, object], faults: list[Fault]) -> None:
         )
     if not isinstance(value.get("graph", {}), Mapping):
         faults.append(Fault("invalid-request", ("graph",), '"graph" must be an object'))
+    if not isinstance(value.get("$schema", ""), str):
+        faults.append(Fault("invalid-request", ("$schema",), '"$schema" must be a string'))
 
 
 def _unknown_member(member: str) -> Fault:

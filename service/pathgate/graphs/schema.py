@@ -109,6 +109,7 @@ GRAPH_SCHEMA: Schema = {
     ),
     "type": "object",
     "properties": {
+        "$schema": {"type": "string", "description": "For editors; not read."},
         "nodes": {
             "type": "array",
             "title": "a list of nodes",
