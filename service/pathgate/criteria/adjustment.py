@@ -11,6 +11,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from functools import cached_property
 
+from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.selection import Kept
 from pathgate.criteria.separators import Separators
 from pathgate.criteria.verdict import are_apart
@@ -40,6 +41,14 @@ class Effect:
     def back_door_graph(self) -> CausalGraph:
         """The graph without the first arrow of every proper causal path (for a direct effect: without the arrow)."""
         return self.kept.graph.without_arrows(self.treatments, self.on_causal_paths)
+
+    def conditioning(self, conditioned: int) -> Conditions:
+        """Conditioning in the back-door graph on nodes none of which is forbidden.
+
+        What leads to one of those does so without the arrows that the back-door graph lacks: they lead to what is
+        forbidden. So the graph itself is asked, which many effects share.
+        """
+        return Conditions(conditioned, ancestors(self.kept.graph, conditioned))
 
     @cached_property
     def some_valid_set(self) -> int | None:

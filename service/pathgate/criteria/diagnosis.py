@@ -91,7 +91,9 @@ def open_paths(effect: Effect, covariates: int, deadline: Deadline) -> Iterator[
     blocking = openers = covariates | effect.kept.conditioned
     while True:
         deadline.poll()
-        conditions = Conditions(blocking, ancestors(graph, openers))
+        # Edges taken out on the way only make ancestors fewer, and none of what opens a collider is forbidden.
+        above = ancestors(effect.kept.graph if graph is effect.back_door_graph else graph, openers)
+        conditions = Conditions(blocking, above)
         trail = find_open_path(graph, effect.treatments, effect.outcomes, conditions, fewest_colliders=True)
         if trail is None:
             return

@@ -14,7 +14,6 @@ from typing import Literal
 from pathgate.criteria.adjustment import Effect, direct_effect, is_valid, total_effect
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import find_open_path
-from pathgate.criteria.reachability import Conditions
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
@@ -186,7 +185,7 @@ class _Reading:
         if barred:
             return f"the model holds {listed(barred)} fixed, which its effect on {self._outcomes} acts upon"
         graph = effect.back_door_graph
-        trail = find_open_path(graph, effect.treatments, effect.outcomes, Conditions.on(graph, held))
+        trail = find_open_path(graph, effect.treatments, effect.outcomes, effect.conditioning(held))
         if trail is None:
             return f"the rows kept leave nothing of it or of {self._outcomes} to vary"
         return f"the path {arrow_text(self._kept, trail, held)} stays open beside its effect"

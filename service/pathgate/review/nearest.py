@@ -14,7 +14,6 @@ from dataclasses import dataclass, replace
 from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.paths import Trail, find_open_path
-from pathgate.criteria.reachability import Conditions
 from pathgate.criteria.selection import Part
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
@@ -98,7 +97,7 @@ def _closing(claim: Claim, step: _Step) -> list[_Step] | None:
     effect = claim.effect_among(choice.parts)
     held = claim.held_fixed(choice)
     graph = effect.back_door_graph
-    conditions = Conditions.on(graph, held | effect.kept.conditioned)
+    conditions = effect.conditioning(held | effect.kept.conditioned)
     trail = find_open_path(graph, effect.treatments, effect.outcomes, conditions)
     if trail is None:
         return None

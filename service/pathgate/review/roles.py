@@ -148,7 +148,7 @@ class _Roles:
             graph, self._effect.treatments, self._effect.outcomes, self._apart | 1 << node
         ):
             return None
-        conditions = Conditions.on(graph, self._apart | 1 << node)
+        conditions = self._effect.conditioning(self._apart | 1 << node)
         trail = find_open_path(graph, self._effect.treatments, self._effect.outcomes, conditions)
         colliders = [passed for passed, role in trail.inner if role == "collider"] if trail else []
         if not colliders:
