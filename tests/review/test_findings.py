@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 from collections.abc import Callable
 from dataclasses import replace
@@ -321,3 +322,19 @@ def test_nothing_is_called_unmeasured_that_is_measured(seeds: range):
                 assert (finding.rule == "unmeasured-cause") is hidden, seed
                 told += 1
     assert told > 30
+
+
+REQUESTS = ("Stop ", "Drop ", "Take ", "Adjust ", "Start ", "Record ", "Check ", "Claim ", "If you do hold ")
+
+
+def test_every_error_ends_by_saying_what_to_do():
+    seen = set()
+    for seed in range(250):
+        question = random_pipeline(seed)
+        _, answer = review_of(question.graph, question.config())
+        for finding in answer.findings:
+            if finding.severity == "error":
+                last = re.split(r"(?<=[.:]) (?=[A-Z])", finding.message)[-1]
+                assert last.startswith(REQUESTS), (seed, finding.rule, finding.message)
+                seen.add(finding.rule)
+    assert len(seen) > 12, sorted(seen)

@@ -17,11 +17,13 @@ class Adjustment:
 
     Attributes:
         doing: what the config does, as the subject of a sentence.
+        undone: what stops it, as a request.
         columns: the column that it names.
         place: where it names it.
     """
 
     doing: str
+    undone: str
     columns: tuple[str, ...]
     place: Place
 
@@ -40,10 +42,12 @@ def adjustments(claim: Claim, config: Config, node: int) -> Iterator[Adjustment]
         for named in several:
             if named.node == node:
                 columns = (graph.name(node),)
-                yield Adjustment(f"{doing} {listed(columns)}", columns, named.place)
+                full = f"{doing} {listed(columns)}"
+                yield Adjustment(full, f"stop {full}", columns, named.place)
     for named in config.fixed_effects:
         if named.node != node and claim.absorbed(1 << named.node) >> node & 1:
             columns = (graph.name(named.node),)
             held = listed([graph.name(node)])
-            doing = f"absorbing the fixed effects of {listed(columns)}, which hold {held} fixed,"
-            yield Adjustment(doing, columns, named.place)
+            full = f"absorbing the fixed effects of {listed(columns)}"
+            doing = f"{full}, which hold {held} fixed,"
+            yield Adjustment(doing, f"stop {full}", columns, named.place)

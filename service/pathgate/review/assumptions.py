@@ -38,17 +38,19 @@ def _message(assumed: Assumed, columns: tuple[str, ...]) -> str:
         case "null-test":
             return (
                 f"{part_text(assumed.written)} keeps rows by whether {listed(columns)} is recorded, not by its"
-                " value. Assumed: it goes missing for reasons unrelated to everything in the graph."
+                " value. Assumed: it goes missing for reasons unrelated to everything in the graph. If not, say why"
+                " under `missing_because`."
             )
         case "comparison":
             return (
                 f"Conditions also drop or keep rows by whether {listed(columns, 'or')} is null. Assumed: nulls come"
-                " about for reasons unrelated to everything in the graph."
+                " about for reasons unrelated to everything in the graph. If not, say why under `missing_because`."
             )
         case "join":
             return (
                 f"The join with {listed(assumed.tables)} keeps only rows that have a partner there. Assumed: which"
-                " rows have one is unrelated to everything in the graph."
+                " rows have one is unrelated to everything in the graph. If not, say what decides it under"
+                " `rows_exist_because`."
             )
     return (
         f"GROUP BY makes one row for each value of {listed(columns)}. Assumed: the graph speaks of these"

@@ -43,6 +43,12 @@ def breaking_findings(claim: Claim, config: Config, deadline: Deadline) -> Itera
         yield from blame.opened(found) if isinstance(found, Opened) else blame.missing(found)
 
 
+_ADVICE = {
+    "unmeasured-cause": "Record something on it; until then the number is a link between two columns, no effect.",
+    "unblockable-path": "Check which way its arrows point, or ask about another treatment or outcome.",
+}
+
+
 @dataclass(frozen=True, slots=True)
 class _Cause:
     """What in the config conditions on a node.
@@ -50,6 +56,7 @@ class _Cause:
     Attributes:
         kind: a covariate, a part of the row filter, or rows that go missing without it.
         doing: what the config does with it, as the subject of a sentence.
+        undone: what stops it, as a request.
         columns: the columns to blame.
         about: what a sentence is about that says where on the path these are: the columns, or what they hold fixed.
         distance: arrows from the node in question down to the column that is adjusted for or filtered by;
@@ -59,6 +66,7 @@ class _Cause:
 
     kind: str
     doing: str
+    undone: str
     columns: tuple[str, ...]
     about: tuple[str, ...]
     distance: int
@@ -105,7 +113,7 @@ class _Blame:
             yield Finding(
                 rule=cause.rule("causal-path"),
                 columns=cause.columns,
-                message=capital(message),
+                message=f"{capital(message)} {capital(cause.undone)}.",
                 place=cause.place,
                 part=cause.part,
                 causal_path=tuple(map(label, found.causal_path.nodes)),
@@ -120,13 +128,16 @@ class _Blame:
             for cause in self._causes(descent.nodes[-1], descent, found.trail.nodes):
                 which = listed(cause.about)
                 if cause.distance < 0:
-                    why = f"{'it reads' if cause.kind == 'filter' else 'that depends on'} {which} together"
+                    why = f"it {'reads' if cause.kind == 'filter' else 'depends on'} {which} together"
                 elif cause.distance == 0:
                     why = f"{which} is a common consequence on it"
                 else:
                     why = f"{which} is a consequence of {listed([graph.name(collider)])}, a common consequence on it"
                 what = f"{self._claim.effect_name}{self._once(found.trail)}"
-                message = f"{capital(cause.doing)} opens the path {drawn}, which is not {what}: {why}."
+                message = (
+                    f"{capital(cause.doing)} opens the path {drawn}, which is not {what}: {why}."
+                    f" {capital(cause.undone)}{self._or_block(found.trail)}."
+                )
                 rule = cause.rule("collider")
                 yield Finding(rule, cause.columns, message, cause.place, cause.part, found.path)
 
@@ -138,13 +149,21 @@ class _Blame:
         if found.blocker is None:
             ends = names_in(self._kept, mask_of((found.trail.nodes[0], found.trail.nodes[-1])))
             rule, why = self._why_nothing_blocks(found)
-            yield Finding(rule, ends, f"{still_open}: {why}.", ("covariates",), path=found.path)
+            advice = _ADVICE[rule]
+            yield Finding(rule, ends, f"{still_open}: {why}. {advice}", ("covariates",), path=found.path)
             return
         name = self._kept.graph.name(found.blocker)
         is_fork = (found.blocker, "fork") in found.trail.inner
         why = "is a common cause on it" if is_fork else "would block it"
-        message = f"{still_open}: {listed([name])} {why} and the model does not adjust for it."
+        message = f"{still_open}: {listed([name])} {why} and the model does not adjust for it. Adjust for it."
         yield Finding("missing-covariate", (name,), message, ("covariates",), path=found.path)
+
+    def _or_block(self, trail: Trail) -> str:
+        """What else would block an opened path, as the end of a request."""
+        unfit = self._claim.effect.forbidden | self._claim.ends
+        fit = self._kept.graph.measured & ~unfit
+        blockers = mask_of(node for node, role in trail.inner if role != "collider") & fit
+        return f", or adjust for {listed(names_in(self._kept, blockers), 'or')}" if blockers else ""
 
     def _once(self, trail: Trail) -> str:
         """Which columns on a path block it as the config stands, but must not."""
@@ -169,7 +188,15 @@ class _Blame:
         distance = len(descent.nodes) - 1
         for adjusting in adjustments(self._claim, self._config, node):
             held = (self._kept.graph.name(node),)
-            yield _Cause("covariate", adjusting.doing, adjusting.columns, held, distance, adjusting.place)
+            yield _Cause(
+                "covariate",
+                adjusting.doing,
+                adjusting.undone,
+                adjusting.columns,
+                held,
+                distance,
+                adjusting.place,
+            )
         rows = self._config.rows
         for kind, filter_parts in (("filter", rows.filter_parts), ("lost-rows", rows.silent_parts)):
             for filter_part in filter_parts:
@@ -184,8 +211,13 @@ class _Blame:
         doing = (
             f"keeping rows by {part_text(part.written)}" if kind == "filter" else silent_text(part.written)
         )
+        undone = (
+            "drop this condition" if kind == "filter" else "start from rows that are not lost in this way"
+        )
+        if kind == "filter" and self._claim.row_filter_fixed:
+            undone = "take rows that are not chosen by this condition, which the config may not drop"
         read = self._columns_read(node, part, descent, along)
-        return _Cause(kind, doing, read, read, distance, filter_part.place, part.written)
+        return _Cause(kind, doing, undone, read, read, distance, filter_part.place, part.written)
 
     def _stands_for(self, node: int, part: Part) -> bool:
         if part.fixed:

@@ -27,7 +27,7 @@ def _treatments(claim: Claim, config: Config) -> Iterator[Finding]:
             message = (
                 f"The treatment {listed([named.written])} is computed from {listed(bases)}: setting it is not one"
                 " well-defined action, since many values of these give the same one. What is judged is the effect"
-                " of setting all of them."
+                " of setting all of them. Make these columns the treatment instead, or one of them."
             )
             yield Finding("treatment-of-several-columns", bases, message, named.place)
 
@@ -40,7 +40,8 @@ def _coarse(claim: Claim, config: Config) -> Iterator[Finding]:
             name = claim.graph.name(named.node)
             message = (
                 f"{listed([named.written])} keeps only a part of {listed([name])}: adjusting for it is partial, and"
-                " what differs within one value of it still counts. The verdict takes it for the whole column."
+                " what differs within one value of it still counts. The verdict takes it for the whole column. Adjust"
+                f" for {listed([name])} itself if you can."
             )
             yield Finding("coarse-covariate", (name,), message, named.place)
 
@@ -59,7 +60,7 @@ def _redundant(claim: Claim, config: Config) -> Iterator[Finding]:
 def _told_redundant(claim: Claim, named: Named, made_of: tuple[str, ...]) -> Finding:
     message = (
         f"{listed([named.written])} is determined by {listed(made_of)}, which the model adjusts for already: it adds"
-        " nothing but a singular or nearly singular fit."
+        " nothing but a singular or nearly singular fit. Take it out."
     )
     return Finding("redundant-covariate", (claim.graph.name(named.node),), message, named.place)
 
@@ -71,6 +72,6 @@ def _outside(config: Config) -> Iterator[Finding]:
     for name, place in told.items():
         message = (
             f"{listed([name])} is declared as outside the graph: nothing is known of it, and the verdict takes it to"
-            " matter for nothing."
+            " matter for nothing. If it may matter, put it into the graph."
         )
         yield Finding("outside-graph", (name,), message, place)

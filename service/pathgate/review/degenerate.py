@@ -9,7 +9,7 @@ from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.findings import Finding
 from pathgate.review.names import Named
-from pathgate.review.wording import listed, part_text
+from pathgate.review.wording import condition_text, listed
 
 
 def degenerate_findings(claim: Claim, config: Config) -> Iterator[Finding]:
@@ -33,7 +33,8 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
             columns = graph.names_of(1 << named.node | 1 << node)
             message = (
                 f"The {role} {listed([graph.name(node)])} has one value within each value of"
-                f" {listed([graph.name(named.node)])}: once its fixed effects are absorbed, nothing is left to compare."
+                f" {listed([graph.name(named.node)])}: once its fixed effects are absorbed, nothing is left to"
+                " compare. Take these fixed effects out."
             )
             yield Finding("no-variation-left", columns, message, named.place)
     stuck = claim.leaves_no_variation(claim.usable)
@@ -43,7 +44,7 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
             message = (
                 f"{listed([graph.name(named.node)])} is computed from {listed(made_of)}: with what else the model"
                 f" adjusts for, only {listed(graph.names_of(claim.treatments), 'or')} can make it differ, so within"
-                " one value of it the treatment has no variation of its own."
+                " one value of it the treatment has no variation of its own. Take it out."
             )
             yield Finding("no-variation-left", (graph.name(named.node),), message, named.place)
     for filter_part in config.rows.filter_parts:
@@ -51,10 +52,10 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
         for node in members(stuck & part.columns if part.fixed else 0):
             made_of = graph.names_of(claim.inputs[node])
             message = (
-                f"The condition {part_text(part.written)} keeps one value of {listed([graph.name(node)])}, which is"
+                f"{condition_text(part.written)} keeps one value of {listed([graph.name(node)])}, which is"
                 f" computed from {listed(made_of)}: with what the model adjusts for, only"
                 f" {listed(graph.names_of(claim.treatments), 'or')} can make it differ, so the treatment is left no"
-                " variation of its own."
+                " variation of its own. Drop that condition."
             )
             yield Finding("no-variation-left", (graph.name(node),), message, filter_part.place, part.written)
 
@@ -65,8 +66,8 @@ def _both(config: Config, named: Named, name: str, role: str) -> str:
     is_input = named.node not in {each.node for each in config.treated}
     if role == "treatment" and treated and is_input:
         made = listed(sorted(treated))
-        return f"The treatment {made} is computed from {listed([name])}, which the model also adjusts for."
-    return f"The {role} {listed([name])} is also adjusted for: within one value of it nothing varies."
+        return f"The treatment {made} is computed from {listed([name])}, which the model also adjusts for. Take it out."
+    return f"The {role} {listed([name])} is also adjusted for: within one value of it nothing varies. Take it out."
 
 
 def _covariate(claim: Claim, config: Config, named: Named) -> Iterator[Finding]:
@@ -85,22 +86,27 @@ def _filter(claim: Claim, config: Config) -> Iterator[Finding]:
         if unmeasured:
             message = (
                 f"The row filter reads {listed(unmeasured)}, which the graph marks as unmeasured: the platform"
-                " holds no such column, so no rows can be kept by it."
+                " holds no such column, so no rows can be kept by it. Drop that condition; or, if you do hold the"
+                " column, take `measured: false` off its node."
             )
             yield Finding("unmeasured-filter-column", unmeasured, message, place, part.written)
         for node in members(part.columns & claim.ends if part.fixed else 0):
             role = "treatment" if claim.treatments >> node & 1 else "outcome"
             name = claim.graph.name(node)
             message = (
-                f"The condition {part_text(part.written)} keeps one value of the {role} {listed([name])}:"
-                " nothing is left to compare."
+                f"{condition_text(part.written)} keeps one value of the {role} {listed([name])}:"
+                " nothing is left to compare. Drop that condition."
             )
             yield Finding(f"{role}-fixed", (name,), message, place, part.written)
 
 
 def _unmeasured(claim: Claim, named: Named, role: str) -> Finding:
     name = claim.graph.name(named.node)
-    message = f"The {role} {listed([name])} is marked as unmeasured in the graph: the platform holds no such column."
+    instead = "take it out of the config" if role == "covariate" else f"ask about a measured {role}"
+    message = (
+        f"The {role} {listed([name])} is marked as unmeasured in the graph: the platform holds no such column. If"
+        f" you do hold it, take `measured: false` off its node; else {instead}."
+    )
     return Finding(f"unmeasured-{role}", (name,), message, named.place)
 
 

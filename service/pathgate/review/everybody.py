@@ -44,7 +44,8 @@ def _not_recovered(claim: Claim, config: Config) -> Finding:
     if claim.population == "whole":
         message = (
             f"The effect in everybody is not recovered by adjusting: who is kept, by {listed(columns)}, tells of the"
-            f" outcome, and the covariates{with_known} do not undo that."
+            f" outcome, and the covariates{with_known} do not undo that. Claim `population: kept`, or name under"
+            " `measured_everywhere` what you know the distribution of in everybody."
         )
         return Finding("not-recovered", columns, message, place, path=_path_to_selection(claim))
     message = (

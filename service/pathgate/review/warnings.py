@@ -33,13 +33,14 @@ def _directions(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Fi
         if not descendants(graph, 1 << treatment.node) & claim.outcomes:
             message = (
                 f"No directed path leads from {listed([name])} to {outcomes}: by this graph the effect is zero,"
-                " and any other number is bias or chance."
+                " and any other number is bias or chance. Check whether the graph lacks an arrow."
             )
             yield Finding("no-causal-path", (name,), message, treatment.place)
         elif claim.asks == "direct" and not claim.effect.on_causal_paths:
             message = (
                 f"No arrow leads from {listed([name])} to {outcomes}: by this graph the direct effect is zero, and"
-                " any other number is bias or chance."
+                " any other number is bias or chance. Ask for the total effect, or check whether the graph lacks an"
+                " arrow."
             )
             yield Finding("no-arrow", (name,), message, treatment.place)
         earlier = ancestors(graph, 1 << treatment.node) & claim.outcomes
@@ -49,7 +50,7 @@ def _directions(claim: Claim, config: Config, deadline: Deadline) -> Iterator[Fi
                 names = graph.names_of(1 << treatment.node | 1 << outcome.node)
                 message = (
                     f"The outcome {listed([graph.name(outcome.node)])} is a cause of the treatment"
-                    f" {listed([name])} in this graph: the two may have been swapped."
+                    f" {listed([name])} in this graph: check whether the two were swapped."
                 )
                 yield Finding("outcome-precedes-treatment", names, message, outcome.place)
 
@@ -84,7 +85,7 @@ def _rows(claim: Claim, config: Config) -> Iterator[Finding]:
                 who = f"{capital(silent_text(part.written))} makes who is kept depend on the treatment"
             message = (
                 f"{who} (through {listed(columns)}): the number speaks of the rows that were in fact kept, and of"
-                " nobody else."
+                " nobody else. Say so wherever it is reported."
             )
             rule = "lost-rows-depend-on-treatment" if is_silent else "filter-depends-on-treatment"
             yield Finding(rule, columns, message, filter_part.place, part.written)

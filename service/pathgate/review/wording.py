@@ -23,9 +23,10 @@ def listed(names: Sequence[str], joined: str = "and") -> str:
     >>> listed(["rain", "promo", "depot"])
     '"rain", "promo" and "depot"'
     """
-    shown = [quoted(name) for name in names]
-    if len(shown) > 6:
-        shown = [*shown[:5], f"{len(shown) - 5} more"]
+    is_long = len(names) > 6
+    shown = [quoted(name) for name in (names[:5] if is_long else names)]
+    if is_long:
+        shown.append(f"{len(names) - 5} more")
     return shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} {joined} {shown[-1]}"
 
 
@@ -48,17 +49,39 @@ def part_text(part: object) -> str:
     return listed(part)  # type: ignore[arg-type] # a list of names
 
 
+def condition_text(part: object) -> str:
+    """A condition on the rows as the subject of a sentence.
+
+    >>> condition_text("depot = 'north'"), condition_text({"columns": "depot", "fixed": True})
+    ("The condition `depot = 'north'`", 'The row filter')
+    """
+    return f"The condition {part_text(part)}" if isinstance(part, str) else "The row filter"
+
+
 def silent_text(written: object) -> str:
     """What makes rows go missing beside the row filter, as the subject of a sentence.
 
     >>> silent_text({"rows_exist_because": "courier_app"}), silent_text({"missing_because": {"weight": ["depot"]}})
-    ('that rows exist because of "courier_app"', 'that rows without "weight" go missing because of "depot"')
+    ('having only rows that exist because of "courier_app"', 'losing the rows without "weight" because of "depot"')
     """
     said = written if isinstance(written, Mapping) else {}
     if "rows_exist_because" in said:
-        return f"that rows exist because of {_listed_one_or_more(said['rows_exist_because'])}"
+        return f"having only rows that exist because of {_listed_one_or_more(said['rows_exist_because'])}"
     ((column, causes),) = said["missing_because"].items()
-    return f"that rows without {quoted(column)} go missing because of {_listed_one_or_more(causes)}"
+    return f"losing the rows without {quoted(column)} because of {_listed_one_or_more(causes)}"
+
+
+def silent_label(written: object) -> str:
+    """The same in a few words, for the drawing of a path.
+
+    >>> silent_label({"rows_exist_because": "courier_app"}), silent_label({"missing_because": {"weight": ["depot"]}})
+    ('row exists', '"weight" recorded')
+    """
+    said = written if isinstance(written, Mapping) else {}
+    if "rows_exist_because" in said:
+        return "row exists"
+    (column,) = said["missing_because"]
+    return f"{quoted(column)} recorded"
 
 
 def _listed_one_or_more(names: str | Sequence[str]) -> str:
@@ -96,6 +119,8 @@ def _node(kept: Kept, node: int, conditioned: int) -> str:
     name = kept.graph.name(node)
     if not name:
         written = kept.part_of[node].written
+        if isinstance(written, Mapping) and "columns" not in written:
+            return "{" + silent_label(written) + "}"
         return "{" + (shortened(written) if isinstance(written, str) else part_text(written)) + "}"
     # Quotes only where a name could be misread as part of the drawing.
     shown = name if name.isprintable() and not set(name) & set(' →←↔[](){}"') else quoted(name)
