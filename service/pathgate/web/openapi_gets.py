@@ -104,6 +104,7 @@ def get_paths(schema_names: list[str]) -> Json:
             parameters=_named("name", list(RULES)),
             responses=missing,
         ),
+        "/docs/roles": _get("roles", "What a column can be to the effect claimed, as a page.", _HTML),
         "/problems/{slug}": _get(
             "problem",
             "What a kind of problem means and what to do about it.",

@@ -1,4 +1,4 @@
-"""What is read by GET: the reference, the pages of problems and rules, the schemas, the state of the service.
+"""What is read by GET: the reference, the pages of problems, rules and roles, the schemas, the state of the service.
 
 Everything but the state is made once, when the app is; a request only picks it up.
 """
@@ -38,6 +38,7 @@ def install_pages(app: Flask, operations: Sequence[Operation], settings: Setting
     _install_reference(app, pages)
     _install_problems(app, pages)
     _install_rules(app, pages)
+    _install_roles(app, pages)
 
 
 def _install_state(app: Flask, settings: Settings) -> None:
@@ -108,6 +109,14 @@ def _install_rules(app: Flask, pages: Pages) -> None:
         if name not in RULES:
             raise NotFound
         return json_reply(asdict(RULES[name])) if _is_json_wanted() else _page(rule_pages[name], pages)
+
+
+def _install_roles(app: Flask, pages: Pages) -> None:
+    listed = pages.roles()
+
+    @app.get("/docs/roles")
+    def roles() -> Response:
+        return _page(listed, pages)
 
 
 def _page(text: str, pages: Pages) -> Response:

@@ -1,4 +1,4 @@
-"""The reference as pages: what each operation is for, its members, examples to copy, kinds of problems, rules.
+"""The reference as pages: what each operation is for, its members, examples, kinds of problems, rules, roles.
 
 Made from the OpenAPI document and the tables of problems and rules alone, so that pages and answers cannot
 disagree. A page is one file: its style is in it, it needs no script, and its content policy lets it load nothing.
@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from pathgate.review.roles import ROLES
 from pathgate.review.rules import RULES, SEVERITIES, Rule
 from pathgate.web.problems import PROBLEM_TYPES, ProblemType
 from pathgate.web.schema_documents import document_name
@@ -103,6 +104,10 @@ class Pages:
             for severity, means in SEVERITIES.items()
         ]
         return self._rendered("rules.html", groups=groups)
+
+    def roles(self) -> str:
+        """The page at ``/docs/roles``."""
+        return self._rendered("roles.html", roles=ROLES)
 
     def _rendered(self, template: str, **context: Any) -> str:
         return self._environment.get_template(template).render(
