@@ -140,6 +140,23 @@ def test_a_gate_that_lets_everything_pass_is_found():
     assert "let pass" in found["gate"]["detail"]
 
 
+def test_a_gate_that_stops_everything_is_found():
+    sound, biased = demo_configs()[:2]
+    relay = relayed()
+
+    def act(meeting: Meeting) -> None:
+        if b"as_gate" not in meeting.request:
+            return relay(meeting)
+        asked = msgspec.json.decode(meeting.request.partition(b"\r\n\r\n")[2])
+        asked["config"] = {**biased, "name": asked["config"]["name"]}
+        reply = create_app(Settings()).test_client().post("/v1/review", json=asked)
+        return answering(reply.data, reply.status_code, reply.headers["Content-Type"])(meeting)
+
+    with faulty(act) as server:
+        found = steps(server.url)
+    assert found["gate"]["detail"] == f"{sound['name']} is biased there, sound here"
+
+
 def test_another_version_that_answers_alike_is_as_good():
     old = json.dumps(VERSION).encode()
     with faulty(relayed(lambda _request, body: body.replace(old, b'"9.9.9"'))) as server:

@@ -280,6 +280,41 @@ def test_what_was_judged_before_the_service_went_away_stays_judged(here):
         )
 
 
+@pytest.mark.parametrize("choice", ["fail", "pass"])
+def test_what_was_judged_before_the_service_refused_stays_judged(here, choice):
+    configs = [{**SOUND, "name": f"number {number}"} for number in range(MOST_CONFIGS + 2)]
+    write(here, "all.json", configs)
+    lines = (review_line(place, MOST_CONFIGS, config) for place, config in enumerate(configs[:MOST_CONFIGS]))
+    with faulty(in_chunks(*lines), problem(401, retryable=False, slug="unauthorized")) as server:
+        result = pathgate("all.json", "--url", server.url, "--if-unreachable", choice)
+    assert result.exit_code == 2
+    assert result.stdout.count("NOT JUDGED  number 10") == 2
+    assert result.stdout.count("  said unauthorized") == 2
+
+
+@pytest.mark.parametrize(
+    "pointer", ["", "#", "nowhere", "#/configs/0/~9/x", "#/graph/nodes/99", "#/configs/\x1b[31m"]
+)
+def test_a_problem_that_points_nowhere_is_one_config_that_is_not_judged(here, pointer):
+    errors = [{"pointer": pointer, "detail": "said so"}]
+    document = {
+        "type": "/problems/x",
+        "title": "T",
+        "status": 422,
+        "detail": "d",
+        "retryable": False,
+        "errors": errors,
+    }
+    line = {"index": 0, "count": 1, "name": SOUND["name"], "problem": document}
+    for form in FORMS:
+        with faulty(in_chunks(msgspec.json.encode(line) + b"\n")) as server:
+            result = pathgate("one.json", "--url", server.url, "--format", form)
+        assert result.exit_code == 2
+        assert "said so" in result.output
+        assert "1 config found, 0 reviewed" in result.output
+        assert "\x1b" not in result.output
+
+
 def test_an_unreadable_file_does_not_pass_because_the_service_is_out_of_reach(here):
     write(here, "broken.json", "{")
     words = ["one.json", "broken.json", "--timeout", "0.3", "--if-unreachable", "pass"]

@@ -155,6 +155,16 @@ def test_what_is_no_answer_raises_at_once_and_is_not_asked_again(fakes, act):
     assert fakes.slept == []
 
 
+@pytest.mark.parametrize("waiver", [True, "yes", {}, {"why": 1, "owner": "refunds team"}])
+def test_a_review_with_a_waiver_that_is_none_is_no_answer(fakes, waiver):
+    findings = [{**each, "accepted": waiver} for each in BAD["findings"]]
+    with (
+        faulty(answering({**BAD, "findings": findings})) as server,
+        pytest.raises(NotAnAnswer, match="a waiver"),
+    ):
+        fakes.client(server.url).review(GRAPH, SOUND)
+
+
 def test_an_answer_that_passes_what_its_own_review_does_not_is_none(fakes):
     with faulty(answering(BAD)) as server, pytest.raises(NotAnAnswer, match="let pass"):
         fakes.client(server.url).gate(GRAPH, SOUND)
@@ -179,6 +189,7 @@ CUT: dict[str, Act] = {
     "one line too few": in_chunks(line(0, 2)),
     "one line too many": in_chunks(line(0, 2), line(1, 2), line(2, 2)),
     "a last line without its end": in_chunks(line(0, 2), line(1, 2)[:-1]),
+    "something after the last line": in_chunks(line(0, 2), line(1, 2), b"x"),
     "a last line that is cut": in_chunks(line(0, 2), line(1, 2)[:-20]),
     "a stream that is cut between lines": in_chunks(line(0, 2), is_ended=False),
     "a stream that is cut after its last line": in_chunks(line(0, 2), line(1, 2), is_ended=False),
@@ -248,6 +259,9 @@ def test_a_retryable_problem_is_tried_again_and_another_is_not(fakes):
     with faulty(problem(503, retryable=False), answering(GOOD)) as server, pytest.raises(Refused):
         fakes.client(server.url).gate(GRAPH, SOUND)
     assert len(server.requests) == 1
+    with faulty(problem(503, retryable=False)) as server, pytest.raises(Refused) as caught:
+        fakes.client(server.url).gate(GRAPH, SOUND)
+    assert not caught.value.is_out_of_reach
 
 
 def test_a_problem_that_stays_is_raised_after_the_last_try(fakes):
@@ -359,6 +373,13 @@ def test_a_409_with_its_review_is_a_judgement(fakes):
     with faulty(act) as server, pytest.raises(FallsShort) as caught:
         fakes.client(server.url).gate(GRAPH, SOUND)
     assert caught.value.review == BAD
+
+
+def test_a_409_of_another_kind_is_a_refusal_whatever_it_holds(fakes):
+    document = {"type": "/problems/conflict", "title": "T", "status": 409, "detail": "d", "retryable": False}
+    act = answering({**document, "review": BAD}, 409, "application/problem+json")
+    with faulty(act) as server, pytest.raises(Refused):
+        fakes.client(server.url).gate(GRAPH, SOUND)
 
 
 def test_what_does_not_speak_tls_is_not_spoken_to_without(fakes):

@@ -47,7 +47,7 @@ class RemoteJudge:
         """The review of each config, or its problem, in order.
 
         Raises:
-            Stopped: the service refuses the graph or the call, or gave no answer at all.
+            Stopped: the service judged none of them, and they are not to pass for that.
         """
         budget = Budget(self.client.timeout, self.client.surroundings.clock)
         answered = 0
@@ -58,7 +58,7 @@ class RemoteJudge:
                     answered += 1
         except ClientError as error:
             left = self._unanswered(error)
-            if _is_refusal(error) or not (answered or left.get("let_pass")):
+            if not answered and not left.get("let_pass"):
                 raise Stopped(left["problem"], self.graph) from None
             yield from (left for _ in range(answered, len(configs)))
 
@@ -146,9 +146,9 @@ def _of_one_config(problem: Json, index: int) -> Json:
 
 def _moved(error: Mapping[str, Any], beginning: str) -> Json:
     pointer = error["pointer"]
-    rest = pointer.removeprefix(beginning)
-    is_below = pointer.startswith(beginning) and rest[:1] in ("", "/")
-    return {**error, "pointer": f"#/config{rest}" if is_below else pointer}
+    if pointer.startswith(beginning):
+        pointer = "#/config" + pointer.removeprefix(beginning)
+    return {**error, "pointer": pointer}
 
 
 def _without_request(problem: Json) -> Json:
