@@ -65,7 +65,18 @@ def test_help_is_answered_without_the_weight_of_the_checks(words):
 
 
 def test_a_small_review_loads_nothing_that_only_others_need(tmp_path):
-    needless = ["flask", "werkzeug", "gunicorn", "networkx", "pandas", "formulaic", "scipy", "sqlglot", "rich", "xml"]
+    needless = [
+        "flask",
+        "werkzeug",
+        "gunicorn",
+        "networkx",
+        "pandas",
+        "formulaic",
+        "scipy",
+        "sqlglot",
+        "rich",
+        "xml",
+    ]
     words = ["review", write(tmp_path, "g.json", GRAPH), write(tmp_path, "c.json", SOUND)]
     program = (
         "import sys\nfrom pathgate.cli.main import main\n"
