@@ -16,7 +16,7 @@ from pathgate.criteria.selection import Part, keep_rows
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.config import Asks, Claimed, Config
-from pathgate.review.determined import determined_by
+from pathgate.review.determined import determined_by, made_of
 
 # Effects on different choices of rows that one review may hold at a time.
 MOST_EFFECTS = 64
@@ -216,8 +216,8 @@ class Claim:
         found, known = 0, held
         known_with = held | columns
         # Inputs stand before what uses them, so that what a column is determined by is settled when it comes.
-        for node, made_of in self.inputs.items():
-            is_determined, is_with = not made_of & ~known, not made_of & ~known_with
+        for node, needed in self.inputs.items():
+            is_determined, is_with = not needed & ~known, not needed & ~known_with
             if held >> node & 1:
                 found |= (is_with and not is_determined) << node
             known |= is_determined << node
@@ -286,17 +286,9 @@ class Claim:
             stuck = self.leaves_no_variation(choice)
             if not stuck:
                 return choice
-            behind = self._made_of(stuck.bit_length() - 1) & choice.covariates & ~required
+            behind = made_of(1 << stuck.bit_length() - 1, self.inputs) & choice.covariates & ~required
             waiting += [both for node in members(behind) if (both := excluded | 1 << node) not in met]
         return None
-
-    def _made_of(self, column: int) -> int:
-        """A computed column with all that it is computed from, step by step."""
-        found = 1 << column
-        for node in sorted(self.inputs, reverse=True):
-            if found >> node & 1:
-                found |= self.inputs[node]
-        return found
 
     def _fixed_effects_to_keep(self) -> Iterator[int]:
         """Sets of fixed effects, larger ones first."""

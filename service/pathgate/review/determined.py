@@ -1,4 +1,7 @@
-"""Which computed columns are determined by others?"""
+"""Which computed columns are determined by others, and what is a computed column made of?
+
+A computed column is determined by its inputs and by nothing else. Linear in the computed columns.
+"""
 
 from __future__ import annotations
 
@@ -34,3 +37,15 @@ def determined_by_others(known: int, inputs: Mapping[int, int]) -> int:
             found |= known & 1 << node
             settled |= 1 << node
     return found
+
+
+def made_of(columns: int, inputs: Mapping[int, int]) -> int:
+    """Some columns with all that they are computed from, step by step.
+
+    >>> bin(made_of(0b1000, {2: 0b011, 3: 0b100}))
+    '0b1111'
+    """
+    for node in sorted(inputs, reverse=True):
+        if columns >> node & 1:
+            columns |= inputs[node]
+    return columns

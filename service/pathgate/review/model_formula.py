@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any
 from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.derived import Columns
+from pathgate.review.determined import made_of
 from pathgate.review.names import Named, NameReader
 from pathgate.review.terms import ModelTerm
 from pathgate.review.wording import listed
@@ -22,8 +23,6 @@ if TYPE_CHECKING:
     from pathgate.review.formula import Factor, Formula, Term
 
 _PLACE: Place = ("formula",)
-
-
 _Read = tuple["Term", list[Named]]
 
 
@@ -141,7 +140,8 @@ class _Understanding:
                 seen |= 1 << nodes[0].node
             if self._is_product(nodes, plain):
                 seen |= self._columns_of(nodes)
-            for node in members(self._made_of(nodes) & treated):
+            of_term = made_of(mask_of(named.node for named in nodes), self._columns.inputs)
+            for node in members(of_term & treated):
                 part_of.setdefault(node, term.written)
         for node in members(treated & ~seen):
             name = self._columns.graph.name(node)
@@ -150,14 +150,6 @@ class _Understanding:
                 shown = listed([part_of[node]])
                 detail += f" by itself, only {shown}: add a term for it, or make {shown} the treatment"
             self._faults.append(Fault("invalid-request", ("treatment",), detail, (name,)))
-
-    def _made_of(self, nodes: Sequence[Named]) -> int:
-        """Some columns with all that they are computed from, step by step."""
-        made_of = mask_of(named.node for named in nodes)
-        for node in sorted(self._columns.inputs, reverse=True):
-            if made_of >> node & 1:
-                made_of |= self._columns.inputs[node]
-        return made_of
 
     def _adjusted(self, read: Sequence[_Read], plain: int) -> dict[int, Named]:
         """What the terms adjust for, by node: of several functions of one column the one that keeps most."""
@@ -181,8 +173,8 @@ class _Understanding:
         """The columns that factors read; those that the formula computes count as what they are made of."""
         read = 0
         for named in nodes:
-            made_of = self._columns.inputs.get(named.node, 0) if named.node >= self._first else 0
-            read |= made_of or 1 << named.node
+            inputs = self._columns.inputs.get(named.node, 0) if named.node >= self._first else 0
+            read |= inputs or 1 << named.node
         return read
 
     def _product(self, term: Term, nodes: Sequence[Named]) -> int:
@@ -234,7 +226,7 @@ def agreed_covariates(
     if "covariates" not in said:
         return formula.covariates
     places = {named.node: named.place for named in given}
-    mine, theirs = _made_of(formula, formula.covariates), _made_of(formula, given)
+    mine, theirs = _spelled_out(formula, formula.covariates), _spelled_out(formula, given)
     graph = formula.columns.graph
     for nodes, where in (
         (mine & ~theirs, "the formula adjusts for {} and the covariates do not name it"),
@@ -246,7 +238,7 @@ def agreed_covariates(
     return tuple(replace(named, place=places.get(named.node, named.place)) for named in formula.covariates)
 
 
-def _made_of(formula: ModelFormula, covariates: Sequence[Named]) -> int:
+def _spelled_out(formula: ModelFormula, covariates: Sequence[Named]) -> int:
     """The columns, those that the formula computes by what they are made of; treatments among these left out."""
     nodes = 0
     for named in covariates:

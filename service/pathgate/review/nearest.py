@@ -18,6 +18,7 @@ from pathgate.criteria.selection import Part
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Choice, Claim
+from pathgate.review.determined import made_of
 
 
 @dataclass(frozen=True, slots=True)
@@ -142,8 +143,7 @@ def _without(claim: Claim, step: _Step, effect: Effect, node: int) -> tuple[_Ste
 def _freeing(claim: Claim, step: _Step, stuck: int) -> Iterator[_Step]:
     """Let go of a computed column that only the treatment could make vary, or of something it is computed from."""
     choice = step.choice
-    node = stuck.bit_length() - 1
-    involved = 1 << node | _made_of(claim, node)
+    involved = made_of(1 << stuck.bit_length() - 1, claim.inputs)
     for column in members(choice.covariates & involved & ~step.added):
         yield step.without_covariate(column)
     for column in members(choice.fixed_effects):
@@ -152,14 +152,6 @@ def _freeing(claim: Claim, step: _Step, stuck: int) -> Iterator[_Step]:
         for part in choice.parts:
             if part.fixed and part.columns & involved:
                 yield step.without_part(part)
-
-
-def _made_of(claim: Claim, node: int) -> int:
-    """Everything that a column is computed from, over several steps."""
-    found = claim.inputs.get(node, 0)
-    for each in members(found):
-        found |= _made_of(claim, each)
-    return found
 
 
 def _any(claim: Claim, step: _Step) -> Iterator[_Step]:
