@@ -26,7 +26,7 @@ def test_the_commands_of_the_readme_do_what_they_say(tmp_path):
         ["bash", "-c", script], cwd=tmp_path, env=ENVIRONMENT, capture_output=True, text=True, check=False
     )
     assert (done.returncode, done.stderr) == (0, "")
-    assert len(block.splitlines()) == 8
+    assert len(block.splitlines()) == 10
     made = {str(path.relative_to(tmp_path / "refunds")) for path in (tmp_path / "refunds").rglob("*")}
     assert {
         "build/pathgate.sarif",
