@@ -13,6 +13,7 @@ from hypothesis import strategies as st
 
 from pathgate.graphs import read_graph
 from pathgate.graphs.errors import Fault
+from pathgate.review.names import NameReader
 from pathgate.review.schema import DIALECTS, STANDARD_DIALECT
 from pathgate.review.sql_bounds import MOST_NESTING, SqlRefused
 from pathgate.review.sql_expression import read_expression
@@ -229,9 +230,12 @@ def test_most_of_what_loses_nothing_is_recognised_and_what_loses_is_seen_to_lose
     assert lossy > len(LOSSY_STEPS) / 2
 
 
-def read(text: str, dialect: str = STANDARD_DIALECT, **more: Any) -> tuple[set[str], str, list[Fault]]:
+def read(
+    text: str, dialect: str = STANDARD_DIALECT, coarse: frozenset[str] = frozenset(), **more: Any
+) -> tuple[set[str], str, list[Fault]]:
     faults: list[Fault] = []
-    mask, kept = read_sql_expression(text, dialect, READ, faults, ("derived", "band", "sql"), **more)
+    names = NameReader(READ, faults, recodes=dict.fromkeys(coarse, True), **more)
+    mask, kept = read_sql_expression(text, dialect, names, ("derived", "band", "sql"))
     return set(READ.names_of(mask)), kept, faults
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import Any
 
 import pytest
@@ -9,6 +10,7 @@ import pytest
 from pathgate.graphs import read_graph
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.masks import mask_of
+from pathgate.review.names import NameReader
 from pathgate.review.schema import STANDARD_DIALECT
 from pathgate.review.sql_names import Assumed, SqlFilter, read_sql_filter
 
@@ -31,9 +33,16 @@ def mask(*names: str) -> int:
     return mask_of(READ.index[name] for name in names)
 
 
-def read(text: str, dialect: str = STANDARD_DIALECT, **more: Any) -> tuple[SqlFilter, list[Fault]]:
+def read(
+    text: str,
+    dialect: str = STANDARD_DIALECT,
+    missing: Mapping[int, int] | None = None,
+    coarse: frozenset[str] = frozenset(),
+    **more: Any,
+) -> tuple[SqlFilter, list[Fault]]:
     faults: list[Fault] = []
-    return read_sql_filter(text, dialect, READ, faults, PLACE, **more), faults
+    names = NameReader(READ, faults, recodes=dict.fromkeys(coarse, True), **more)
+    return read_sql_filter(text, dialect, names, PLACE, missing), faults
 
 
 def said(text: str, dialect: str = STANDARD_DIALECT) -> list[tuple[str, set[str], bool]]:

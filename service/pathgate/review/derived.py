@@ -161,11 +161,8 @@ class _Deriving:
         from pathgate.review.sql_names import read_sql_expression  # noqa: PLC0415 - as in rows_kept
 
         columns = self._columns
-        coarse = frozenset(each for each, is_coarse in columns.recodes.items() if is_coarse)
-        place: Place = ("derived", name, "sql")
-        inputs, keeps = read_sql_expression(
-            text, self._dialect, columns.graph, self._faults, place, outside=columns.outside, coarse=coarse
-        )
+        names = NameReader(columns.graph, self._faults, recodes=columns.recodes, outside=columns.outside)
+        inputs, keeps = read_sql_expression(text, self._dialect, names, ("derived", name, "sql"))
         if keeps == "computed" and inputs:
             self._columns = columns.grown([(name, inputs)], {})
         elif inputs:

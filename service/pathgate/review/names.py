@@ -55,6 +55,11 @@ class NameReader:
     passed_over: list[tuple[str, Place]] = field(default_factory=list)
     repeated: list[Named] = field(default_factory=list)
 
+    @property
+    def coarse(self) -> frozenset[str]:
+        """The names that stand for less than their column."""
+        return frozenset(name for name, is_coarse in self.recodes.items() if is_coarse)
+
     def read(self, value: str | Sequence[str], place: Place) -> tuple[Named, ...]:
         """The columns that a name or a list of names means; unknown and repeated names are faults."""
         if isinstance(value, str):

@@ -10,7 +10,7 @@ from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import quoted
-from pathgate.review.assumed import Assumed, SqlFilter
+from pathgate.review.assumed import Assumed
 from pathgate.review.names import Named, NameReader
 from pathgate.review.parts import FilterPart, read_parts
 from pathgate.review.schema import STANDARD_DIALECT
@@ -43,19 +43,10 @@ def understand_rows(said: Mapping[str, Any], names: NameReader, modelled: Sequen
     if any(fault.place == ("dialect",) for fault in names.faults):
         return RowsKept((), silent)
     # The SQL parser takes long to load, and many configs have none for it.
-    from pathgate.review.sql_names import read_sql_filter  # noqa: PLC0415
+    from pathgate.review.sql_names import read_sql_filter  # noqa: PLC0415 - slow to import
 
     dialect = said.get("dialect", STANDARD_DIALECT)
-    found: SqlFilter = read_sql_filter(
-        row_filter,
-        dialect,
-        names.graph,
-        names.faults,
-        place,
-        outside=names.outside,
-        coarse=frozenset(name for name, is_coarse in names.recodes.items() if is_coarse),
-        missing=missing,
-    )
+    found = read_sql_filter(row_filter, dialect, names, place, missing)
     names.passed_over.extend((name, place) for each in found.assumed for name in each.names)
     for named in modelled:
         if found.emptied >> named.node & 1:

@@ -124,3 +124,8 @@ def _where(token: Token) -> str:
 def first_column(last: int, word: str) -> int:
     """The library counts to the end of a word, people to its beginning."""
     return max(1, last - len(word) + 1)
+
+
+def dialect_name(dialect: Dialect) -> str:
+    """What the library calls a dialect; ``dialect`` for the standard one."""
+    return type(dialect).__name__.lower()

@@ -18,6 +18,7 @@ from sqlglot.dialects.dialect import Dialect, NormalizationStrategy
 from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.names import hint_within, quoted
+from pathgate.review.sql_bounds import dialect_name
 from pathgate.review.sql_select import Joined
 
 # Where only the names of tables are told apart by the case of their letters, names of columns are not.
@@ -200,8 +201,3 @@ def _about_quotes(column: exp.Column) -> str:
     last = column.this
     is_quoted = isinstance(last, exp.Identifier) and bool(last.args.get("quoted"))
     return "; quotes of this kind hold a name here, and 'single ones' a text" if is_quoted else ""
-
-
-def dialect_name(dialect: Dialect) -> str:
-    """What the library calls a dialect; ``dialect`` for the standard one."""
-    return type(dialect).__name__.lower()

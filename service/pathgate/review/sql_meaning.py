@@ -12,6 +12,8 @@ from operator import eq, ge, gt, le, lt, ne
 from sqlglot import exp
 from sqlglot.dialects.dialect import Dialect
 
+from pathgate.review.sql_bounds import dialect_name
+
 # Here a condition must be a truth value; elsewhere any number but zero counts as true.
 _STRICT_TRUTH = {
     *("dialect", "athena", "bigquery", "databricks", "hive", "materialize", "postgres", "presto", "redshift"),
@@ -27,7 +29,7 @@ _DECIDED = {exp.EQ: eq, exp.NEQ: ne, exp.LT: lt, exp.LTE: le, exp.GT: gt, exp.GT
 
 def is_strict_about_truth(dialect: Dialect) -> bool:
     """Must a condition be a truth value in this dialect?"""
-    return type(dialect).__name__.lower() in _STRICT_TRUTH
+    return dialect_name(dialect) in _STRICT_TRUTH
 
 
 def is_key_of_join(node: exp.Expr) -> bool:

@@ -12,73 +12,57 @@ from functools import cached_property
 
 from pathgate.criteria.selection import Part
 from pathgate.graphs.errors import Fault, Place
-from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import quoted
 from pathgate.review.assumed import Assumed, SqlFilter
+from pathgate.review.names import NameReader
 from pathgate.review.sql_bounds import SqlRefused
 from pathgate.review.sql_columns import ColumnFinder, Reads
 from pathgate.review.sql_expression import Keeps, read_expression
 from pathgate.review.sql_filter import Condition, Conditions, sql_conditions
 
 
-def read_sql_filter(  # noqa: PLR0913 - what may be said of names beside the graph, each by its keyword
-    text: str,
-    dialect: str,
-    graph: CausalGraph,
-    faults: list[Fault],
-    place: Place,
-    *,
-    outside: frozenset[str] = frozenset(),
-    coarse: frozenset[str] = frozenset(),
-    missing: Mapping[int, int] | None = None,
+def read_sql_filter(
+    text: str, dialect: str, names: NameReader, place: Place, missing: Mapping[int, int] | None = None
 ) -> SqlFilter:
-    """The parts of a row filter in SQL; what is wrong with it is added to ``faults``.
+    """The parts of a row filter in SQL; what is wrong with it is added to the faults of ``names``.
 
     Args:
         text: the condition, or the SELECT that it stands in.
         dialect: in whose SQL it is written.
-        graph: where its columns are.
-        faults: what is wrong is added here.
+        names: what its names can mean; a condition on one that stands for less than its node fixes nothing.
         place: where it stands.
-        outside: names that may be in no graph.
-        coarse: other names of nodes that stand for less than the node: a condition on one fixes nothing.
         missing: the nodes whose causes of being null are known; nothing is assumed about those.
     """
     try:
         found = sql_conditions(text, dialect)
     except SqlRefused as refused:
-        faults.append(Fault(refused.slug, place, refused.detail))
+        names.faults.append(Fault(refused.slug, place, refused.detail))
         return SqlFilter()
-    finder = ColumnFinder(graph, found.dialect, faults, place, found.joined, outside, coarse)
+    finder = ColumnFinder(
+        names.graph, found.dialect, names.faults, place, found.joined, names.outside, names.coarse
+    )
     reading = _Reading(found, finder, mask_of(missing or ()))
     for condition in found.parts:
         reading.take(condition)
     return reading.filter()
 
 
-def read_sql_expression(  # noqa: PLR0913 - as above
-    text: str,
-    dialect: str,
-    graph: CausalGraph,
-    faults: list[Fault],
-    place: Place,
-    *,
-    outside: frozenset[str] = frozenset(),
-    coarse: frozenset[str] = frozenset(),
-) -> tuple[int, Keeps]:
+def read_sql_expression(text: str, dialect: str, names: NameReader, place: Place) -> tuple[int, Keeps]:
     """The columns that an expression in SQL is computed from, and how much of them it keeps.
 
-    What is wrong with it is added to ``faults``. The mask is empty without a fault where the expression reads
-    nothing but names that are declared as outside the graph. Where ``coarse`` holds the name that it reads, it
-    keeps no more of the column than that does.
+    What is wrong with it is added to the faults of ``names``. The mask is empty without a fault where the
+    expression reads nothing but names that are declared as outside the graph. It keeps no more of a column than
+    the name does that it reads.
     """
     try:
         found = read_expression(text, dialect)
     except SqlRefused as refused:
-        faults.append(Fault(refused.slug, place, refused.detail))
+        names.faults.append(Fault(refused.slug, place, refused.detail))
         return 0, "computed"
-    finder = ColumnFinder(graph, found.dialect, faults, place, outside=outside, coarse=coarse)
+    finder = ColumnFinder(
+        names.graph, found.dialect, names.faults, place, outside=names.outside, coarse=names.coarse
+    )
     reads = finder.read(found.columns, found.words)
     if reads.columns.bit_count() + len(reads.outside) > 1:
         return reads.columns, "computed"

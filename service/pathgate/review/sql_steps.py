@@ -14,6 +14,7 @@ from enum import IntEnum
 from sqlglot import exp
 from sqlglot.dialects.dialect import Dialect
 
+from pathgate.review.sql_bounds import dialect_name
 from pathgate.review.sql_meaning import is_strict_about_truth, number_of
 
 # Beyond these, constants drown the digits of what they meet.
@@ -69,7 +70,7 @@ def keeps_all(tree: exp.Expr, dialect: Dialect) -> bool:
             return False
         steps.append(step)
         node = step.inner
-    name = type(dialect).__name__.lower()
+    name = dialect_name(dialect)
     digits = _Digits.UNKNOWN
     for step in reversed(steps):
         if not _is_one_to_one(step, digits, dialect, name):
