@@ -39,7 +39,7 @@ def from_networkx(graph: networkx.Graph[Any]) -> CausalGraph:
     Raises:
         InvalidGraph: it holds a cycle, an unknown member, a node that is not a string, or no directions.
     """
-    import networkx  # noqa: PLC0415
+    import networkx  # noqa: PLC0415 - as above
 
     return read_graph(networkx.node_link_data(graph, edges="edges"))
 

@@ -1,4 +1,8 @@
-"""Reads a model config against a graph: which columns its names mean, and what makes it no config at all."""
+"""Reads a model config against a graph: which columns its names mean, and what makes it no config at all.
+
+The graph grows by the columns that the config computes, in ``derived`` and in its formula, before any other name is
+looked up. Faults of shape and of meaning come in one go. Linear in the config.
+"""
 
 from __future__ import annotations
 
@@ -117,7 +121,15 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     said = {member: held for member, held in value.items() if member not in faulty}
     columns = understand_columns(said, graph, faults)
     formula = understand_formula(said, columns, faults) if "formula" in said else None
-    columns = formula.columns if formula else columns
+    config = _named(said, formula.columns if formula else columns, formula, faults)
+    _refuse_meaningless(value, said, faults)
+    return None if faults else replace(config, written=value)
+
+
+def _named(
+    said: Mapping[str, Any], columns: Columns, formula: ModelFormula | None, faults: list[Fault]
+) -> Config:
+    """The members of a config, their names looked up; of no use where that adds to the faults."""
     names = NameReader(columns.graph, faults, recodes=columns.recodes, outside=columns.outside)
     names.passed_over.extend(formula.passed_over if formula else ())
     ends = _Ends(columns, said, NameReader(columns.graph, faults, recodes=columns.recodes), formula)
@@ -130,9 +142,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
     rows = understand_rows(said, names, modelled)
     known = _known(said, names)
     waivers = understand_waivers(said, names)
-    _refuse_meaningless(value, said, faults)
-    if faults:
-        return None
+    plain = _plain_terms(ends.treated, adjusted["covariates"], names.passed_over)
     return Config(
         name=said.get("name", ""),
         columns=columns,
@@ -143,9 +153,7 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         weighted_by=adjusted["weighted_by"],
         matched_on=adjusted["matched_on"],
         treated=ends.treated,
-        terms=formula.terms
-        if formula
-        else _plain_terms(ends.treated, adjusted["covariates"], names.passed_over),
+        terms=formula.terms if formula else plain,
         rows=rows,
         row_filter_fixed=said.get("row_filter_fixed", False),
         asks=said.get("asks", "total"),
@@ -155,7 +163,6 @@ def understand_config(value: object, graph: CausalGraph, faults: list[Fault]) ->
         repeated=repeated,
         passed_over=tuple(names.passed_over),
         accepted=waivers,
-        written=value,
     )
 
 

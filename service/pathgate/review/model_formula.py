@@ -51,7 +51,7 @@ class ModelFormula:
 def understand_formula(said: Mapping[str, Any], columns: Columns, faults: list[Fault]) -> ModelFormula | None:
     """What the ``formula`` of a config says; what is wrong with it is added to ``faults``."""
     # The parser of formulas takes long to load, and most configs have none.
-    from pathgate.review.formula import FormulaRefused, read_formula  # noqa: PLC0415
+    from pathgate.review.formula import FormulaRefused, read_formula  # noqa: PLC0415 - slow to import
 
     try:
         formula = read_formula(said["formula"])

@@ -6,10 +6,10 @@ import os
 from collections.abc import Sequence
 
 # What many requests need in the end is loaded at once: the first of them should not wait for it.
-import scipy.sparse.csgraph  # noqa: F401
+import scipy.sparse.csgraph  # noqa: F401 - loaded early
 from flask import Flask, Response
 
-import pathgate.review.sql_names  # noqa: F401
+import pathgate.review.sql_names  # noqa: F401 - loaded early
 from pathgate.web.answering import view_of
 from pathgate.web.endpoints import OPERATIONS
 from pathgate.web.memory import give_back_after
