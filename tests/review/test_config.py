@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+import time
 from typing import Any
 
 import pytest
@@ -299,3 +300,23 @@ def outcome_of(value: dict[str, Any]) -> bool:
     except InvalidConfig as problem:
         return all(fault.detail and fault.place[:1] <= ("x",) for fault in problem.faults)
     return not (config.treatments and config.outcomes)
+
+
+def test_reading_computed_columns_takes_time_in_proportion_to_what_is_declared():
+    # Copying the arrows with each new column made it quadratic: a ratio of 16.
+    names = [f"bay{k}" for k in range(300)]
+    graph = read_graph({"nodes": [*names, "late", "refund"], "edges": []})
+    config = {"treatment": "late", "outcome": "refund", "covariates": []}
+
+    def seconds(derived: dict) -> float:
+        start = time.process_time()
+        read = read_config({**config, "derived": derived}, graph)
+        taken = time.process_time() - start
+        assert read.columns.graph.size == graph.size + len(derived)
+        return taken
+
+    few, many = (
+        min(seconds({f"score{k}": {"from": names} for k in range(count)}) for _ in range(3))
+        for count in (100, 400)
+    )
+    assert many < 10 * few, (few, many)

@@ -242,6 +242,11 @@ class CausalGraph:
         """All nodes, parents before children."""
         return tuple(graphlib.TopologicalSorter(dict(enumerate(self.parent_lists))).static_order())
 
+    def without_edges(self) -> CausalGraph:
+        """The same nodes, and nothing that joins them."""
+        none = self.sources[:0]
+        return replace(self, sources=none, targets=none, lower_ends=none, upper_ends=none)
+
     def without_arrows(self, sources: int, targets: int) -> CausalGraph:
         """The same graph less every arrow from a node of one set into a node of the other."""
         dropped = unpack(sources, self.size)[self.sources] & unpack(targets, self.size)[self.targets]

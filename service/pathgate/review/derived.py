@@ -85,14 +85,20 @@ class _Deriving:
     def __init__(self, said: Mapping[str, Any], columns: Columns, faults: list[Fault]) -> None:
         self._derived: Mapping[str, Mapping[str, Any]] = said["derived"]
         self._dialect = said.get("dialect", STANDARD_DIALECT)
-        self._columns = columns
+        self._before = columns
+        # To be read, names need no edges, which would be copied with each column that comes.
+        self._columns = replace(columns, graph=columns.graph.without_edges())
         self._faults = faults
 
     def columns(self) -> Columns:
         known = {name: said for name, said in self._derived.items() if self._may_bear(name)}
         for name in self._in_order(known):
             self._add(name, known[name])
-        columns = self._columns
+        read = self._columns
+        columns = self._before.grown(
+            [(read.graph.names[node], made_of) for node, made_of in read.inputs.items()],
+            {name: (read.graph.aliases[name], is_coarse) for name, is_coarse in read.recodes.items()},
+        )
         # What a faulty declaration was to be called is no further fault where it is used.
         faulty = [
             each for each in self._derived if each not in columns.graph.index and each not in columns.recodes
@@ -155,7 +161,13 @@ class _Deriving:
         else:
             inputs = mask_of(named.node for named in names.read(said["from"], (*place, "from")))
             if inputs:
-                self._columns = self._columns.grown([(name, inputs)], {})
+                self._grow(name, inputs)
+
+    def _grow(self, name: str, inputs: int) -> None:
+        """One computed column more, without its arrows as yet."""
+        columns = self._columns
+        grown = columns.grown([(name, 0)], {})
+        self._columns = replace(grown, inputs={**columns.inputs, columns.graph.size: inputs})
 
     def _add_expression(self, name: str, text: str) -> None:
         from pathgate.review.sql_names import read_sql_expression  # noqa: PLC0415 - as in rows_kept
@@ -164,6 +176,6 @@ class _Deriving:
         names = NameReader(columns.graph, self._faults, recodes=columns.recodes, outside=columns.outside)
         inputs, keeps = read_sql_expression(text, self._dialect, names, ("derived", name, "sql"))
         if keeps == "computed" and inputs:
-            self._columns = columns.grown([(name, inputs)], {})
+            self._grow(name, inputs)
         elif inputs:
             self._columns = columns.grown([], {name: (inputs.bit_length() - 1, keeps == "coarse")})
