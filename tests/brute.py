@@ -55,7 +55,6 @@ __all__ = [
     "separated",
     "separating_sets",
     "shortest_open_length",
-    "smallest_separators",
     "subsets",
     "valid_sets",
     "with_selection",
@@ -106,12 +105,6 @@ def separating_sets(graph: Graph, xs: Names, ys: Names, conditioned: Names = ())
 def minimal_separators(graph: Graph, xs: Names, ys: Names, conditioned: Names = ()) -> list[frozenset[str]]:
     """The separating sets that hold no smaller separating set."""
     return inclusion_minimal(separating_sets(graph, xs, ys, conditioned))
-
-
-def smallest_separators(graph: Graph, xs: Names, ys: Names, conditioned: Names = ()) -> list[frozenset[str]]:
-    """The separating sets of the least size; empty where nothing measured separates."""
-    found = separating_sets(graph, xs, ys, conditioned)
-    return [chosen for chosen in found if len(chosen) == len(found[0])]
 
 
 def inclusion_minimal(sets: Sequence[frozenset[str]]) -> list[frozenset[str]]:

@@ -206,3 +206,12 @@ def test_many_statements_are_cut_off_by_the_deadline_between_two_turns():
     with pytest.raises(OutOfTime):
         separated_each(graph, statements, Deadline(1, clock=clock))
     assert len(read) == 21
+
+
+def test_few_statements_are_cut_off_by_the_deadline_between_two_of_them():
+    graph = zigzag(3, random.Random(1))
+    statements = [(graph.mask("r0"), graph.mask("r3"), 0)] * 2
+    assert separated_each(graph, statements, Deadline.never()) == [True, True]
+    moments = iter([0.0])
+    with pytest.raises(OutOfTime):
+        separated_each(graph, statements, Deadline(1, clock=lambda: next(moments, 2.0)))

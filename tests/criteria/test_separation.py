@@ -12,6 +12,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from pathgate.criteria import Deadline, OutOfTime, is_separated, separation
+from pathgate.criteria.reachability import Conditions, connected
 from pathgate.graphs import CausalGraph, read_graph
 from tests.brute import Path, separated, shortest_open_length, subsets
 from tests.criteria.asking import assert_is_open_path, is_directed_path, roles_of
@@ -93,6 +94,21 @@ def test_networkx_agrees_on_larger_dags_and_on_explicit_common_causes():
         assert is_separated(read_graph(value), asked.x, asked.y, asked.given) is expected, seed
         seen[expected] += 1
     assert min(seen.values()) > 30
+
+
+def test_one_search_sorts_all_nodes_as_asking_about_each_would():
+    seen: Counter[bool] = Counter()
+    for seed in range(300):
+        rng = random.Random(seed)
+        value = random_graph(rng, rng.randint(2, 7), arrow=rng.choice([0.25, 0.4]), bidirected=0.12)
+        asked = random_question(rng, value)
+        graph = read_graph(value)
+        found = connected(graph, graph.mask(asked.x), Conditions.on(graph, graph.mask(asked.given)))
+        for name in set(graph.names) - set(asked.x + asked.given):
+            is_joined = not separated(value, asked.x, name, asked.given)
+            assert bool(found >> graph.index[name] & 1) is is_joined, (seed, name)
+            seen[is_joined] += 1
+    assert min(seen.values()) > 100
 
 
 @st.composite
