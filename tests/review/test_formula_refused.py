@@ -9,7 +9,7 @@ from hypothesis import example, given
 from hypothesis import strategies as st
 
 from pathgate.review.formula import FormulaRefused, read_formula
-from pathgate.review.formula_bounds import MOST_CHARACTERS
+from pathgate.review.schema import MOST_FORMULA_CHARACTERS
 from tests.review.test_formula import only_factor, written_terms
 
 
@@ -114,7 +114,7 @@ def test_what_is_not_read_is_refused_in_a_sentence(text: str, why: str) -> None:
 @pytest.mark.parametrize(
     ("text", "why"),
     [
-        ("y ~ " + "x" * MOST_CHARACTERS, "too long"),
+        ("y ~ " + "x" * MOST_FORMULA_CHARACTERS, "too long"),
         ("y ~ " + "+".join(f"a{k}" for k in range(1_000)), "too much"),
         ("y ~ (a+b+c+d+e+f+g+h+i+j+k)**6", "too much"),
         ("y ~ " + "*".join(f"a{k}" for k in range(11)), "too much"),

@@ -17,10 +17,9 @@ from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of, members
 from pathgate.graphs.names import quoted
+from pathgate.graphs.node_list import MAX_NAME
 from pathgate.review.names import NameReader
 from pathgate.review.schema import STANDARD_DIALECT
-
-MOST_NAME_CHARACTERS = 200
 
 
 @dataclass(frozen=True)
@@ -108,8 +107,8 @@ class _Deriving:
     def _may_bear(self, name: str) -> bool:
         graph = self._columns.graph
         detail = ""
-        if not name or len(name) > MOST_NAME_CHARACTERS:
-            detail = f"the name of a column has 1 to {MOST_NAME_CHARACTERS} characters"
+        if not name or len(name) > MAX_NAME:
+            detail = f"the name of a column has 1 to {MAX_NAME} characters"
         elif name in graph.index or name in graph.aliases:
             detail = (
                 f"{quoted(name)} is a column of the graph already: give what is derived a name of its own"

@@ -16,8 +16,7 @@ from formulaic.parser.algos.tokenize import tokenize
 from formulaic.parser.types import Token
 
 from pathgate.graphs.names import quoted
-
-MOST_CHARACTERS = 10_000
+from pathgate.review.schema import MOST_FORMULA_CHARACTERS
 
 Kind = Literal["name", "python", "value", "operator", "context"]
 
@@ -61,9 +60,9 @@ def pieces_of(text: str) -> tuple[Piece, ...]:
     >>> [(piece.kind, piece.text) for piece in pieces_of("refund ~ log(weight) + `late van`")][2:]
     [('python', 'log(weight)'), ('operator', '+'), ('name', 'late van')]
     """
-    if len(text) > MOST_CHARACTERS:
+    if len(text) > MOST_FORMULA_CHARACTERS:
         raise FormulaRefused(
-            f"the formula is too long: {len(text):,} characters, at most {MOST_CHARACTERS:,}"
+            f"the formula is too long: {len(text):,} characters, at most {MOST_FORMULA_CHARACTERS:,}"
         )
     try:
         tokens = list(tokenize(text))

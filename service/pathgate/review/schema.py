@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from typing import Any
 
+from pathgate.graphs.node_list import MAX_NAME
+
 Schema = dict[str, Any]
 
 STANDARD_DIALECT = "standard"
@@ -29,21 +31,25 @@ DIALECTS = (
 
 MOST_SQL_CHARACTERS = 20_000
 
-NAME: Schema = {"type": "string", "minLength": 1, "maxLength": 200, "title": "a column name"}
+MOST_FORMULA_CHARACTERS = 10_000
+
+BARE_NAME: Schema = {"type": "string", "minLength": 1, "maxLength": MAX_NAME}
+
+NAME: Schema = {**BARE_NAME, "title": "a column name"}
 
 NAMES: Schema = {
     "title": "a column name or a list of column names",
     "anyOf": [
-        {"type": "string", "minLength": 1, "maxLength": 200},
-        {"type": "array", "items": {"type": "string", "minLength": 1, "maxLength": 200}},
+        BARE_NAME,
+        {"type": "array", "items": BARE_NAME},
     ],
 }
 
 SOME_NAMES: Schema = {
     "title": "a column name or a list of at least one column name",
     "anyOf": [
-        {"type": "string", "minLength": 1, "maxLength": 200},
-        {"type": "array", "minItems": 1, "items": {"type": "string", "minLength": 1, "maxLength": 200}},
+        BARE_NAME,
+        {"type": "array", "minItems": 1, "items": BARE_NAME},
     ],
 }
 
@@ -68,7 +74,7 @@ PARTS: Schema = {
     "title": "a list of column names (together one condition that reads them all) and conditions",
     "items": {
         "title": "a column name or a condition {columns, fixed}",
-        "anyOf": [{"type": "string", "minLength": 1, "maxLength": 200}, PART],
+        "anyOf": [BARE_NAME, PART],
     },
 }
 
@@ -191,7 +197,7 @@ CONFIG_SCHEMA: Schema = {
             "description": "the model in Wilkinson notation, outcome ~ terms; outcome and covariates may then be left"
             " out, and must agree with it where they are given",
             "minLength": 1,
-            "maxLength": 10_000,
+            "maxLength": MOST_FORMULA_CHARACTERS,
         },
         "fixed_effects": {
             **NAMES,

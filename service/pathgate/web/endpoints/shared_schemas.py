@@ -4,8 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from pathgate.graphs.node_list import MAX_NAME
-from pathgate.review.schema import NAMES, PART
+from pathgate.review.schema import BARE_NAME, NAMES, PART
 from pathgate.web.operations import GRAPH_REFERENCE
 from pathgate.web.paging import DEFAULT_LIMIT
 
@@ -60,18 +59,16 @@ PATH: Schema = {
 
 PATH_COMPONENTS: dict[str, Schema] = {"Label": LABEL, "Path": PATH}
 
-_NAME: Schema = {"type": "string", "minLength": 1, "maxLength": MAX_NAME}
-
 SELECTED_ON: Schema = {
     "title": "a node's name, or a list of names (together one condition) and conditions {columns, fixed}",
     "description": "what decides which rows are kept",
     "anyOf": [
-        _NAME,
+        BARE_NAME,
         {
             "type": "array",
             "items": {
                 "title": "a name or a condition {columns, fixed}",
-                "anyOf": [_NAME, PART],
+                "anyOf": [BARE_NAME, PART],
             },
         },
     ],
