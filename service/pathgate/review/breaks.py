@@ -103,7 +103,12 @@ class _Blame:
         for cause in self._causes(found.node, found.descent, found.descent.nodes):
             which = listed(cause.about)
             if cause.distance == 0:
-                message = f"{which} lies on the causal path {drawn}: {cause.doing} {cause.harm}."
+                lies = (
+                    "is the outcome, at the end of"
+                    if self._claim.outcomes >> found.descends_from & 1
+                    else "lies on"
+                )
+                message = f"{which} {lies} the causal path {drawn}: {cause.doing} {cause.harm}."
             else:
                 message = (
                     f"{which} is a consequence of {above} on the causal path {drawn}: {cause.doing}"

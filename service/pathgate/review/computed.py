@@ -60,7 +60,7 @@ def _redundant(claim: Claim, config: Config) -> Iterator[Finding]:
 def _told_redundant(claim: Claim, named: Named, made_of: tuple[str, ...]) -> Finding:
     message = (
         f"{listed([named.written])} is determined by {listed(made_of)}, which the model adjusts for already: it adds"
-        " nothing but a singular or nearly singular fit. Take it out."
+        f" nothing but a singular or nearly singular fit. Take {listed([named.written])} out."
     )
     return Finding("redundant-covariate", (claim.graph.name(named.node),), message, named.place)
 

@@ -44,7 +44,8 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
             message = (
                 f"{listed([graph.name(named.node)])} is computed from {listed(made_of)}: with what else the model"
                 f" adjusts for, only {listed(graph.names_of(claim.treatments), 'or')} can make it differ, so within"
-                " one value of it the treatment has no variation of its own. Take it out."
+                " one value of it the treatment has no variation of its own. Stop adjusting for"
+                f" {listed([graph.name(named.node)])}."
             )
             yield Finding("no-variation-left", (graph.name(named.node),), message, named.place)
     for filter_part in config.rows.filter_parts:
@@ -66,8 +67,11 @@ def _both(config: Config, named: Named, name: str, role: str) -> str:
     is_input = named.node not in {each.node for each in config.treated}
     if role == "treatment" and treated and is_input:
         made = listed(sorted(treated))
-        return f"The treatment {made} is computed from {listed([name])}, which the model also adjusts for. Take it out."
-    return f"The {role} {listed([name])} is also adjusted for: within one value of it nothing varies. Take it out."
+        shown = listed([name])
+        also = f"The treatment {made} is computed from {shown}, which the model also adjusts for."
+        return f"{also} Stop adjusting for {shown}."
+    also = f"The {role} {listed([name])} is also adjusted for: within one value of it nothing varies."
+    return f"{also} Stop adjusting for it."
 
 
 def _covariate(claim: Claim, config: Config, named: Named) -> Iterator[Finding]:
