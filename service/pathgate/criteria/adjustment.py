@@ -48,7 +48,13 @@ class Effect:
         What leads to one of those does so without the arrows that the back-door graph lacks: they lead to what is
         forbidden. So the graph itself is asked, which many effects share.
         """
-        return Conditions(conditioned, ancestors(self.kept.graph, conditioned))
+        opening = ancestors(self.kept.graph, conditioned)
+        return Conditions(conditioned, opening, opening | self.above_ends)
+
+    @cached_property
+    def above_ends(self) -> int:
+        """The ancestors of treatments and outcomes, these included."""
+        return ancestors(self.kept.graph, self.treatments | self.outcomes)
 
     @cached_property
     def some_valid_set(self) -> int | None:
@@ -102,7 +108,7 @@ def is_valid(effect: Effect, covariates: int) -> bool:
     if conditioned & effect.forbidden or conditioned & (effect.treatments | effect.outcomes):
         return False
     # What leads to a set with the treatments in it does so without an arrow out of a treatment as well.
-    relevant = ancestors(effect.kept.graph, effect.treatments | effect.outcomes | conditioned)
+    relevant = effect.above_ends | ancestors(effect.kept.graph, conditioned)
     return are_apart(effect.back_door_graph, effect.treatments, effect.outcomes, conditioned, relevant)
 
 

@@ -93,7 +93,7 @@ def open_paths(effect: Effect, covariates: int, deadline: Deadline) -> Iterator[
         deadline.poll()
         # Edges taken out on the way only make ancestors fewer, and none of what opens a collider is forbidden.
         above = ancestors(effect.kept.graph if graph is effect.back_door_graph else graph, openers)
-        conditions = Conditions(blocking, above)
+        conditions = Conditions(blocking, above, above | effect.above_ends)
         trail = find_open_path(graph, effect.treatments, effect.outcomes, conditions, fewest_colliders=True)
         if trail is None:
             return

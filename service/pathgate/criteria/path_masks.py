@@ -83,6 +83,7 @@ class _Ways:
         passes: nodes that may be left along an arrow where they were entered by an arrowhead.
         opens: nodes that may be left against an arrowhead where they were entered by one.
         turns: those of them for which this costs no more than any other step.
+        relevant: nodes outside which nothing is worth entering.
     """
 
     parents: list[int]
@@ -92,6 +93,7 @@ class _Ways:
     passes: int
     opens: int
     turns: int
+    relevant: int
 
     @classmethod
     def of(cls, graph: CausalGraph, starts: int, conditions: Conditions, *, are_turns_dear: bool) -> _Ways:
@@ -99,19 +101,20 @@ class _Ways:
         passes, opens = ~conditions.blocking, conditions.opening
         turns = 0 if are_turns_dear else opens
         masks = graph.parent_masks, graph.child_masks, graph.spouse_masks
-        return cls(*masks, passes | starts, passes, opens, turns)
+        return cls(*masks, passes | starts, passes, opens, turns, conditions.relevant)
 
     def after(self, by_tail: int, by_head: int) -> _Level:
         """What one step leads to that is no dear turn."""
         leaving = by_tail & self.leaves
         turning = leaving | by_head & self.turns
         below = _union(self.children, leaving | by_head & self.passes)
-        return _union(self.parents, turning), below | _union(self.spouses, turning)
+        by_head = below | _union(self.spouses, turning)
+        return _union(self.parents, turning), by_head & self.relevant
 
     def after_turning(self, by_head: int) -> _Level:
         """What one step against an arrowhead leads to, from nodes entered by one."""
         turning = by_head & self.opens
-        return _union(self.parents, turning), _union(self.spouses, turning)
+        return _union(self.parents, turning), _union(self.spouses, turning) & self.relevant
 
     def back(
         self, levels: dict[tuple[int, int], _Level], at: tuple[int, int], node: int, *, by_head: bool

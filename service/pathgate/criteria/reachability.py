@@ -28,10 +28,12 @@ class Conditions:
     Attributes:
         blocking: nodes that stop a path at a chain or a fork.
         opening: nodes at which a collider is open: those that open it and all their ancestors.
+        relevant: nodes outside which no open path between the ends in question leads; a search for one may use it.
     """
 
     blocking: int = 0
     opening: int = 0
+    relevant: int = -1
 
     @classmethod
     def on(cls, graph: CausalGraph, conditioned: int) -> Conditions:
