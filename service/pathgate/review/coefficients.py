@@ -72,11 +72,11 @@ class _Reading:
         if term.node is None:
             return "neither", self._product(term)
         if term.crossed:
-            others = listed(self._graph.names_of(term.crossed))
-            return (
-                "neither",
-                f"the effect where {others} is zero or at its first level: the terms let it differ",
+            others = self._graph.names_of(term.crossed)
+            where = (
+                "is zero or at its first level" if len(others) == 1 else "are zero or at their first levels"
             )
+            return "neither", f"the effect where {listed(others)} {where}: the terms let it differ"
         if term.is_bent:
             return "neither", "several terms together describe this column: none of them is its effect alone"
         return self._column(term.node)
