@@ -16,6 +16,7 @@ from dataclasses import dataclass, field
 from functools import cached_property
 
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.determined import determined_by, made_of
 from pathgate.criteria.independencies import Independency, basis
 from pathgate.criteria.reachability import Conditions, connected
 from pathgate.criteria.selection import Kept, keep_rows
@@ -84,11 +85,7 @@ class Exposing:
 
     def _settled(self, given: int) -> int:
         """What has one value once these columns are given on the rows kept."""
-        settled = given | self._pairs.kept.conditioned
-        for node, made_of in self.inputs.items():
-            if not made_of & ~settled:
-                settled |= 1 << node
-        return settled
+        return determined_by(given | self._pairs.kept.conditioned, self.inputs)
 
     def _unsettled(self, first: int, second: int) -> Independency | None:
         """A statement about two separable columns, one of them computed, under which both still vary."""
@@ -105,14 +102,10 @@ class Exposing:
 
     def _left_out(self, computed: int) -> Iterator[int]:
         """For each column that some computed ones come from: it and whatever is computed from it."""
-        sources = computed
-        for node, made_of in reversed(list(self.inputs.items())):
-            if sources >> node & 1:
-                sources |= made_of
-        for source in members(sources & ~mask_of(self.inputs)):
+        for source in members(made_of(computed, self.inputs) & ~mask_of(self.inputs)):
             left_out = 1 << source
-            for node, made_of in self.inputs.items():
-                if made_of & left_out:
+            for node, needed in self.inputs.items():
+                if needed & left_out:
                     left_out |= 1 << node
             yield left_out
 

@@ -6,17 +6,17 @@ The verdict, the remedies and "can anything carry it" all ask this module, so th
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from itertools import combinations
 
 from pathgate.criteria.adjustment import Effect, direct_effect, total_effect
+from pathgate.criteria.determined import determined_by, made_of
 from pathgate.criteria.populations import AmongKept, InEverybody, Population
 from pathgate.criteria.selection import Part, keep_rows
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.config import Asks, Claimed, Config
-from pathgate.review.determined import determined_by, made_of
 
 # Effects on different choices of rows that one review may hold at a time.
 MOST_EFFECTS = 64
@@ -98,6 +98,11 @@ class Claim:
             known=config.known,
             may_read_unmeasured=config.may_read_unmeasured,
         )
+
+    def on(self, graph: CausalGraph) -> Claim:
+        """The same claim on another graph of the same nodes."""
+        # Effects are remembered for one graph.
+        return replace(self, graph=graph, _effects={})
 
     @property
     def ends(self) -> int:

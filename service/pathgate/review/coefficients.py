@@ -13,11 +13,11 @@ from typing import Literal
 
 from pathgate.criteria.adjustment import Effect, direct_effect, is_valid, total_effect
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.determined import determined_by
 from pathgate.criteria.paths import find_open_path
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
-from pathgate.review.determined import determined_by
 from pathgate.review.terms import ModelTerm
 from pathgate.review.wording import arrow_text, listed, names_in
 

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from pathgate.criteria.determined import determined_by_others
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
-from pathgate.review.determined import determined_by_others
 from pathgate.review.findings import Finding
 from pathgate.review.names import Named
 from pathgate.review.wording import listed

@@ -9,7 +9,7 @@ one from the unsound whole until nothing more can go, once for each edge that mi
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import Literal
 
 from pathgate.criteria.deadline import Deadline
@@ -111,5 +111,4 @@ def _is_sound_with(claim: Claim, edges: Sequence[Edge], chosen: int) -> bool:
 
 def is_sound_on(claim: Claim, graph: CausalGraph) -> bool:
     """Would the claim be sound on another graph of the same nodes?"""
-    # Effects are remembered for one graph.
-    return replace(claim, graph=graph, _effects={}).is_carried_by(claim.own_choice)
+    return claim.on(graph).is_carried_by(claim.own_choice)

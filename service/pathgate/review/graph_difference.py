@@ -77,7 +77,7 @@ class Difference:
     @cached_property
     def changed_nodes(self) -> tuple[NodeChange, ...]:
         """The nodes of both graphs of which something else is said, in the new graph's order."""
-        before, after = _facts(self.old), _facts(self.new)
+        before, after = self._facts_of
         found = []
         for name in self.new.names:
             if name in before:

@@ -18,7 +18,7 @@ from pathgate.criteria.exposing import Exposing
 from pathgate.criteria.hinges import Hinges
 from pathgate.criteria.independencies import Independency
 from pathgate.criteria.whole_hinges import WholeHinges
-from pathgate.graphs.graph import CausalGraph, Edge
+from pathgate.graphs.graph import Edge
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Claim
 from pathgate.review.visible import visible
@@ -61,12 +61,12 @@ class HingesOn:
 def hinges_of(claim: Claim, deadline: Deadline, *, is_sound: bool) -> HingesOn:
     """What the verdict on a claim hinges on; nothing where it is not sound.
 
+    >>> from pathgate.graphs.graph import CausalGraph
     >>> graph = CausalGraph.of(("rain", "delay"), ("delay", "refund"))
     >>> claim = Claim(graph, treatments=graph.mask("delay"), outcomes=graph.mask("refund"), covariates=0, parts=())
     >>> found = hinges_of(claim, Deadline.never(), is_sound=True)
-    >>> [question_of(graph, absent.edge) for absent in found.absent_edges]
-    ['Nothing unmeasured drives both rain and refund', 'Nothing unmeasured drives both delay and refund', \
-'rain does not influence refund']
+    >>> [(each.edge[0], graph.name(each.edge[1]), graph.name(each.edge[2])) for each in found.absent_edges]
+    [('bidirected', 'rain', 'refund'), ('bidirected', 'delay', 'refund'), ('directed', 'rain', 'refund')]
     """
     if not is_sound:
         return HingesOn()
@@ -76,14 +76,12 @@ def hinges_of(claim: Claim, deadline: Deadline, *, is_sound: bool) -> HingesOn:
     return HingesOn(tuple(search.absent_edges()), tuple(search.turned_arrows()), search.is_complete)
 
 
-def question_of(graph: CausalGraph, edge: Edge, *, is_turned: bool = False) -> str:
-    """The sentence that must be true of an edge for the verdict to stand."""
-    kind, first, second = edge
-    return question(kind, plain_name(graph.name(first)), plain_name(graph.name(second)), is_turned=is_turned)
-
-
 def question(kind: str, first: str, second: str, *, is_turned: bool = False) -> str:
-    """The same about names that are ready to be shown."""
+    """The sentence that must be true of an edge for the verdict to stand; the names are ready to be shown.
+
+    >>> question("directed", "rain", "refund"), question("directed", "rain", "delay", is_turned=True)
+    ('rain does not influence refund', 'rain drives delay and not the other way round')
+    """
     if is_turned:
         return f"{first} drives {second} and not the other way round"
     if kind == "bidirected":

@@ -48,6 +48,4 @@ def measure_next_for(claim: Claim, deadline: Deadline) -> MeasureNext | None:
 
 def _with_measured(claim: Claim, nodes: int) -> Claim:
     """The claim as it would be on a graph in which these nodes are measured."""
-    graph = replace(claim.graph, measured=claim.graph.measured | nodes)
-    # Effects are remembered for one graph.
-    return replace(claim, graph=graph, _effects={})
+    return claim.on(replace(claim.graph, measured=claim.graph.measured | nodes))

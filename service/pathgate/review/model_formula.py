@@ -11,10 +11,10 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
 
+from pathgate.criteria.determined import made_of
 from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.derived import Columns
-from pathgate.review.determined import made_of
 from pathgate.review.names import Named, NameReader
 from pathgate.review.terms import ModelTerm
 from pathgate.review.wording import listed

@@ -13,12 +13,12 @@ from dataclasses import dataclass, replace
 
 from pathgate.criteria.adjustment import Effect
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.determined import made_of
 from pathgate.criteria.paths import Trail, find_open_path
 from pathgate.criteria.selection import Part
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.graphs.masks import members
 from pathgate.review.claims import Choice, Claim
-from pathgate.review.determined import made_of
 
 
 @dataclass(frozen=True, slots=True)

@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from pathgate.criteria.deadline import Deadline
+from pathgate.criteria.determined import determined_by
 from pathgate.graphs.kinship import ancestors, descendants
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
-from pathgate.review.determined import determined_by
 from pathgate.review.findings import Finding
 from pathgate.review.wording import capital, listed, part_text, silent_text
 

@@ -45,7 +45,7 @@ def made_of(columns: int, inputs: Mapping[int, int]) -> int:
     >>> bin(made_of(0b1000, {2: 0b011, 3: 0b100}))
     '0b1111'
     """
-    for node in sorted(inputs, reverse=True):
+    for node, needed in reversed(list(inputs.items())):
         if columns >> node & 1:
-            columns |= inputs[node]
+            columns |= needed
     return columns
