@@ -12,7 +12,8 @@ from formulaic.parser import DefaultFormulaParser
 from hypothesis import example, given
 from hypothesis import strategies as st
 
-from pathgate.review.formula import Factor, Formula, Keeps, read_formula
+from pathgate.review.formula import Factor, Formula, read_formula
+from pathgate.review.keeps import Keeps
 
 Tree = str | tuple[str, "Tree", "Tree"] | tuple[str, "Tree", int]
 Terms = set[frozenset[str]]

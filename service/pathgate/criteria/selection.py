@@ -12,7 +12,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass, field
 
 from pathgate.graphs.graph import CausalGraph
-from pathgate.graphs.masks import mask_of
+from pathgate.graphs.masks import mask_of, members
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -72,3 +72,8 @@ def keep_rows(graph: CausalGraph, parts: Iterable[Part] = ()) -> Kept:
         if part.fixed:
             part_of[part.columns.bit_length() - 1] = part
     return Kept(extended, mask_of(part_of), listed, part_of)
+
+
+def fixed_by(parts: Iterable[Part]) -> int:
+    """The columns that some of these parts hold at one value."""
+    return mask_of(node for part in parts if part.fixed for node in members(part.columns))

@@ -84,13 +84,12 @@ class LeafClosures:
     '0b111'
     """
 
-    __slots__ = ("_below", "_inside", "_leaves", "_size", "_upward")
+    __slots__ = ("_below", "_inside", "_leaves", "_upward")
 
     def __init__(
         self, inside: Closures | LeafClosures, size: int, parents: Sequence[int], *, upward: bool
     ) -> None:
         self._inside = inside
-        self._size = size
         self._leaves = [(1 << size + place, mask) for place, mask in enumerate(parents)]
         self._below = (1 << size) - 1
         self._upward = upward

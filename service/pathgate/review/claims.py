@@ -13,7 +13,7 @@ from itertools import combinations
 from pathgate.criteria.adjustment import Effect, direct_effect, total_effect
 from pathgate.criteria.determined import determined_by, made_of
 from pathgate.criteria.populations import AmongKept, InEverybody, Population
-from pathgate.criteria.selection import Part, keep_rows
+from pathgate.criteria.selection import Part, fixed_by, keep_rows
 from pathgate.graphs.graph import CausalGraph
 from pathgate.graphs.masks import mask_of, members
 from pathgate.review.config import Asks, Claimed, Config
@@ -213,8 +213,7 @@ class Claim:
         """The columns adjusted for that only the treatments can make vary, once the others are held fixed."""
         if not self.inputs:
             return 0
-        pinned = mask_of(node for part in choice.parts if part.fixed for node in members(part.columns))
-        return self.only_varied_by(self.treatments, self.held_fixed(choice) | pinned)
+        return self.only_varied_by(self.treatments, self.held_fixed(choice) | fixed_by(choice.parts))
 
     def only_varied_by(self, columns: int, held: int) -> int:
         """The computed columns held fixed that only these columns can make vary, once the others are held."""

@@ -15,7 +15,8 @@ from pathgate.criteria.adjustment import Effect, direct_effect, is_valid, total_
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.determined import determined_by
 from pathgate.criteria.paths import find_open_path
-from pathgate.graphs.masks import mask_of, members
+from pathgate.criteria.selection import fixed_by
+from pathgate.graphs.masks import mask_of
 from pathgate.review.claims import Claim
 from pathgate.review.config import Config
 from pathgate.review.terms import ModelTerm
@@ -64,7 +65,7 @@ class _Reading:
         absorbing = claim.usable.fixed_effects
         self._absorbed = absorbing | claim.absorbed(absorbing)
         self._outcomes = listed(self._graph.names_of(claim.outcomes))
-        self._pinned = mask_of(node for part in claim.parts if part.fixed for node in members(part.columns))
+        self._pinned = fixed_by(claim.parts)
         self._unfit = self._why_unfit()
 
     def read(self, term: ModelTerm) -> tuple[ReadsAs, str]:

@@ -11,11 +11,10 @@ from dataclasses import dataclass
 
 from pathgate.review.formula_bounds import FormulaRefused, pieces_of
 from pathgate.review.formula_factor import Factor
-from pathgate.review.formula_keeps import Keeps
 from pathgate.review.formula_spelling import spelled
 from pathgate.review.formula_terms import expanded
 
-__all__ = ["Factor", "Formula", "FormulaRefused", "Keeps", "Term", "read_formula"]
+__all__ = ["Factor", "Formula", "FormulaRefused", "Term", "read_formula"]
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,8 +11,9 @@ from dataclasses import dataclass
 from pathgate.review.formula_bounds import Piece
 from pathgate.review.formula_calls import column_named, is_attribute
 from pathgate.review.formula_columns import columns_of
-from pathgate.review.formula_keeps import Keeps, is_sum_of_columns, keeps_of
+from pathgate.review.formula_keeps import is_sum_of_columns, keeps_of
 from pathgate.review.formula_python import parsed
+from pathgate.review.keeps import Keeps
 
 
 @dataclass(frozen=True, slots=True)

@@ -10,13 +10,10 @@ from __future__ import annotations
 import ast
 import math
 from collections.abc import Mapping, Sequence
-from typing import Literal
 
 from pathgate.review.formula_calls import called_by, column_named, is_aggregate, is_of_module
 from pathgate.review.formula_python import Expression
-
-Keeps = Literal["column", "one-to-one", "coarse", "computed"]
-"""How much a factor keeps: the column itself, all of its values, fewer; or it mixes several columns."""
+from pathgate.review.keeps import Keeps
 
 # Strictly monotone wherever they are defined.
 _MONOTONE = frozenset(

@@ -9,19 +9,16 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal
 
 from sqlglot import exp
 from sqlglot.dialects.dialect import Dialect
 
 from pathgate.graphs.names import quoted
+from pathgate.review.keeps import Keeps
 from pathgate.review.sql_bounds import SqlRefused
 from pathgate.review.sql_steps import keeps_all
 from pathgate.review.sql_text import read_sql
 from pathgate.review.sql_unread import refuse_unread
-
-Keeps = Literal["column", "one-to-one", "coarse", "computed"]
-"""How much a computed value keeps: the column itself, all of its values, fewer; or it mixes several columns."""
 
 _INSTEAD = 'name its inputs with "from" instead'
 _RANDOM = (exp.Rand, exp.Randn, exp.Randstr, exp.Uuid)

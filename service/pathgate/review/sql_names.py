@@ -15,10 +15,11 @@ from pathgate.graphs.errors import Fault, Place
 from pathgate.graphs.masks import mask_of
 from pathgate.graphs.names import quoted
 from pathgate.review.assumed import Assumed, SqlFilter
+from pathgate.review.keeps import Keeps
 from pathgate.review.names import NameReader
 from pathgate.review.sql_bounds import SqlRefused
 from pathgate.review.sql_columns import ColumnFinder, Reads
-from pathgate.review.sql_expression import Keeps, read_expression
+from pathgate.review.sql_expression import read_expression
 from pathgate.review.sql_filter import Condition, Conditions, sql_conditions
 
 
