@@ -152,6 +152,7 @@ def test_on_a_large_graph_open_paths_exist_and_no_shorter_one_does(
     graph, plain = large
     undirected = plain.to_undirected()
     value = {"nodes": list(plain), "edges": [{"source": s, "target": t} for s, t in plain.edges]}
+    joined = 0
     for seed in range(8):
         rng = random.Random(seed)
         x, y = rng.sample(list(plain), 2)
@@ -166,6 +167,8 @@ def test_on_a_large_graph_open_paths_exist_and_no_shorter_one_does(
         down = networkx.single_source_shortest_path_length(plain.reverse(), y)
         assert len(path.arrows) == min(up[node] + down[node] for node in shared[0] & shared[1])
         assert len(path.arrows) >= networkx.shortest_path_length(undirected, x, y)
+        joined += 1
+    assert joined > 3
 
 
 def test_on_a_large_graph_kin_and_neighbours_are_those_of_networkx(

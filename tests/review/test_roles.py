@@ -186,6 +186,7 @@ def test_roles_are_those_of_the_textbook(value: Graph, roles: dict[str, str]):
 @pytest.mark.parametrize("seeds", CONFIGS)
 @pytest.mark.parametrize("configs", [random_config, random_pipeline])
 def test_advice_followed_leads_to_a_sound_config(seeds: range, configs: Callable[[int], Question]):
+    followed: Counter[str] = Counter()
     for seed in seeds:
         question = configs(seed)
         _, answer = reviewed(question)
@@ -207,6 +208,9 @@ def test_advice_followed_leads_to_a_sound_config(seeds: range, configs: Callable
         for name in used if answer.verdict == "sound" else ():
             without = (question.adjusted_for - {name}, question.absorbing - {name})
             assert (advice[name] == "optional") is is_sound_choice(question, *without, question.parts), seed
+            followed[advice[name]] += 1
+        followed[answer.verdict] += 1
+    assert min(followed[each] for each in ("sound", "biased", "keep", "optional")) > len(seeds) / 100
 
 
 def test_columns_told_of_are_those_of_the_config_its_remedies_and_its_open_paths():
