@@ -5,7 +5,8 @@ from __future__ import annotations
 from dataclasses import replace
 
 from pathgate.demo import demo_configs, demo_graph
-from pathgate.review.config import understand_config
+from pathgate.graphs.graph import CausalGraph
+from pathgate.review.config import Config, understand_config
 from pathgate.review.hinge_document import whole_document
 from pathgate.review.review import review
 from pathgate.web.endpoints.reading import graph_of
@@ -18,6 +19,16 @@ from pathgate.web.problems import Failed, Problem
 def answer(call: Call) -> Json:
     """The verdict on one config, and what it hinges on."""
     graph = graph_of(call)
+    config = _config_of(call, graph)
+    all_columns = call.whole.get("columns", "in-question") == "all"
+    judged = review(graph, config, call.deadline, all_columns=all_columns)
+    document = whole_document(judged, call.deadline, hinges=call.whole.get("hinges", True))
+    if call.whole.get("as_gate", False) and judged.falls_short:
+        raise Failed(Problem.of("falls-short", judged.summary, review=document))
+    return document
+
+
+def _config_of(call: Call, graph: CausalGraph) -> Config:
     # Places are counted from the config while it is read, and from the request where it is refused.
     faults = [fault for fault in call.faults if fault.place[:1] != ("config",)]
     in_config = [
@@ -29,12 +40,7 @@ def answer(call: Call) -> Json:
     if config is None:
         message = "a config without faults can be understood"
         raise AssertionError(message)
-    all_columns = call.whole.get("columns", "in-question") == "all"
-    judged = review(graph, config, call.deadline, all_columns=all_columns)
-    document = whole_document(judged, call.deadline, hinges=call.whole.get("hinges", True))
-    if call.whole.get("as_gate", False) and judged.falls_short:
-        raise Failed(Problem.of("falls-short", judged.summary, review=document))
-    return document
+    return config
 
 
 OPERATION = Operation(
