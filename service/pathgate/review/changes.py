@@ -22,9 +22,9 @@ from pathgate.review.claims import Claim
 from pathgate.review.config import read_config
 from pathgate.review.culprits import Culprits, least_changes
 from pathgate.review.errors import InvalidConfig
-from pathgate.review.findings import Finding
+from pathgate.review.findings import Finding, Verdict
 from pathgate.review.graph_difference import Change, Difference
-from pathgate.review.review import Verdict, verdict_and_findings
+from pathgate.review.review import verdict_and_findings
 
 # Of a set of changes that could not be made smaller than that, no more are told.
 MOST_CULPRITS = 100

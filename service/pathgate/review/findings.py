@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from datetime import date
+from typing import Literal
 
 from pathgate.criteria.paths import OpenPath
 from pathgate.criteria.selection import Label
 from pathgate.graphs.errors import Place
 from pathgate.review.rules import RULES, Severity
+
+Verdict = Literal["sound", "biased", "unanswerable"]
 
 
 @dataclass(frozen=True, slots=True)

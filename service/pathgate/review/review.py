@@ -9,7 +9,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from datetime import date
-from typing import Literal
 
 from pathgate.criteria.deadline import Deadline
 from pathgate.criteria.measuring import MeasureNext
@@ -24,18 +23,17 @@ from pathgate.review.config import Config
 from pathgate.review.crossing import term_findings
 from pathgate.review.degenerate import degenerate_findings
 from pathgate.review.everybody import population_findings
-from pathgate.review.findings import Finding
+from pathgate.review.findings import Finding, Verdict
 from pathgate.review.measuring import measure_next_for
 from pathgate.review.remedies import Remedy, find_remedies
 from pathgate.review.roles import ColumnRole, column_roles
+from pathgate.review.rules import SEVERITIES
 from pathgate.review.summary import summarise
 from pathgate.review.timing import timing_findings
 from pathgate.review.waivers import accept
 from pathgate.review.warnings import warning_findings
 
-Verdict = Literal["sound", "biased", "unanswerable"]
-
-_GRAVITY = {"error": 0, "warning": 1, "note": 2}
+_GRAVITY = {severity: rank for rank, severity in enumerate(SEVERITIES)}
 
 
 @dataclass(frozen=True, slots=True)

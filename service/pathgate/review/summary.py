@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Literal
 
 from pathgate.criteria.whole import weighting
 from pathgate.review.claims import Claim
-from pathgate.review.findings import Finding
+from pathgate.review.findings import Finding, Verdict
 from pathgate.review.remedies import Remedy
 from pathgate.review.wording import listed, part_text
 
@@ -24,7 +23,7 @@ ABOUT_THE_GRAPH = (
 
 def summarise(
     claim: Claim,
-    verdict: Literal["sound", "biased", "unanswerable"],
+    verdict: Verdict,
     findings: Sequence[Finding],
     remedy: Remedy | None,
 ) -> str:

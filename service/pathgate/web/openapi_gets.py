@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import fields
 from typing import Any
 
 from pathgate.review.rules import RULES, SEVERITIES
+from pathgate.web.endpoints.shared_schemas import object_of
 from pathgate.web.problem_schema import problem_response
 from pathgate.web.problems import PROBLEM_TYPES
 from pathgate.web.settings import Settings
@@ -17,16 +17,7 @@ _HTML = {"text/html; charset=utf-8": {"schema": {"type": "string"}}}
 
 
 def _status(word: str) -> Json:
-    return _object({"status": {"const": word}})
-
-
-def _object(properties: Mapping[str, Any]) -> Json:
-    return {
-        "type": "object",
-        "properties": dict(properties),
-        "required": list(properties),
-        "additionalProperties": False,
-    }
+    return object_of(status={"const": word})
 
 
 def _json(schema: Json) -> Json:
@@ -52,8 +43,8 @@ def _get(operation: str, summary: str, content: Json, **more: Any) -> Json:
 
 
 def _limits() -> Json:
-    return _object(
-        {
+    return object_of(
+        **{
             each.name: {
                 "type": "integer" if isinstance(each.default, int) else "number",
                 "description": each.metadata["text"],
@@ -63,26 +54,22 @@ def _limits() -> Json:
     )
 
 
-_PROBLEM_PAGE = _object(
-    {
-        "type": {"type": "string"},
-        "status": {"type": "integer"},
-        "title": {"type": "string"},
-        "text": {"type": "string", "description": "What it means and what to do."},
-        "retryable": {"type": "boolean"},
-    }
+_PROBLEM_PAGE = object_of(
+    type={"type": "string"},
+    status={"type": "integer"},
+    title={"type": "string"},
+    text={"type": "string", "description": "What it means and what to do."},
+    retryable={"type": "boolean"},
 )
 
-_RULE_PAGE = _object(
-    {
-        "name": {"type": "string"},
-        "severity": {"enum": list(SEVERITIES)},
-        "meaning": {"type": "string"},
-        "why_it_matters": {"type": "string"},
-        "example": {"type": "string", "description": "One case of it; names of columns stand in backticks."},
-        "what_to_do": {"type": "string"},
-        "may_be_waived": {"type": "boolean", "description": "Can a config accept it, under `accept`?"},
-    }
+_RULE_PAGE = object_of(
+    name={"type": "string"},
+    severity={"enum": list(SEVERITIES)},
+    meaning={"type": "string"},
+    why_it_matters={"type": "string"},
+    example={"type": "string", "description": "One case of it; names of columns stand in backticks."},
+    what_to_do={"type": "string"},
+    may_be_waived={"type": "boolean", "description": "Can a config accept it, under `accept`?"},
 )
 
 
@@ -124,6 +111,6 @@ def get_paths(schema_names: list[str]) -> Json:
         "/version": _get(
             "version",
             "Which version answers, and under which limits.",
-            _json(_object({"version": {"type": "string"}, "limits": _limits()})),
+            _json(object_of(version={"type": "string"}, limits=_limits())),
         ),
     }

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from typing import Any
+from typing import Any, get_args
 
-from pathgate.review.changes import MOST_CULPRITS
+from pathgate.review.changes import MOST_CULPRITS, Outcome
+from pathgate.review.findings import Verdict
 from pathgate.web.endpoints.reviews import LINE
-from pathgate.web.endpoints.shared_schemas import NAME_LIST, NEXT_PAGE
+from pathgate.web.endpoints.shared_schemas import NAME_LIST, NEXT_PAGE, object_of
 
 Schema = dict[str, Any]
 
@@ -15,7 +16,7 @@ _ENDS: Schema = {
     "target": {"type": "string"},
     "kind": {"enum": ["directed", "bidirected"]},
 }
-_VERDICT: Schema = {"enum": ["sound", "biased", "unanswerable", None]}
+_VERDICT: Schema = {"enum": [*get_args(Verdict), None]}
 _MEMBERS: Schema = {
     "type": "array",
     "items": {"enum": ["measured", "recorded", "constant_within", "columns"]},
@@ -24,23 +25,14 @@ _MEMBERS: Schema = {
 _PROBLEM: Schema = LINE["properties"]["problem"]
 
 
-def _object(**properties: Schema) -> Schema:
-    return {
-        "type": "object",
-        "properties": properties,
-        "required": list(properties),
-        "additionalProperties": False,
-    }
-
-
 def _list(items: Schema, description: str) -> Schema:
     return {"type": "array", "items": items, "description": description}
 
 
-_EDGE = _object(**_ENDS)
-_STATEMENT = _object(x={"type": "string"}, y={"type": "string"}, given=NAME_LIST)
+_EDGE = object_of(**_ENDS)
+_STATEMENT = object_of(x={"type": "string"}, y={"type": "string"}, given=NAME_LIST)
 
-_CULPRIT_EDGE = _object(
+_CULPRIT_EDGE = object_of(
     **_ENDS,
     change={
         "enum": ["added", "removed", "turned", "kind-changed"],
@@ -69,7 +61,7 @@ CONFIG_CHANGE: Schema = {
         "before": {**_VERDICT, "description": "against `graph`; null where it could not be judged"},
         "after": {**_VERDICT, "description": "against `other`; null where it could not be judged"},
         "change": {
-            "enum": ["broken", "mended", "same", "other-reason"],
+            "enum": list(get_args(Outcome)),
             "description": (
                 "`broken`: sound before and not after; `mended`: the reverse; `other-reason`: sound neither time, by"
                 " another verdict, other errors (rule and columns) or another problem"
@@ -106,21 +98,21 @@ CHANGES: Schema = {
     "type": "object",
     "properties": {
         "configs": {"type": "array", "items": {"$ref": "#/components/schemas/ConfigChange"}},
-        "nodes": _object(
+        "nodes": object_of(
             added={**NAME_LIST, "description": "only `other` has them"},
             removed={**NAME_LIST, "description": "only `graph` has them"},
             changed=_list(
-                _object(node={"type": "string"}, members=_MEMBERS),
+                object_of(node={"type": "string"}, members=_MEMBERS),
                 "of these something else is said; costs apart",
             ),
         ),
-        "edges": _object(
+        "edges": object_of(
             added=_list(_EDGE, "all that only `other` has; one turned round or of another kind is here too"),
             removed=_list(_EDGE, "all that only `graph` has, likewise"),
             turned=_list(_EDGE, "the arrows that lead the other way round now, as they are in `other`"),
         ),
         "independencies": {
-            **_object(
+            **object_of(
                 lost=_list(_STATEMENT, "statements of the basis of `graph` that are not true in `other`"),
                 gained=_list(_STATEMENT, "statements of the basis of `other` that are not true in `graph`"),
             ),

@@ -5,9 +5,11 @@ from __future__ import annotations
 from typing import Any, get_args
 
 from pathgate.review.coefficients import ReadsAs
+from pathgate.review.config import Claimed
+from pathgate.review.findings import Verdict
 from pathgate.review.optional import Precision
 from pathgate.review.roles import ROLES, Advice
-from pathgate.review.rules import RULES
+from pathgate.review.rules import RULES, SEVERITIES
 from pathgate.review.schema import CONFIG_SCHEMA
 from pathgate.web.endpoints.hinge_schema import HINGE_COMPONENTS
 from pathgate.web.endpoints.shared_schemas import MEASURE_NEXT, NAME_LIST, PATH_COMPONENTS
@@ -18,7 +20,7 @@ FINDING: dict[str, Any] = {
     "type": "object",
     "properties": {
         "rule": {"enum": list(RULES)},
-        "severity": {"enum": ["error", "warning", "note"]},
+        "severity": {"enum": list(SEVERITIES)},
         "columns": {**NAME_LIST, "description": "the columns to blame"},
         "message": {
             "type": "string",
@@ -76,7 +78,7 @@ REMEDY: dict[str, Any] = {
             "description": "to take out of covariates, weights, matching and fixed effects",
         },
         "drop_filter_parts": {"type": "array", "description": "conditions to drop, as written"},
-        "population": {"enum": ["kept", "whole"], "description": "whose effect it then is"},
+        "population": {"enum": list(get_args(Claimed)), "description": "whose effect it then is"},
         "message": {"type": "string"},
     },
     "required": ["covariates", "add", "drop", "drop_filter_parts", "population", "message"],
@@ -101,7 +103,7 @@ REVIEW: dict[str, Any] = {
     "properties": {
         "name": {"type": "string"},
         "verdict": {
-            "enum": ["sound", "biased", "unanswerable"],
+            "enum": list(get_args(Verdict)),
             "description": (
                 "sound: these covariates on these rows carry the effect claimed, if the graph is right;"
                 " unanswerable: no choice of measured covariates and filter parts would; biased: a remedy exists"

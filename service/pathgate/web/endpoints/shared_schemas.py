@@ -104,3 +104,13 @@ MEASURE_NEXT: Schema = {
     "required": ["measure", "causes_of"],
     "additionalProperties": False,
 }
+
+
+def object_of(**properties: Schema) -> Schema:
+    """The schema of an object that has all of these members and no others."""
+    return {
+        "type": "object",
+        "properties": properties,
+        "required": list(properties),
+        "additionalProperties": False,
+    }
