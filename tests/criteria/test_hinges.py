@@ -27,8 +27,9 @@ from tests.strategies import Question
 from tests.values import measured_names, node_names
 
 SEEDS = [
-    pytest.param(range(400), id="400"),
-    pytest.param(range(400, 6_000), id="5600", marks=pytest.mark.slow),
+    pytest.param(range(120), id="120"),
+    pytest.param(range(120, 1200), id="1080", marks=pytest.mark.slow),
+    pytest.param(range(1200, 6000), id="4800", marks=pytest.mark.full),
 ]
 POPULATIONS = ["kept", "whole"]
 

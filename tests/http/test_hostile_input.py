@@ -16,8 +16,15 @@ from pathgate.web.endpoints import OPERATIONS
 from tests.http.conftest import TINY_GRAPH
 
 PATHS = [operation.path for operation in OPERATIONS]
+# Spoilt at every place, a request that holds many configs or two graphs takes long.
+LONG = {"/v1/changes", "/v1/reviews"}
 EXAMPLES = [
-    pytest.param(operation.path, example.request, id=f"{operation.name}-{example.name}")
+    pytest.param(
+        operation.path,
+        example.request,
+        id=f"{operation.name}-{example.name}",
+        marks=[pytest.mark.slow] if operation.path in LONG else [],
+    )
     for operation in OPERATIONS
     for example in operation.examples
 ]

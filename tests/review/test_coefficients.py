@@ -15,8 +15,9 @@ from tests.review.random_configs import random_config, review_of
 from tests.review.random_pipelines import random_pipeline
 
 SEEDS = [
-    pytest.param(range(300), id="300"),
-    pytest.param(range(300, 2500), id="2200", marks=pytest.mark.slow),
+    pytest.param(range(200), id="200"),
+    pytest.param(range(200, 1200), id="1000", marks=pytest.mark.slow),
+    pytest.param(range(1200, 2500), id="1300", marks=pytest.mark.full),
 ]
 
 

@@ -21,8 +21,9 @@ from tests.review.random_pipelines import random_pipeline
 from tests.values import Graph, graph_of, node_names
 
 SEEDS = [
-    pytest.param(range(500), id="500"),
-    pytest.param(range(500, 5000), id="4500", marks=pytest.mark.slow),
+    pytest.param(range(320), id="320"),
+    pytest.param(range(320, 1200), id="880", marks=pytest.mark.slow),
+    pytest.param(range(1200, 5000), id="3800", marks=pytest.mark.full),
 ]
 
 

@@ -21,8 +21,9 @@ from tests.review.random_pipelines import random_pipeline
 from tests.values import Graph, arrows_of, graph_of, measured_names, node_names
 
 CONFIGS = [
-    pytest.param(range(400), id="400"),
-    pytest.param(range(400, 3000), id="2600", marks=pytest.mark.slow),
+    pytest.param(range(200), id="200"),
+    pytest.param(range(200, 1500), id="1300", marks=pytest.mark.slow),
+    pytest.param(range(1500, 3000), id="1500", marks=pytest.mark.full),
 ]
 
 

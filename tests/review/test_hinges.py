@@ -31,8 +31,9 @@ from tests.strategies import HOSTILE_NAMES, renamed
 from tests.values import Graph, graph_of, node_names, topological_names
 
 SEEDS = [
-    pytest.param(range(600), id="600"),
-    pytest.param(range(600, 8000), id="7400", marks=pytest.mark.slow),
+    pytest.param(range(300), id="300"),
+    pytest.param(range(300, 2500), id="2200", marks=pytest.mark.slow),
+    pytest.param(range(2500, 8000), id="5500", marks=pytest.mark.full),
 ]
 
 

@@ -17,8 +17,9 @@ from tests.review.random_pipelines import random_pipeline
 from tests.values import bidirected_of, graph_of, measured_names, node_names
 
 SEEDS = [
-    pytest.param(range(250), id="250"),
-    pytest.param(range(250, 3000), id="2750", marks=pytest.mark.slow),
+    pytest.param(range(80), id="80"),
+    pytest.param(range(80, 600), id="520", marks=pytest.mark.slow),
+    pytest.param(range(600, 3000), id="2400", marks=pytest.mark.full),
 ]
 
 

@@ -15,12 +15,14 @@ from tests.review.random_pipelines import random_pipeline
 from tests.values import as_set, graph_of
 
 CONFIGS = [
-    pytest.param(range(700), id="700"),
-    pytest.param(range(700, 8000), id="7300", marks=pytest.mark.slow),
+    pytest.param(range(250), id="250"),
+    pytest.param(range(250, 2500), id="2250", marks=pytest.mark.slow),
+    pytest.param(range(2500, 8000), id="5500", marks=pytest.mark.full),
 ]
 LARGER = [
-    pytest.param(range(-1, -200, -1), id="200"),
-    pytest.param(range(-200, -1500, -1), id="1300", marks=pytest.mark.slow),
+    pytest.param(range(-1, -80, -1), id="80"),
+    pytest.param(range(-80, -500, -1), id="420", marks=pytest.mark.slow),
+    pytest.param(range(-500, -1500, -1), id="1000", marks=pytest.mark.full),
 ]
 
 

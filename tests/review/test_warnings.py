@@ -22,8 +22,9 @@ from tests.review.random_pipelines import random_pipeline
 from tests.values import graph_of
 
 CONFIGS = [
-    pytest.param(range(400), id="400"),
-    pytest.param(range(400, 3000), id="2600", marks=pytest.mark.slow),
+    pytest.param(range(200), id="200"),
+    pytest.param(range(200, 1500), id="1300", marks=pytest.mark.slow),
+    pytest.param(range(1500, 3000), id="1500", marks=pytest.mark.full),
 ]
 
 

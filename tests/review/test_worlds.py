@@ -28,8 +28,9 @@ from tests.test_oracle_worlds import reports_the_effect
 from tests.values import graph_of, measured_names, node_names
 
 SEEDS = [
-    pytest.param(range(200), id="200"),
-    pytest.param(range(200, 1200), id="1000", marks=pytest.mark.slow),
+    pytest.param(range(60), id="60"),
+    pytest.param(range(60, 500), id="440", marks=pytest.mark.slow),
+    pytest.param(range(500, 1200), id="700", marks=pytest.mark.full),
 ]
 WORLDS = 5
 
