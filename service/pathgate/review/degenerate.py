@@ -1,4 +1,8 @@
-"""Faults of a config that need no path to see: unmeasured columns, treatment or outcome where neither can be."""
+"""Faults of a config that need no path to see: unmeasured columns, treatment or outcome where neither can be.
+
+The comparison cannot be made at all, or is empty, whatever paths there are. Linear in the config, but for what fixed
+effects absorb.
+"""
 
 from __future__ import annotations
 
@@ -20,12 +24,15 @@ def degenerate_findings(claim: Claim, config: Config) -> Iterator[Finding]:
                 yield _unmeasured(claim, named, role)
     for named in config.adjusted_for:
         yield from _covariate(claim, config, named)
-    yield from _without_variation(claim, config)
+    yield from _absorbed_ends(claim, config)
+    stuck = claim.leaves_no_variation(claim.usable)
+    yield from _stuck_covariates(claim, config, stuck)
+    yield from _stuck_conditions(claim, config, stuck)
     yield from _filter(claim, config)
 
 
-def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
-    """Fixed effects that hold treatment or outcome fixed, and covariates that only the treatment makes vary."""
+def _absorbed_ends(claim: Claim, config: Config) -> Iterator[Finding]:
+    """Fixed effects that hold a treatment or an outcome fixed."""
     graph = claim.graph
     for named in config.fixed_effects:
         for node in members(claim.absorbed(1 << named.node) & claim.ends):
@@ -37,7 +44,11 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
                 " compare. Take these fixed effects out."
             )
             yield Finding("no-variation-left", columns, message, named.place)
-    stuck = claim.leaves_no_variation(claim.usable)
+
+
+def _stuck_covariates(claim: Claim, config: Config, stuck: int) -> Iterator[Finding]:
+    """Columns adjusted for that only the treatments can make vary."""
+    graph = claim.graph
     for named in config.adjusted_for:
         if stuck >> named.node & 1:
             made_of = graph.names_of(claim.inputs[named.node])
@@ -48,6 +59,11 @@ def _without_variation(claim: Claim, config: Config) -> Iterator[Finding]:
                 f" {listed([graph.name(named.node)])}."
             )
             yield Finding("no-variation-left", (graph.name(named.node),), message, named.place)
+
+
+def _stuck_conditions(claim: Claim, config: Config, stuck: int) -> Iterator[Finding]:
+    """The same where a condition on the rows holds such a column at one value."""
+    graph = claim.graph
     for filter_part in config.rows.filter_parts:
         part = filter_part.part
         for node in members(stuck & part.columns if part.fixed else 0):
