@@ -1,4 +1,7 @@
-"""By what does a config adjust for a node: a covariate, weights, matching, or fixed effects that absorb it?"""
+"""By what does a config adjust for a node: a covariate, weights, matching, or fixed effects that absorb it?
+
+Each way is one thing to blame, with the place that names it. Linear in what the config adjusts for.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""What a row filter in SQL comes to: its parts, and what a review takes for granted about it."""
+"""What a row filter in SQL comes to: its parts, and what a review takes for granted about it.
+
+Apart from the reading of SQL, so that a review without SQL need not load a parser.
+"""
 
 from __future__ import annotations
 

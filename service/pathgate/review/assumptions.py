@@ -1,4 +1,7 @@
-"""What a row filter leaves unsaid and the review took for granted, as notes; none of them changes the verdict."""
+"""What a row filter leaves unsaid and the review took for granted, as notes; none of them changes the verdict.
+
+Each says what was assumed and, where a member of the config can say otherwise, which. Linear in what was assumed.
+"""
 
 from __future__ import annotations
 

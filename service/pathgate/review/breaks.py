@@ -1,4 +1,8 @@
-"""Which columns and filter parts break a claim, along which path: the criteria's diagnosis put into words."""
+"""Which columns and filter parts break a claim, along which path: the criteria's diagnosis put into words.
+
+What is forbidden has to go in any case, so the paths are looked at as they are once it has gone. ``criteria.diagnosis``
+finds the nodes and paths; here they are traced back to the members of the config that condition on them.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""What a change of graph does to a config, in one sentence that can stand in a pull request."""
+"""What a change of graph does to a config, in one sentence that can stand in a pull request.
+
+It names what did it, up to a few changes; the rest is counted.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""What a config should know about the columns that it computes, and about names that its graph does not have."""
+"""What a config should know about the columns that it computes, and about names that its graph does not have.
+
+A recode stands for its column in the verdict, and what it loses of it is told here. Linear in the config.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,8 @@
-"""Does a formula let the treatment's effect differ by another column?"""
+"""Does a formula let the treatment's effect differ by another column?
+
+Then the coefficient of the treatment alone is its effect at one value of the other column, and no average over the
+rows: a warning, since the verdict is about what is held fixed. Linear in the terms.
+"""
 
 from __future__ import annotations
 

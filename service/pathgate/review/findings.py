@@ -1,4 +1,8 @@
-"""What a review found: one finding for each thing wrong or worth knowing, each with its witness."""
+"""What a review found: one finding for each thing wrong or worth knowing, each with its witness.
+
+Its rule says how grave it is and what it means; its place, where in the config it comes from. Of the witnesses (an
+open path, a causal path, a way down from one) it has those that its rule is about.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""Conditions on the rows that a request gives as names of columns and objects."""
+"""Conditions on the rows that a request gives as names of columns and objects.
+
+Names that stand bare in a list make up one condition; an object is a condition of its own. Linear in the list.
+"""
 
 from __future__ import annotations
 

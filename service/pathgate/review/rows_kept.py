@@ -1,4 +1,8 @@
-"""What decides which rows a model sees: its row filter, and what makes rows go missing without it."""
+"""What decides which rows a model sees: its row filter, and what makes rows go missing without it.
+
+Both become parts, since a graph makes no difference between them; but what the filter does can be undone in the config,
+and what loses rows beside it cannot, so that no remedy drops it. A filter in SQL is read by ``sql_names``.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""What is said of a rule beside its one sentence of meaning, for somebody who has to act on a finding."""
+"""What is said of a rule beside its one sentence of meaning, for somebody who has to act on a finding.
+
+Kept apart from the table of rules, so that all texts of one kind can be read next to each other.
+"""
 
 from __future__ import annotations
 

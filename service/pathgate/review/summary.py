@@ -1,4 +1,7 @@
-"""The whole verdict in one sentence that can stand alone in a chat or a log."""
+"""The whole verdict in one sentence that can stand alone in a chat or a log.
+
+It names the effect, the columns to blame and the first remedy, and says no more than the findings do.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""The terms of a model: which coefficients it has, and what each of them multiplies."""
+"""The terms of a model: which coefficients it has, and what each of them multiplies.
+
+A formula tells them; without one each treatment and covariate is a term by itself.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,8 @@
-"""Is anything adjusted for that was recorded only after the treatment, or after the outcome?"""
+"""Is anything adjusted for that was recorded only after the treatment, or after the outcome?
+
+Only the moments that the graph gives count, where both columns have one. A warning: the graph may make the column
+harmless, and the verdict follows the graph. Linear in what is adjusted for.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""What a change of graph does, as the documents that HTTP callers and the command show: the same members."""
+"""What a change of graph does, as the documents that HTTP callers and the command show: the same members.
+
+One entry is one config between two graphs; an error of its own is a problem in it, and never the end of the others.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""The paths that are read by GET, as the OpenAPI document describes them."""
+"""The paths that are read by GET, as the OpenAPI document describes them.
+
+What they answer is not under ``/v1/``: pages for people, documents for tools, the state of the process.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,7 @@
-"""The schema of an answer about a change of graph."""
+"""The schema of an answer about a change of graph.
+
+What the two graphs make of each config, all that differs between them, and a page of promises lost and gained.
+"""
 
 from __future__ import annotations
 

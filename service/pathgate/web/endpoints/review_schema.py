@@ -1,4 +1,8 @@
-"""The shape of a review, as /v1/review, /v1/reviews and whatever else holds one publish it."""
+"""The shape of a review, as /v1/review, /v1/reviews and whatever else holds one publish it.
+
+Words that a review can use (rules, roles, verdicts, advice) are taken from where they are declared, so that a new one
+is published as soon as it is there.
+"""
 
 from __future__ import annotations
 
