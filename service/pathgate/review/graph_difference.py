@@ -24,6 +24,9 @@ NamedEdge = tuple[str, str, str]
 
 Json = dict[str, Any]
 
+SAID_OF_NODES = ("measured", "recorded", "constant_within", "columns")
+"""What counts of all that is said of a node."""
+
 # Graphs with only some of the changes that are held at a time, and their nodes, for all configs that are asked about.
 MOST_GRAPHS = 64
 MOST_NODES_DRAWN = 50_000
@@ -81,7 +84,7 @@ class Difference:
         found = []
         for name in self.new.names:
             if name in before:
-                differing = (key for key in _MEMBERS if before[name].get(key) != after[name].get(key))
+                differing = (key for key in SAID_OF_NODES if before[name].get(key) != after[name].get(key))
                 found.append(NodeChange("changed", name, tuple(differing)))
         return tuple(each for each in found if each.members)
 
@@ -249,9 +252,6 @@ class Difference:
         if was is None:
             return EdgeChange("added", edge)
         return EdgeChange("turned" if was[0] == kind else "kind-changed", edge, was)
-
-
-_MEMBERS = ("measured", "recorded", "constant_within", "columns")
 
 
 def _facts(graph: CausalGraph) -> dict[str, Json]:

@@ -9,6 +9,7 @@ from typing import Any, get_args
 
 from pathgate.review.changes import MOST_CULPRITS, Outcome
 from pathgate.review.findings import Verdict
+from pathgate.review.graph_difference import SAID_OF_NODES
 from pathgate.web.endpoints.reviews import LINE
 from pathgate.web.endpoints.shared_schemas import NAME_LIST, NEXT_PAGE, object_of
 
@@ -22,7 +23,7 @@ _ENDS: Schema = {
 _VERDICT: Schema = {"enum": [*get_args(Verdict), None]}
 _MEMBERS: Schema = {
     "type": "array",
-    "items": {"enum": ["measured", "recorded", "constant_within", "columns"]},
+    "items": {"enum": list(SAID_OF_NODES)},
     "description": "of what is said of the node, what is not what it was",
 }
 _PROBLEM: Schema = LINE["properties"]["problem"]
