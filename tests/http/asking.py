@@ -38,6 +38,13 @@ def refusal(service: Service, path: str, **body: Any) -> tuple[str, list[str]]:
     return document["type"].removeprefix("/problems/"), pointers
 
 
+def faults(service: Service, path: str, **body: Any) -> dict[str, str]:
+    """From pointer to detail, for a request that is refused."""
+    reply = service.post(path, body)
+    assert reply.status_code == 422, reply.text
+    return {fault["pointer"]: fault["detail"] for fault in json.loads(reply.data)["errors"]}
+
+
 def asked_graph(seed: int, most_nodes: int = 7) -> tuple[random.Random, Graph]:
     rng = random.Random(seed)
     arrow, bidirected = rng.choice([(0.2, 0.05), (0.3, 0.15), (0.45, 0.1)])

@@ -17,6 +17,7 @@ from pathgate.web.endpoints import OPERATIONS
 from pathgate.web.endpoints.changes import OPERATION
 from pathgate.web.operations import envelope_shape, open_call
 from pathgate.web.settings import Settings
+from tests.http.asking import ask, faults
 from tests.http.conftest import service_with
 from tests.values import Graph, arrows_of, graph_of, node_names
 
@@ -27,16 +28,7 @@ STORMS = graph_of(*arrows_of(PARCELS), ("storms", "late"), ("storms", "refund"),
 
 
 def asked(service: Any, old: Graph, new: Graph, *configs: Any, **more: Any) -> dict[str, Any]:
-    reply = service.post(PATH, {"graph": old, "other": new, "configs": list(configs), **more})
-    assert reply.status_code == 200, reply.text
-    answer: dict[str, Any] = json.loads(reply.data)
-    return answer
-
-
-def faults(service: Any, **body: Any) -> dict[str, str]:
-    reply = service.post(PATH, body)
-    assert reply.status_code == 422, reply.text
-    return {fault["pointer"]: fault["detail"] for fault in json.loads(reply.data)["errors"]}
+    return ask(service, PATH, graph=old, other=new, configs=list(configs), **more)
 
 
 def test_verdicts_are_those_of_reviews_against_either_graph(service):
@@ -225,6 +217,7 @@ def test_a_cycle_in_the_other_graph_is_shown_at_its_place(service):
 def test_all_that_is_wrong_comes_in_one_answer(service):
     found = faults(
         service,
+        PATH,
         graph={"nodes": ["weather"], "edges": [{"source": "weather", "target": "wether"}]},
         other={"nodes": ["weather", 3], "edges": {}},
         configs={},
@@ -237,12 +230,12 @@ def test_all_that_is_wrong_comes_in_one_answer(service):
         "#/configs",
         "#/limit",
     }
-    assert set(faults(service, graph=PARCELS)) == {"#"}
+    assert set(faults(service, PATH, graph=PARCELS)) == {"#"}
 
 
 def test_the_limits_hold_for_both_graphs():
     small = service_with(OPERATIONS, max_nodes=4)
-    assert list(faults(small, graph=PARCELS, other=STORMS, configs=[])) == ["#/other/nodes"]
+    assert list(faults(small, PATH, graph=PARCELS, other=STORMS, configs=[])) == ["#/other/nodes"]
 
 
 def test_equal_requests_get_equal_bytes_whatever_the_order_of_edges(service):

@@ -5,32 +5,18 @@ from __future__ import annotations
 import json
 from itertools import combinations
 from math import factorial
-from typing import Any
 
 import pytest
 
 from pathgate.web.endpoints import OPERATIONS
 from pathgate.web.endpoints.equivalence import OPERATION
 from pathgate.web.operations import envelope_shape
+from tests.http.asking import ask, faults
 from tests.http.conftest import TINY_GRAPH, service_with
 from tests.values import Graph, graph_of
 
 PATH = "/v1/equivalence"
 CHAIN = graph_of(("weather", "late_pickup"), ("late_pickup", "refund"))
-
-
-def asked(service: Any, **body: Any) -> dict[str, Any]:
-    reply = service.post(PATH, body)
-    assert reply.status_code == 200, reply.text
-    answer: dict[str, Any] = json.loads(reply.data)
-    return answer
-
-
-def faults(service: Any, **body: Any) -> dict[str, str]:
-    """From pointer to detail, for a request that is refused."""
-    reply = service.post(PATH, body)
-    assert reply.status_code == 422, reply.text
-    return {fault["pointer"]: fault["detail"] for fault in json.loads(reply.data)["errors"]}
 
 
 def complete(size: int, of: int = 1) -> Graph:
@@ -43,7 +29,7 @@ def test_arrows_are_told_apart(service):
     graph = graph_of(("weather", "locker_full"), ("promotion", "locker_full"), ("promotion", "parcels"))
     graph["nodes"][1:1] = [{"id": "season", "recorded": 1}, {"id": "storms", "recorded": 2}]
     graph["edges"].append({"source": "season", "target": "storms"})
-    assert asked(service, graph=graph) == {
+    assert ask(service, PATH, graph=graph) == {
         "compelled": [
             {"source": "weather", "target": "locker_full"},
             {"source": "promotion", "target": "locker_full"},
@@ -55,29 +41,29 @@ def test_arrows_are_told_apart(service):
 
 
 def test_sizes_that_json_readers_would_round_are_strings(service):
-    assert asked(service, graph=complete(18))["class_size"] == factorial(18) < 2**53
-    assert asked(service, graph=complete(19))["class_size"] == str(factorial(19))
-    assert asked(service, graph=complete(100))["class_size"] == str(factorial(100))
+    assert ask(service, PATH, graph=complete(18))["class_size"] == factorial(18) < 2**53
+    assert ask(service, PATH, graph=complete(19))["class_size"] == str(factorial(19))
+    assert ask(service, PATH, graph=complete(100))["class_size"] == str(factorial(100))
 
 
 def test_sizes_of_more_digits_than_python_writes_by_itself_come_whole(service):
-    size = asked(service, graph=complete(4, of=3_200))["class_size"]
+    size = ask(service, PATH, graph=complete(4, of=3_200))["class_size"]
     assert len(size) > 4_300
     assert int(size[:4_000]) == 24**3_200 // 10 ** (len(size) - 4_000)
 
 
 def test_the_class_of_a_large_tree_is_counted_within_the_time_budget(service):
     tree = graph_of(*((f"n{(node - 1) // 3}", f"n{node}") for node in range(1, 10_000)))
-    answer = asked(service, graph=tree)
+    answer = ask(service, PATH, graph=tree)
     assert answer["class_size"] == len(answer["reversible"]) + 1 == 10_000
 
 
 def test_two_graphs_are_told_apart_by_a_statement_or_not_at_all(service):
     turned = {**CHAIN, "edges": [{"source": e["target"], "target": e["source"]} for e in CHAIN["edges"]]}
-    assert asked(service, graph=CHAIN, other=turned) == {"equivalent": True, "statement": None}
+    assert ask(service, PATH, graph=CHAIN, other=turned) == {"equivalent": True, "statement": None}
     collider = graph_of(("refund", "late_pickup"), ("weather", "late_pickup"))
     statement = {"x": "weather", "y": "refund", "given": [], "holds_in": "other"}
-    assert asked(service, graph=CHAIN, other=collider) == {"equivalent": False, "statement": statement}
+    assert ask(service, PATH, graph=CHAIN, other=collider) == {"equivalent": False, "statement": statement}
 
 
 @pytest.mark.parametrize("member", ["graph", "other"])
@@ -89,7 +75,7 @@ def test_hidden_causes_are_refused_each_at_its_place(service, member):
             {"source": "refund", "target": "weather", "kind": "bidirected"},
         ],
     }
-    found = faults(service, **{"graph": CHAIN, "other": CHAIN, member: spoilt})
+    found = faults(service, PATH, **{"graph": CHAIN, "other": CHAIN, member: spoilt})
     assert list(found) == [f"#/{member}/nodes/1/measured", f"#/{member}/edges/1/kind"]
     assert '"late_pickup" is marked as unmeasured' in found[f"#/{member}/nodes/1/measured"]
     assert '"refund" and "weather" is bidirected' in found[f"#/{member}/edges/1/kind"]
@@ -98,6 +84,7 @@ def test_hidden_causes_are_refused_each_at_its_place(service, member):
 def test_all_that_is_wrong_with_either_graph_comes_in_one_answer(service):
     found = faults(
         service,
+        PATH,
         graph={"nodes": ["weather"], "edges": [{"source": "weather", "target": "wether"}], "links": []},
         other={"nodes": ["weather", 3], "edges": {}},
     )
@@ -114,20 +101,22 @@ def test_a_cycle_in_the_other_graph_is_shown(service):
 
 
 def test_other_nodes_are_refused_by_name(service):
-    found = faults(service, graph=CHAIN, other=graph_of(("wether", "late_pickup"), ("late_pickup", "refund")))
+    found = faults(
+        service, PATH, graph=CHAIN, other=graph_of(("wether", "late_pickup"), ("late_pickup", "refund"))
+    )
     assert 'did you mean "weather"' in found["#/other/nodes/0"]
     assert '"weather", a node of "graph", is missing here' in found["#/other/nodes"]
 
 
 @pytest.mark.parametrize("other", [None, True, 5, "graph", [], [CHAIN], {"nodes": [], "edges": 1}])
 def test_another_graph_that_is_none_is_refused(service, other):
-    assert all(pointer.startswith("#/other") for pointer in faults(service, graph=CHAIN, other=other))
+    assert all(pointer.startswith("#/other") for pointer in faults(service, PATH, graph=CHAIN, other=other))
 
 
 def test_the_limits_hold_for_both_graphs():
     service = service_with(OPERATIONS, max_nodes=2, max_edges=1)
-    assert list(faults(service, graph=TINY_GRAPH, other=CHAIN)) == ["#/other/nodes", "#/other/edges"]
-    assert list(faults(service, graph=CHAIN, other=TINY_GRAPH)) == ["#/graph/nodes", "#/graph/edges"]
+    assert list(faults(service, PATH, graph=TINY_GRAPH, other=CHAIN)) == ["#/other/nodes", "#/other/edges"]
+    assert list(faults(service, PATH, graph=CHAIN, other=TINY_GRAPH)) == ["#/graph/nodes", "#/graph/edges"]
 
 
 def test_neither_graph_is_looked_at_by_the_schema_library():
