@@ -13,6 +13,7 @@ import heapq
 from collections import deque
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal
 
 from pathgate.criteria.path_masks import Arrow, directed_walk, open_walks
@@ -25,7 +26,7 @@ Role = Literal["chain", "fork", "collider"]
 Because = Literal["not-conditioned", "conditioned", "descendant-conditioned"]
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Trail:
     """A path by indices: its nodes, and how each edge points when read from the first node to the last."""
 
@@ -47,7 +48,7 @@ class Trail:
             return "bidirected", min(first, second), max(first, second)
         return ("directed", first, second) if self.arrows[place] == "forward" else ("directed", second, first)
 
-    @property
+    @cached_property
     def inner(self) -> tuple[tuple[int, Role], ...]:
         """The nodes between the ends with their roles."""
         return tuple((self.nodes[place], self.role(place)) for place in range(1, len(self.nodes) - 1))

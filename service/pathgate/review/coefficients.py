@@ -117,7 +117,7 @@ class _Reading:
         stuck = self._without_variation(node, causes, others)
         if stuck:
             return "neither", stuck
-        total = total_effect(self._kept, causes, self._claim.outcomes)
+        total = self._total_effect(causes)
         if is_valid(total, others):
             return "total", self._total(total)
         direct = self._direct(causes)
@@ -142,6 +142,12 @@ class _Reading:
         if pinned:
             return f"it is computed from {listed(pinned)}, of which the rows kept have one value"
         return ""
+
+    def _total_effect(self, causes: int) -> Effect:
+        claim = self._claim
+        if claim.asks == "total" and causes == claim.treatments:
+            return claim.effect
+        return total_effect(self._kept, causes, claim.outcomes)
 
     def _direct(self, causes: int) -> Effect | None:
         outcomes = self._claim.outcomes
