@@ -243,55 +243,55 @@ def test_a_member_that_is_no_string_is_a_fault_and_no_accident():
     assert [rule for _, rule in faults_of(value)] == ["invalid-request"]
 
 
+FAULTY: dict[str, Any] = {
+    "nodes": [
+        "a",
+        {"id": "b", "mesured": False, "cost": -1},
+        3,
+        "a",
+        {"id": "d", "recorded": 2, "columns": ["b"]},
+        {"id": "e", "recorded": 1, "constant_within": ["z"]},
+        "f",
+    ],
+    "edges": [
+        edge("a", "zz"),
+        edge("d", "e"),
+        edge("b", "b"),
+        edge("a", "f"),
+        edge("a", "f", kindd="x"),
+        edge("f", "a", note=3),
+        edge("e", "f", kind="dotted"),
+        "a",
+    ],
+    "directed": False,
+    "edge": [],
+}
+ITS_FAULTS = [
+    (("nodes", 1, "mesured"), "invalid-request"),
+    (("nodes", 1, "cost"), "invalid-request"),
+    (("nodes", 2), "invalid-request"),
+    (("nodes", 3), "repeated-id"),
+    (("nodes", 4, "columns", 0), "ambiguous-name"),
+    (("nodes", 5, "constant_within", 0), "undeclared-node"),
+    (("edges", 0, "target"), "undeclared-node"),
+    (("edges", 1), "arrow-back-in-time"),
+    (("edges", 2), "self-loop"),
+    (("edges", 4), "repeated-edge"),
+    (("edges", 5, "note"), "invalid-request"),
+    (("edges", 6, "kind"), "invalid-request"),
+    (("edges", 7), "invalid-request"),
+    (("directed",), "invalid-request"),
+    (("edge",), "invalid-request"),
+    (("edges",), "cycle"),
+]
+
+
 def test_all_faults_come_in_one_answer_nodes_first_then_edges_then_cycles():
-    value = {
-        "nodes": [
-            "a",
-            {"id": "b", "mesured": False, "cost": -1},
-            3,
-            "a",
-            {"id": "d", "recorded": 2, "columns": ["b"]},
-            {"id": "e", "recorded": 1, "constant_within": ["z"]},
-            "f",
-        ],
-        "edges": [
-            edge("a", "zz"),
-            edge("d", "e"),
-            edge("b", "b"),
-            edge("a", "f"),
-            edge("a", "f", kindd="x"),
-            edge("f", "a", note=3),
-            edge("e", "f", kind="dotted"),
-            "a",
-        ],
-        "directed": False,
-        "edge": [],
-    }
-    found = faults_of(value)
-    assert sorted(found, key=str) == sorted(
-        [
-            (("nodes", 1, "mesured"), "invalid-request"),
-            (("nodes", 1, "cost"), "invalid-request"),
-            (("nodes", 2), "invalid-request"),
-            (("nodes", 3), "repeated-id"),
-            (("nodes", 4, "columns", 0), "ambiguous-name"),
-            (("nodes", 5, "constant_within", 0), "undeclared-node"),
-            (("edges", 0, "target"), "undeclared-node"),
-            (("edges", 1), "arrow-back-in-time"),
-            (("edges", 2), "self-loop"),
-            (("edges", 4), "repeated-edge"),
-            (("edges", 5, "note"), "invalid-request"),
-            (("edges", 6, "kind"), "invalid-request"),
-            (("edges", 7), "invalid-request"),
-            (("directed",), "invalid-request"),
-            (("edge",), "invalid-request"),
-            (("edges",), "cycle"),
-        ],
-        key=str,
-    )
+    found = faults_of(FAULTY)
+    assert sorted(found, key=str) == sorted(ITS_FAULTS, key=str)
     assert [place[0] for place, _ in found if place[0] in ("nodes", "edges")] == ["nodes"] * 6 + ["edges"] * 8
     with pytest.raises(InvalidGraph) as caught:
-        read_graph(value)
+        read_graph(FAULTY)
     assert caught.value.slug == "invalid-graph"
     assert len(caught.value.faults) == len(found)
     assert str(len(found) - 1) in str(caught.value)
