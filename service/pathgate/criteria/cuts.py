@@ -76,7 +76,7 @@ class _Network:
     def reached(self, *, from_sink: bool) -> BoolArray:
         """The states that a maximum flow leaves within reach of the source, or from which it leaves the sink so."""
         from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and many questions do without
-        from scipy.sparse.csgraph import breadth_first_order, maximum_flow  # noqa: PLC0415
+        from scipy.sparse.csgraph import breadth_first_order, maximum_flow  # noqa: PLC0415 - as above
 
         starts, ends, capacities = self.steps.T
         network = csr_array((capacities, (starts, ends)), shape=(self.sink + 1, self.sink + 1))

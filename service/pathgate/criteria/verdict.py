@@ -52,7 +52,7 @@ def _are_apart_by_masks(graph: CausalGraph, xs: int, ys: int, given: int, releva
 
 def _are_apart_by_arrays(graph: CausalGraph, xs: int, ys: int, given: int, relevant: int) -> bool:
     from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and small graphs do without
-    from scipy.sparse.csgraph import connected_components  # noqa: PLC0415
+    from scipy.sparse.csgraph import connected_components  # noqa: PLC0415 - as above
 
     size = graph.size
     inside, leaves = unpack(relevant, size), ~unpack(given, size)

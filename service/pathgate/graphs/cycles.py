@@ -22,7 +22,7 @@ def cycles(graph: CausalGraph) -> tuple[tuple[str, ...], ...]:
     if not len(graph.sources) or (graph.is_small and _is_sorted_out(graph)):
         return ()
     from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and only cycles need it
-    from scipy.sparse.csgraph import connected_components  # noqa: PLC0415
+    from scipy.sparse.csgraph import connected_components  # noqa: PLC0415 - as above
 
     steps = csr_array((np.ones(len(graph.sources)), (graph.sources, graph.targets)), shape=(graph.size,) * 2)
     count, labels = connected_components(steps, directed=True, connection="strong")

@@ -31,7 +31,7 @@ class Rows:
     def reached_from(self, seeds: IntArray) -> BoolArray:
         """Which states some chain of steps reaches from the seeds, these included."""
         from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and small graphs do without
-        from scipy.sparse.csgraph import breadth_first_order  # noqa: PLC0415
+        from scipy.sparse.csgraph import breadth_first_order  # noqa: PLC0415 - as above
 
         # One more state that steps to every seed makes several seeds a single start.
         ends = np.concatenate([self.ends, seeds.astype(np.int32)])
