@@ -111,6 +111,10 @@ class CausalGraph:
         """From name to index."""
         return {name: place for place, name in enumerate(self.names) if name}
 
+    def node_called(self, name: str) -> int | None:
+        """The node that bears this name, else the one that it is another name of; None where there is neither."""
+        return self.index.get(name, self.aliases.get(name))
+
     def name(self, node: int) -> str:
         """The name of a node."""
         return self.names[node]

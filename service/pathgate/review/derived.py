@@ -69,7 +69,7 @@ def understand_columns(said: Mapping[str, Any], graph: CausalGraph, faults: list
     outside = said.get("outside_graph", ())
     names = [outside] if isinstance(outside, str) else list(outside)
     for k, name in enumerate(names):
-        if name in graph.index or name in graph.aliases:
+        if graph.node_called(name) is not None:
             place: Place = ("outside_graph",) if isinstance(outside, str) else ("outside_graph", k)
             detail = f"{quoted(name)} is in the graph, and so not outside it"
             faults.append(Fault("invalid-request", place, detail, (name,)))
@@ -109,7 +109,7 @@ class _Deriving:
         detail = ""
         if not name or len(name) > MAX_NAME:
             detail = f"the name of a column has 1 to {MAX_NAME} characters"
-        elif name in graph.index or name in graph.aliases:
+        elif graph.node_called(name) is not None:
             detail = (
                 f"{quoted(name)} is a column of the graph already: give what is derived a name of its own"
             )

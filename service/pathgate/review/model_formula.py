@@ -96,7 +96,7 @@ class _Understanding:
     def _factor(self, factor: Factor) -> Named | None:
         """The column that a factor is: the one that it reads, or a computed one of its own name."""
         graph = self._columns.graph
-        known = graph.index.get(factor.written, graph.aliases.get(factor.written))
+        known = graph.node_called(factor.written)
         if known is not None:
             return Named(known, _PLACE, factor.written)
         found = self._read(factor.names)

@@ -101,9 +101,8 @@ class NameReader:
         return mask
 
     def find(self, name: str) -> int | None:
-        """The node that bears this name."""
-        node = self.graph.index.get(name)
-        return self.graph.aliases.get(name) if node is None and self.by_alias else node
+        """The node that this name means."""
+        return self.graph.node_called(name) if self.by_alias else self.graph.index.get(name)
 
     def _unknown(self, name: str, at: Place) -> None:
         if name in self.outside:

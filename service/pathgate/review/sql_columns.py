@@ -105,7 +105,7 @@ class ColumnFinder:
 
     def _fit(self, spelling: list[exp.Identifier]) -> Found | None:
         name = ".".join(part.name for part in spelling)
-        exact = self.graph.index.get(name, self.graph.aliases.get(name))
+        exact = self.graph.node_called(name)
         if exact is not None:
             return Found(exact, is_coarse=name in self.coarse)
         key = self._folded_spelling(spelling)
@@ -189,7 +189,7 @@ class ColumnFinder:
         self.faults.append(Fault("unknown-node", self.place, detail, (name,)))
 
     def _refuse_word(self, word: str, columns: int) -> None:
-        node = self.graph.index.get(word, self.graph.aliases.get(word))
+        node = self.graph.node_called(word)
         if node is None:
             (node, *_) = self._fitting([exp.to_identifier(word)]) or (None,)
         if node is not None and not columns >> node & 1:
