@@ -25,7 +25,8 @@ pytestmark = pytest.mark.slow
 
 MANY = [
     pytest.param(range(150), id="150"),
-    pytest.param(range(150, 2500), id="2350", marks=pytest.mark.slow),
+    pytest.param(range(150, 700), id="550", marks=pytest.mark.slow),
+    pytest.param(range(700, 2500), id="1800", marks=pytest.mark.full),
 ]
 Measuring = tuple[frozenset[str], frozenset[tuple[str, str]]]
 """Unmeasured nodes and bidirected edges."""

@@ -24,7 +24,8 @@ pytestmark = pytest.mark.slow
 
 SEEDS = [
     pytest.param(range(500), id="500"),
-    pytest.param(range(500, 4000), id="3500", marks=pytest.mark.slow),
+    pytest.param(range(500, 1500), id="1000", marks=pytest.mark.slow),
+    pytest.param(range(1500, 4000), id="2500", marks=pytest.mark.full),
 ]
 
 Minor = tuple[tuple[str, str], tuple[str, str]]

@@ -30,11 +30,13 @@ pytestmark = pytest.mark.slow
 
 WORLDS = [
     pytest.param(range(250), id="250"),
-    pytest.param(range(250, 6000), id="5750", marks=pytest.mark.slow),
+    pytest.param(range(250, 2000), id="1750", marks=pytest.mark.slow),
+    pytest.param(range(2000, 6000), id="4000", marks=pytest.mark.full),
 ]
 MANY = [
     pytest.param(range(500), id="500"),
-    pytest.param(range(500, 6000), id="5500", marks=pytest.mark.slow),
+    pytest.param(range(500, 2500), id="2000", marks=pytest.mark.slow),
+    pytest.param(range(2500, 6000), id="3500", marks=pytest.mark.full),
 ]
 # Enough for a set that is wrong in some world to be wrong in one of these.
 DRAWS = 10
