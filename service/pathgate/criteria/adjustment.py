@@ -109,7 +109,10 @@ def is_valid(effect: Effect, covariates: int) -> bool:
         return False
     # What leads to a set with the treatments in it does so without an arrow out of a treatment as well.
     relevant = effect.above_ends | ancestors(effect.kept.graph, conditioned)
-    return are_apart(effect.back_door_graph, effect.treatments, effect.outcomes, conditioned, relevant)
+    # The back-door graph need not be made for one question.
+    lacking = effect.treatments, effect.on_causal_paths
+    ends = effect.treatments, effect.outcomes
+    return are_apart(effect.kept.graph, *ends, conditioned, relevant, lacking=lacking)
 
 
 def valid_set(effect: Effect, *, required: int = 0, allowed: int = -1) -> int | None:

@@ -25,23 +25,36 @@ def are_separated(graph: CausalGraph, xs: int, ys: int, given: int) -> bool:
     return are_apart(graph, xs, ys, given, ancestors(graph, xs | ys | given))
 
 
-def are_apart(graph: CausalGraph, xs: int, ys: int, given: int, relevant: int) -> bool:
-    """The same where ``relevant``, the ancestors of the three sets, is at hand already."""
+def are_apart(
+    graph: CausalGraph, xs: int, ys: int, given: int, relevant: int, *, lacking: tuple[int, int] = (0, 0)
+) -> bool:
+    """The same where ``relevant``, the ancestors of the three sets, is at hand already.
+
+    Arrows from the first of two sets into the second, ``lacking``, count as not there.
+    """
     if graph.is_small:
-        return _are_apart_by_masks(graph, xs, ys, given, relevant)
-    return _are_apart_by_arrays(graph, xs, ys, given, relevant)
+        return _are_apart_by_masks(graph, xs, ys, given, relevant, lacking)
+    return _are_apart_by_arrays(graph, xs, ys, given, relevant, lacking)
 
 
-def _are_apart_by_masks(graph: CausalGraph, xs: int, ys: int, given: int, relevant: int) -> bool:
+def _are_apart_by_masks(
+    graph: CausalGraph, xs: int, ys: int, given: int, relevant: int, lacking: tuple[int, int]
+) -> bool:
     parents, children, spouses = graph.parent_masks, graph.child_masks, graph.spouse_masks
+    sources, targets = lacking
     seen = frontier = xs
     free = ~given
     while frontier:
         lowest = frontier & -frontier
         node = lowest.bit_length() - 1
-        near = parents[node] & free | spouses[node]
+        above, below = parents[node], children[node]
+        if lowest & targets:
+            above &= ~sources
+        if lowest & sources:
+            below &= ~targets
+        near = above & free | spouses[node]
         if lowest & free:
-            near |= children[node]
+            near |= below
         near &= relevant & ~seen
         if near & ys:
             return False
@@ -50,7 +63,9 @@ def _are_apart_by_masks(graph: CausalGraph, xs: int, ys: int, given: int, releva
     return True
 
 
-def _are_apart_by_arrays(graph: CausalGraph, xs: int, ys: int, given: int, relevant: int) -> bool:
+def _are_apart_by_arrays(
+    graph: CausalGraph, xs: int, ys: int, given: int, relevant: int, lacking: tuple[int, int]
+) -> bool:
     from scipy.sparse import csr_array  # noqa: PLC0415 - slow to import, and small graphs do without
     from scipy.sparse.csgraph import connected_components  # noqa: PLC0415 - as above
 
@@ -58,6 +73,8 @@ def _are_apart_by_arrays(graph: CausalGraph, xs: int, ys: int, given: int, relev
     inside, leaves = unpack(relevant, size), ~unpack(given, size)
     # An arrow into a relevant node comes from one.
     arrows = inside[graph.targets] & leaves[graph.sources]
+    if lacking[0] and lacking[1]:
+        arrows &= ~(unpack(lacking[0], size)[graph.sources] & unpack(lacking[1], size)[graph.targets])
     bows = inside[graph.lower_ends] & inside[graph.upper_ends]
     firsts = np.concatenate([graph.sources[arrows], graph.lower_ends[bows]])
     seconds = np.concatenate([graph.targets[arrows], graph.upper_ends[bows]])
