@@ -21,7 +21,7 @@ from pathgate.graphs.masks import mask_of, members
 from pathgate.review.claims import Choice, Claim
 from pathgate.review.nearest import key_of, nearest_sound
 
-MOST_TRIALS = 1000
+MOST_TRIALS = 300
 # Nodes and edges that all trials of one search together may look at.
 MOST_WORK = 4_000_000
 MOST_REMEDIES = 3

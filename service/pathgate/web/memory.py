@@ -39,6 +39,15 @@ def _give_back() -> None:
         trim(0)
 
 
+def set_apart_what_stays() -> None:
+    """Keep the collector from looking again and again at what was loaded for good; to be called before workers fork.
+
+    Their copies of it then also stay shared.
+    """
+    gc.collect()
+    gc.freeze()
+
+
 def keep_heap_compact() -> None:
     """Have the C library put large blocks where they can be given back singly; to be called before threads start.
 

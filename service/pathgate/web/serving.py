@@ -105,7 +105,9 @@ class _Server(BaseApplication):  # type: ignore[misc]
     def load(self) -> Flask:
         # Imported here, since whoever only asks for the options or for help needs no application.
         from pathgate.web.app import create_app  # noqa: PLC0415 - as said above
-        from pathgate.web.memory import keep_heap_compact  # noqa: PLC0415 - as said above
+        from pathgate.web.memory import keep_heap_compact, set_apart_what_stays  # noqa: PLC0415 - as said above
 
         keep_heap_compact()
-        return create_app(self._settings)
+        app = create_app(self._settings)
+        set_apart_what_stays()
+        return app
