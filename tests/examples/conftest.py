@@ -4,18 +4,14 @@ from __future__ import annotations
 
 import os
 import shlex
-import signal
-import socket
-import subprocess
 import sys
-import time
-import urllib.request
 from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
 
 from tests.cli.shelf import COMMAND, ENVIRONMENT
+from tests.served import served
 
 EXAMPLES = Path(__file__).resolve().parents[2] / "deploy" / "examples"
 
@@ -23,28 +19,8 @@ EXAMPLES = Path(__file__).resolve().parents[2] / "deploy" / "examples"
 @pytest.fixture(scope="session")
 def service_url() -> Iterator[str]:
     """A service that is ready."""
-    with socket.create_server(("127.0.0.1", 0)) as server:
-        bind = f"127.0.0.1:{server.getsockname()[1]}"
-    words = [*COMMAND, "serve", "--bind", bind, "--workers", "1"]
-    with subprocess.Popen(words, env=ENVIRONMENT, stderr=subprocess.DEVNULL) as process:
-        try:
-            _wait_until_ready(f"http://{bind}", process)
-            yield f"http://{bind}"
-        finally:
-            process.send_signal(signal.SIGTERM)
-        assert process.wait(timeout=60) == 0
-
-
-def _wait_until_ready(url: str, process: subprocess.Popen[bytes]) -> None:
-    give_up = time.monotonic() + 60
-    while True:
-        assert process.poll() is None, "the service ended by itself"
-        assert time.monotonic() < give_up, "the service did not become ready"
-        try:
-            with urllib.request.urlopen(f"{url}/readyz", timeout=5):  # noqa: S310 - our own
-                return
-        except OSError:
-            time.sleep(0.1)
+    with served() as url:
+        yield url
 
 
 @pytest.fixture(scope="session")

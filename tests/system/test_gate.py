@@ -3,35 +3,17 @@
 from __future__ import annotations
 
 import json
-import signal
-import socket
 import subprocess
-from collections.abc import Iterator
-from contextlib import contextmanager
 from pathlib import Path
 
 import pytest
 
 from tests.cli.shelf import BIASED, COMMAND, ENVIRONMENT, GRAPH, MISNAMED, SOUND, UNANSWERABLE, write
-from tests.cli.test_serve import wait_until_ready
+from tests.served import served
 
 pytestmark = pytest.mark.system
 
 FORMS = ("text", "json", "sarif", "junit", "markdown")
-
-
-@contextmanager
-def served() -> Iterator[str]:
-    with socket.create_server(("127.0.0.1", 0)) as server:
-        bind = f"127.0.0.1:{server.getsockname()[1]}"
-    words = [*COMMAND, "serve", "--bind", bind, "--workers", "1"]
-    with subprocess.Popen(words, env=ENVIRONMENT, stderr=subprocess.DEVNULL) as process:
-        try:
-            wait_until_ready(f"http://{bind}", process)
-            yield f"http://{bind}"
-        finally:
-            process.send_signal(signal.SIGTERM)
-            process.wait(timeout=60)
 
 
 def pathgate(folder: Path, *words: str) -> subprocess.CompletedProcess[bytes]:
