@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import shutil
 import socket
 import ssl
@@ -394,7 +395,9 @@ def certified(tmp_path_factory):
     folder = tmp_path_factory.mktemp("certificate")
     openssl = shutil.which("openssl")
     if openssl is None:
-        pytest.skip("openssl is not installed")
+        # Only a run that says so may do without: deploy/test installs it, or names it here.
+        assert "openssl" in os.environ.get("PATHGATE_LEFT_OUT", "").split(",")
+        pytest.skip("openssl is left out")
     words = (
         "req -x509 -newkey rsa:2048 -nodes -days 2 -subj /CN=localhost -addext subjectAltName=DNS:localhost"
     )
